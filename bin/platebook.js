@@ -1,0 +1,2 @@
+#!/usr/bin/env node
+console.log(process.version, process.argv.slice(2));
