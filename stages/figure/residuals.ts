@@ -1,0 +1,131 @@
+/** Reads the residuals that fit writes (fit/residuals.ts describes the layout) and makes of them what the data plot
+ *  shows. Lists must be of one length; numbers must be finite and errors positive. */
+
+import { z } from 'zod';
+import type { ByteSource } from '../bytes.ts';
+import { readJson } from '../formats/json.ts';
+import { InputProblem } from '../problem.ts';
+import type { DataSeries } from './data-plot.ts';
+
+const numbers = z.array(z.number());
+
+const residualsSchema = z.object({
+  stations: z.array(z.string()),
+  visibilities: z.object({
+    u: numbers,
+    v: numbers,
+    station1: numbers,
+    station2: numbers,
+    scan: numbers,
+    amplitude: numbers,
+    sigma: numbers,
+    modelAmplitude: numbers,
+  }),
+  closurePhases: z.object({
+    stations: z.array(numbers),
+    scan: numbers,
+    phaseDegrees: numbers,
+    sigmaDegrees: numbers,
+    modelDegrees: numbers,
+    residualDegrees: numbers,
+  }),
+});
+
+type Residuals = z.infer<typeof residualsSchema>;
+
+export interface DrawnResiduals {
+  readonly amplitudes: DataSeries;
+  readonly closurePhases: DataSeries;
+}
+
+/** Reads residuals. @throws InputProblem when the document is not laid out so. */
+export function readResiduals(source: ByteSource): DrawnResiduals {
+  const parsed = residualsSchema.safeParse(readJson(source));
+  if (!parsed.success) {
+    const issue = parsed.error.issues[0];
+    throw badResiduals(
+      `${source.name}, ${issue.path.join('.') || 'document'}`,
+      'residuals as fit writes them',
+      issue.message,
+    );
+  }
+  const { visibilities, closurePhases } = parsed.data;
+  requireLists(source.name, 'visibilities', visibilities, visibilities.sigma);
+  requireLists(source.name, 'closurePhases', closurePhases, closurePhases.sigmaDegrees);
+  return { amplitudes: amplitudeSeries(parsed.data), closurePhases: phaseSeries(source.name, parsed.data) };
+}
+
+function amplitudeSeries({ visibilities }: Residuals): DataSeries {
+  const { amplitude, sigma, modelAmplitude } = visibilities;
+  return {
+    length: baselineLengths(visibilities),
+    observed: Float64Array.from(amplitude),
+    sigma: Float64Array.from(sigma),
+    model: Float64Array.from(modelAmplitude),
+    residual: Float64Array.from(amplitude, (value, k) => (value - modelAmplitude[k]) / sigma[k]),
+  };
+}
+
+function phaseSeries(name: string, { visibilities, closurePhases }: Residuals): DataSeries {
+  const lengths = baselineLengths(visibilities);
+  const { scan, station1, station2 } = visibilities;
+  const row = new Map(scan.map((s, k) => [pairKey(s, station1[k], station2[k]), k]));
+  const length = closurePhases.stations.map((triangle, t) => {
+    const [a, b, c] = triangle;
+    const rows = [
+      pairKey(closurePhases.scan[t], a, b),
+      pairKey(closurePhases.scan[t], b, c),
+      pairKey(closurePhases.scan[t], a, c),
+    ].map((key) => row.get(key));
+    if (triangle.length !== 3 || rows.includes(undefined)) {
+      const place = `${name}, closurePhases.stations.${t}`;
+      throw badResiduals(
+        place,
+        'three stations whose baselines are among the visibilities of the scan',
+        `[${triangle}]`,
+      );
+    }
+    return Math.max(...rows.map((k) => lengths[k as number]));
+  });
+  return {
+    length: Float64Array.from(length),
+    observed: Float64Array.from(closurePhases.phaseDegrees),
+    sigma: Float64Array.from(closurePhases.sigmaDegrees),
+    model: Float64Array.from(closurePhases.modelDegrees),
+    residual: Float64Array.from(
+      closurePhases.residualDegrees,
+      (value, k) => value / closurePhases.sigmaDegrees[k],
+    ),
+  };
+}
+
+function baselineLengths({ u, v }: Residuals['visibilities']): Float64Array {
+  return Float64Array.from(u, (each, k) => Math.sqrt(each * each + v[k] * v[k]));
+}
+
+function pairKey(scan: number, a: number, b: number): string {
+  return `${scan} ${Math.min(a, b)} ${Math.max(a, b)}`;
+}
+
+function requireLists(name: string, table: string, lists: object, sigma: readonly number[]): void {
+  for (const [key, list] of Object.entries(lists) as [string, readonly unknown[]][]) {
+    if (list.length === sigma.length) continue;
+    throw badResiduals(
+      `${name}, ${table}.${key}`,
+      `${sigma.length} values, as there are errors`,
+      String(list.length),
+    );
+  }
+  const bad = sigma.findIndex((value) => !(value > 0));
+  if (bad >= 0) throw badResiduals(`${name}, ${table}, error ${bad}`, 'an error above 0', String(sigma[bad]));
+}
+
+function badResiduals(place: string, expected: string, found: string): InputProblem {
+  return new InputProblem({
+    code: 'bad-residuals',
+    place,
+    expected,
+    found,
+    advice: 'Give the output residuals of a fit.',
+  });
+}
