@@ -1,0 +1,132 @@
+/** Declaration of the kind `calibration-check`: tests of what must agree whatever the source, and an error budget. */
+
+import type { ParameterDeclaration, StageKind } from '../kind.ts';
+
+const scatterLimits = (doc: string): ParameterDeclaration => limits(doc, 1.5, 2.5, SCATTER_WHY);
+const SCATTER_WHY =
+  'Sound data have 1; public millimetre data of good name had 1.43 on triangles that must close (common practice).';
+
+/** Limits of one check. */
+function limits(doc: string, marginal: number, limit: number, why: string): ParameterDeclaration {
+  return {
+    type: 'group',
+    default: {},
+    doc,
+    fields: {
+      marginal: {
+        type: 'number',
+        from: 0,
+        default: marginal,
+        doc: 'Above this the finding is marginal.',
+        why,
+      },
+      limit: { type: 'number', from: 0, default: limit, doc: 'Above this it is out of limits.', why },
+    },
+  };
+}
+
+export const calibrationCheck = {
+  kind: 'calibration-check',
+  version: 1,
+  doc:
+    'Checks the calibration on what must agree whatever the source looks like: triangles with two co-located stations ' +
+    'close to zero, and co-located stations see the same far baselines. Estimates the error budget that brings these to ' +
+    'unit scatter and adds it in quadrature. A check out of limits stops the run unless the recipe says otherwise.',
+  source:
+    'Closures: Thompson, Moran & Swenson, Interferometry and Synthesis in Radio Astronomy, 3rd ed., section 10.3. Checks ' +
+    'on co-located stations and the error budget in quadrature: common practice.',
+  inputs: {
+    visibilities: { format: 'visibilities', doc: 'Visibilities averaged by scan.' },
+    report: {
+      format: 'json',
+      optional: true,
+      doc: 'The report of `ingest`: with it the scatter inside scans is checked against the stated noise.',
+    },
+  },
+  parameters: {
+    colocated: {
+      type: 'quantity',
+      unit: 'm',
+      from: 0,
+      to: 1e6,
+      default: '10 km',
+      doc: 'Stations closer than this, and on a baseline below 0.1 Gλ, count as co-located.',
+      why: 'Far below what a source that fits the field resolves.',
+    },
+    minimumSnr: {
+      type: 'number',
+      from: 0,
+      default: 5,
+      doc: 'Least signal-to-noise ratio of every visibility in a check.',
+      why: 'Below 4 the cut itself biases log amplitudes; phases are no longer Gaussian below 3.',
+    },
+    least: {
+      type: 'integer',
+      from: 2,
+      default: 10,
+      doc: 'A check on fewer independent values is not made, and a warning says so.',
+      why: 'Ten values give a scatter good to a quarter.',
+    },
+    closureScatter: scatterLimits(
+      'Closure phases of triangles with two co-located stations, over their errors: root mean square.',
+    ),
+    redundantPhases: scatterLimits(
+      'Phases of far baselines seen by two co-located stations, their difference but for one phase per pair and scan, ' +
+        'over the errors: root of the reduced chi-square.',
+    ),
+    redundantAmplitudes: scatterLimits(
+      'The same for log amplitudes with one gain ratio per pair and scan: the closure amplitudes of the quadrangles that ' +
+        'must be 1.',
+    ),
+    gainOffset: limits(
+      'Mean log gain ratio of two co-located stations: the largest of all pairs, either sign.',
+      0.2,
+      0.6,
+      'A good station is calibrated to 10 %, a poor one to 50 % (common practice).',
+    ),
+    gainScatter: limits(
+      'Standard deviation of that ratio from scan to scan, less the noise: the largest of all pairs.',
+      0.25,
+      0.5,
+      'Two stations good to 10 % give 0.14.',
+    ),
+    statedNoise: scatterLimits(
+      'Scatter inside scans over the stated noise, the median over baselines and scans; needs the input `report`.',
+    ),
+    amplitudeBudget: {
+      type: 'either',
+      of: [
+        { type: 'word', words: ['estimate'], doc: 'From the redundant amplitudes.' },
+        { type: 'number', from: 0, to: 1, doc: 'Fraction of the amplitude.' },
+      ],
+      default: 'estimate',
+      doc: 'Systematic error of every amplitude, a fraction, added to sigma in quadrature.',
+      why: 'The data say what they need.',
+    },
+    phaseBudget: {
+      type: 'either',
+      of: [
+        { type: 'word', words: ['estimate'], doc: 'From the triangles that must close.' },
+        { type: 'quantity', unit: 'deg', from: 0, to: 180, doc: 'An angle.' },
+      ],
+      default: 'estimate',
+      doc: 'Systematic error of every phase, added to its error in quadrature.',
+      why: 'The data say what they need.',
+    },
+    outOfLimits: {
+      type: 'word',
+      words: ['stop', 'mark'],
+      default: 'stop',
+      doc: 'What a check out of limits does: end the run, or mark every plate that depends on this stage.',
+      why: 'Nobody should publish such data without having said so.',
+    },
+  },
+  outputs: {
+    visibilities: { format: 'visibilities', doc: 'The visibilities with the error budget in their errors.' },
+    report: {
+      format: 'json',
+      doc: 'Findings, error budget, numbers of closures, co-located pairs with their gain ratios by scan, station gains.',
+    },
+  },
+  load: () => import('./compute.ts'),
+} as const satisfies StageKind;

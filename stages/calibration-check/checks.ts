@@ -1,0 +1,163 @@
+/** The checks one by one: each gives a finding, or the reason why there was too little to check. */
+
+import type { Visibilities } from '../data.ts';
+import type { Finding } from '../kind.ts';
+import type { Closure } from '../numerics/closures.ts';
+import { median } from '../numerics/statistics.ts';
+import {
+  type Agreement,
+  agreement,
+  amplitudeGroup,
+  type Group,
+  phaseGroup,
+  scatter,
+  triangleGroups,
+} from './agreement.ts';
+import {
+  colocatedPairs,
+  type Pair,
+  type SharedScan,
+  sharedBaselines,
+  trivialTriangles,
+} from './colocated.ts';
+import { judge, worstLabel } from './findings.ts';
+import type { CheckName, CheckParameters } from './parameters.ts';
+import { type PairGains, pairGains, type StationGain, stationGains } from './station-gains.ts';
+
+const DEGREES = 180 / Math.PI;
+
+/** All that is measured on the visibilities. */
+export interface Measured {
+  readonly pairs: readonly Pair[];
+  readonly triangles: readonly Closure[];
+  readonly triangleGroups: readonly Group[];
+  readonly phaseGroups: readonly Group[];
+  readonly amplitudeGroups: readonly Group[];
+  readonly pairGains: readonly PairGains[];
+  readonly stationGains: readonly StationGain[];
+}
+
+export type Outcome = Finding | { readonly check: CheckName; readonly tooLittle: string };
+
+/** Measures what the checks and the error budget need. */
+export function measure(visibilities: Visibilities, parameters: CheckParameters): Measured {
+  const pairs = colocatedPairs(visibilities, parameters.colocated);
+  const triangles = trivialTriangles(visibilities, pairs, parameters.minimumSnr);
+  const shared = sharedBaselines(visibilities, pairs, parameters.minimumSnr);
+  const gains = pairGains(visibilities, shared);
+  return {
+    pairs,
+    triangles,
+    triangleGroups: triangleGroups(visibilities, triangles),
+    phaseGroups: groupsOf(visibilities, shared, phaseGroup),
+    amplitudeGroups: groupsOf(visibilities, shared, amplitudeGroup),
+    pairGains: gains,
+    stationGains: stationGains(visibilities, gains),
+  };
+}
+
+/** A pair that shares one baseline in a scan has nothing to compare. */
+function groupsOf(
+  visibilities: Visibilities,
+  shared: readonly SharedScan[],
+  make: (visibilities: Visibilities, scan: SharedScan) => Group,
+): Group[] {
+  return shared.filter(({ baselines }) => baselines.length > 1).map((scan) => make(visibilities, scan));
+}
+
+/** Outcomes of the checks that need nothing but visibilities, in the order of the declaration. */
+export function runChecks(
+  visibilities: Visibilities,
+  measured: Measured,
+  parameters: CheckParameters,
+): Outcome[] {
+  return [
+    checkScatter('closureScatter', measured.triangleGroups, parameters, closureDetail(measured)),
+    checkScatter('redundantPhases', measured.phaseGroups, parameters, ''),
+    checkScatter('redundantAmplitudes', measured.amplitudeGroups, parameters, ''),
+    checkGainOffset(visibilities, measured, parameters),
+    checkGainScatter(visibilities, measured, parameters),
+  ];
+}
+
+const VALUES: Readonly<Record<'closureScatter' | 'redundantPhases' | 'redundantAmplitudes', string>> = {
+  closureScatter: 'independent closure phases of triangles with two co-located stations',
+  redundantPhases: 'independent phase differences on far baselines of co-located stations',
+  redundantAmplitudes: 'independent closure amplitudes that must be 1',
+};
+
+function checkScatter(
+  check: keyof typeof VALUES,
+  groups: readonly Group[],
+  { least, limits }: CheckParameters,
+  further: string,
+): Outcome {
+  const measured = agreement(groups);
+  if (measured.degrees < least) {
+    return { check, tooLittle: `${measured.degrees} ${VALUES[check]}, at least ${least} are needed` };
+  }
+  const detail = `Scatter over the stated errors of ${measured.degrees} ${VALUES[check]}; ${worst(measured)}${further}.`;
+  return judge(check, scatter(measured), limits[check], detail);
+}
+
+function worst(measured: Agreement): string {
+  const found = worstLabel(measured);
+  if (found === undefined) return 'none stands out';
+  return `largest for ${found.label}, ${found.scatter.toFixed(2)} in ${found.values} scans`;
+}
+
+function closureDetail({ triangleGroups }: Measured): string {
+  if (triangleGroups.length === 0) return '';
+  const offset = median(triangleGroups.map(({ values }) => values[0])) * DEGREES;
+  return `; median closure phase ${offset.toFixed(2)} deg`;
+}
+
+function checkGainOffset(
+  visibilities: Visibilities,
+  measured: Measured,
+  parameters: CheckParameters,
+): Outcome {
+  const found = largest(measured.pairGains, ({ offset }) => Math.abs(offset));
+  if (found === undefined) return noGains('gainOffset');
+  const detail =
+    `Largest mean log gain ratio of ${measured.pairGains.length} co-located pairs: ${pairName(visibilities, found.pair)}, ` +
+    `${found.offset.toFixed(3)} over ${found.scans.length} scans; ${farthest(visibilities, measured)}.`;
+  return judge('gainOffset', Math.abs(found.offset), parameters.limits.gainOffset, detail);
+}
+
+/** Names the station whose gain is farthest from the others', where two pairs or more allow to. */
+function farthest({ stations }: Visibilities, { stationGains, pairGains }: Measured): string {
+  const found = largest(stationGains, ({ logGain }) => Math.abs(logGain));
+  if (found === undefined || pairGains.length < 2)
+    return 'which of the two is off, one pair alone does not say';
+  const sign = found.logGain < 0 ? 'low' : 'high';
+  return `farthest from the others is ${stations[found.station].name}, ${Math.abs(found.logGain).toFixed(3)} ${sign} in ln`;
+}
+
+function checkGainScatter(
+  visibilities: Visibilities,
+  { pairGains }: Measured,
+  parameters: CheckParameters,
+): Outcome {
+  const found = largest(pairGains, ({ scatter }) => scatter);
+  if (found === undefined) return noGains('gainScatter');
+  const detail =
+    `Largest standard deviation of the log gain ratio from scan to scan, less the noise: ` +
+    `${pairName(visibilities, found.pair)}, over ${found.scans.length} scans.`;
+  return judge('gainScatter', found.scatter, parameters.limits.gainScatter, detail);
+}
+
+function noGains(check: CheckName): Outcome {
+  return { check, tooLittle: 'no two co-located stations share a far baseline in two scans' };
+}
+
+function largest<T>(list: readonly T[], size: (item: T) => number): T | undefined {
+  return list.reduce<T | undefined>(
+    (best, item) => (best === undefined || size(item) > size(best) ? item : best),
+    undefined,
+  );
+}
+
+export function pairName({ stations }: Visibilities, { a, b }: Pair): string {
+  return `${stations[a].name} and ${stations[b].name}`;
+}

@@ -1,0 +1,191 @@
+/** Reads uv data from FITS random groups; what the file may vary in is settled here: parameters are found by the
+ *  beginning of their names, axes by CTYPE, several DATE parameters are added, PSCAL and PZERO always applied, and the
+ *  baseline code is taken apart. Nothing is judged: weights and values come as they stand. See uv-groups.ts. */
+
+import type { ByteSource } from '../bytes.ts';
+import { type GroupsData, readGroups } from './fits/groups.ts';
+import { type Hdu, listHdus } from './fits/hdu.ts';
+import {
+  type FrequencySetup,
+  numberOf,
+  readAntennaTables,
+  readFrequencySetups,
+  textOf,
+} from './uv-antennas.ts';
+import { type Axes, coordinate, findAxes, frequencies, valueAt } from './uv-axes.ts';
+import { type StationParameters, stationsOf } from './uv-baselines.ts';
+import type { UvBlock, UvData } from './uv-groups.ts';
+import { uvProblem } from './uv-problem.ts';
+
+/** JD of MJD 0. */
+const MJD_ZERO = 2400000.5;
+
+/** Reads headers and tables; rows on demand.
+ *  @throws InputProblem when something needed is missing or contradicts itself. */
+export function readUvGroups(source: ByteSource, hdus: readonly Hdu[] = listHdus(source)): UvData {
+  const hdu = hdus[0];
+  if (hdu === undefined || hdu.kind !== 'groups') {
+    throw uvProblem(
+      'no-groups',
+      source.name,
+      'random groups (GROUPS = T) in the first HDU',
+      'another kind of HDU',
+    );
+  }
+  const groups = readGroups(source, hdu);
+  const axes = findAxes(hdu, groups);
+  const parameters = findParameters(hdu, groups);
+  const antennas = readAntennaTables(source, hdus);
+  const bands = axes.band.n;
+  const setups = readFrequencySetups(source, hdus);
+  const lessUtcDays = antennas[0].lessUtcSeconds / 86400;
+  return {
+    target: {
+      name: textOf(hdu.header, 'OBJECT') || 'unnamed',
+      raDegrees: coordinate(hdu, axes.ra, 'OBSRA'),
+      decDegrees: coordinate(hdu, axes.dec, 'OBSDEC'),
+    },
+    equinox: numberOf(hdu.header, 'EQUINOX') ?? numberOf(hdu.header, 'EPOCH'),
+    arrayName: textOf(hdu.header, 'TELESCOP') || antennas[0].arrayName || 'unnamed',
+    remark: textOf(hdu.header, 'REMARK'),
+    referenceFrequencyHz: axes.channel.crval,
+    bandCount: bands,
+    channelCount: axes.channel.n,
+    ...frequencies(hdu, axes.channel, bands, setupInUse(hdu, setups, groups, parameters)),
+    stokes: Array.from({ length: axes.stokes.n }, (_, k) => Math.round(valueAt(axes.stokes, k + 1))),
+    antennas,
+    count: groups.count,
+    hasIntegration: parameters.integration !== undefined,
+    block: (from, rows) => readBlock(hdu, groups, parameters, axes, lessUtcDays, from, rows),
+  };
+}
+
+interface Parameters extends StationParameters {
+  readonly u: number;
+  readonly v: number;
+  readonly w: number | undefined;
+  readonly dates: readonly number[];
+  readonly integration: number | undefined;
+  readonly source: number | undefined;
+  readonly frequencySetup: number | undefined;
+}
+
+function findParameters(hdu: Hdu, groups: GroupsData): Parameters {
+  const names = groups.parameters.map((each) => each.name.trim().toUpperCase());
+  const find = (start: string) => {
+    const at = names.findIndex((name) => name.startsWith(start));
+    return at < 0 ? undefined : at;
+  };
+  const dates = names.flatMap((name, k) => (name.startsWith('DATE') ? [k] : []));
+  const u = find('UU');
+  const v = find('VV');
+  const baseline = find('BASELINE');
+  const antenna1 = find('ANTENNA1');
+  const antenna2 = find('ANTENNA2');
+  const paired = antenna1 !== undefined && antenna2 !== undefined;
+  if (u === undefined || v === undefined || dates.length === 0 || (baseline === undefined && !paired)) {
+    throw uvProblem(
+      'missing-parameter',
+      hdu.place,
+      'the parameters UU…, VV…, BASELINE and DATE (once or more)',
+      names.join(', ') || 'none',
+    );
+  }
+  return {
+    u,
+    v,
+    w: find('WW'),
+    dates,
+    baseline,
+    antenna1,
+    antenna2,
+    subarray: find('SUBARRAY'),
+    integration: find('INTTIM'),
+    source: find('SOURCE'),
+    frequencySetup: find('FREQSEL'),
+  };
+}
+
+/** The row of the frequency table that the data use. @throws InputProblem when they use several. */
+function setupInUse(
+  hdu: Hdu,
+  setups: readonly FrequencySetup[],
+  groups: GroupsData,
+  parameters: Parameters,
+): FrequencySetup | undefined {
+  if (setups.length <= 1 || parameters.frequencySetup === undefined || groups.count === 0) return setups[0];
+  const number = groups.block(0, 1).parameter(parameters.frequencySetup)[0];
+  const setup = setups.find((each) => each.number === number);
+  if (setup !== undefined) return setup;
+  throw uvProblem(
+    'bad-frequency-table',
+    hdu.place,
+    `a frequency setup among ${setups.map((each) => each.number).join(', ')}`,
+    `FREQSEL ${number} in row 1`,
+  );
+}
+
+function readBlock(
+  hdu: Hdu,
+  groups: GroupsData,
+  parameters: Parameters,
+  axes: Axes,
+  lessUtcDays: number,
+  from: number,
+  rows: number,
+): UvBlock {
+  const count = Math.max(0, Math.min(rows, groups.count - from));
+  const block = groups.block(from, count);
+  const optional = (at: number | undefined) =>
+    at === undefined ? new Float64Array(count) : block.parameter(at);
+  const data = block.data;
+  return {
+    from,
+    count,
+    u: block.parameter(parameters.u),
+    v: block.parameter(parameters.v),
+    w: optional(parameters.w),
+    timeMjd: sumOfDates(
+      parameters.dates.map((at) => block.parameter(at)),
+      lessUtcDays,
+      hdu,
+      from,
+    ),
+    ...stationsOf(hdu, parameters, block.parameter, from, count),
+    integrationSeconds: optional(parameters.integration),
+    source: Int32Array.from(optional(parameters.source)),
+    frequencySetup: Int32Array.from(optional(parameters.frequencySetup)),
+    data,
+    rowStride: count === 0 ? 0 : data.length / count,
+    partStride: axes.part.stride,
+    sampleOffset: (stokes, band, channel) =>
+      stokes * axes.stokes.stride + band * axes.band.stride + channel * axes.channel.stride,
+  };
+}
+
+/** MJD from the parts of a Julian date. 2400000.5 is taken off the largest part before the others are added, so that
+ *  none of their digits is lost. A time that is not finite stays so and is dropped with its row. */
+function sumOfDates(
+  parts: readonly Float64Array[],
+  lessUtcDays: number,
+  hdu: Hdu,
+  from: number,
+): Float64Array {
+  const mjd = new Float64Array(parts[0].length);
+  for (let row = 0; row < mjd.length; row++) {
+    let largest = 0;
+    for (let p = 1; p < parts.length; p++) if (parts[p][row] > parts[largest][row]) largest = p;
+    let sum = parts[largest][row] - MJD_ZERO;
+    for (let p = 0; p < parts.length; p++) if (p !== largest) sum += parts[p][row];
+    if (sum < -MJD_ZERO / 2 || sum > MJD_ZERO) {
+      throw uvProblem(
+        'bad-time',
+        `${hdu.place}, row ${from + row + 1}`,
+        'parameters DATE that add up to a Julian date',
+        `${sum + MJD_ZERO}`,
+      );
+    }
+    mjd[row] = sum - lessUtcDays;
+  }
+  return mjd;
+}

@@ -1,0 +1,146 @@
+/** The report of `ingest` as JSON: what was read, dropped and found. Numbers that cannot be had are null. */
+
+import { median } from '../numerics/statistics.ts';
+import type { AveragingResult } from './averaging.ts';
+import { snrOf } from './averaging.ts';
+import type { Choices } from './choices.ts';
+import { kept, type Observation, REASONS } from './records.ts';
+import type { Timetable } from './scans.ts';
+import { LIGHT_SPEED } from './select.ts';
+
+/** Loss of amplitude is judged on averages at least this strong: at 10 its own error is about a tenth over the root of
+ *  the number of records. */
+const STRONG = 10;
+
+/** Builds the document. */
+export function reportOf(
+  observation: Observation,
+  timetable: Timetable,
+  result: AveragingResult,
+  present: ReadonlySet<number>,
+  choices: Choices,
+  warnings: readonly string[],
+): Record<string, unknown> {
+  const { tally } = observation;
+  const { averages } = result;
+  const frequencyHz = LIGHT_SPEED / observation.wavelengthMetres;
+  const dropped = REASONS.flatMap((reason) => {
+    const count = tally.dropped.get(reason);
+    return count === undefined ? [] : [[reason, count] as const];
+  });
+  return {
+    format: observation.format,
+    target: observation.target,
+    array: observation.arrayName,
+    remark: observation.remark,
+    rows: observation.rows,
+    samples: { read: tally.read, kept: kept(tally), dropped: Object.fromEntries(dropped) },
+    chosen: {
+      polarisation: observation.polarisation,
+      bands: observation.bands,
+      channels: observation.channels,
+      frequencyHz,
+      bandwidthHz: (observation.bandwidthMetres * frequencyHz) / observation.wavelengthMetres,
+    },
+    hands: observation.hands,
+    stations: stationsOf(observation, present),
+    uv: observation.uv,
+    scans: scansOf(observation, timetable, result),
+    averaged: {
+      over: choices.averaging,
+      visibilities: averages.count,
+      baselinesDroppedAsIncomplete: result.incomplete,
+      baselinesDroppedAsFaint: result.faint,
+      medianSnr: middle(list(averages.count, (k) => snrOf(averages, k))),
+    },
+    scatter: scatterOf(observation, timetable, result),
+    coherence: coherenceOf(observation, timetable, result),
+    warnings,
+  };
+}
+
+function stationsOf({ stations, leftOut, records }: Observation, present: ReadonlySet<number>) {
+  const rows = new Int32Array(stations.length);
+  for (let k = 0; k < records.count; k++) {
+    rows[records.station1[k]]++;
+    rows[records.station2[k]]++;
+  }
+  const absent = stations.filter((station, k) => !present.has(k) && !leftOut.includes(station.name));
+  return {
+    present: stations.flatMap(({ name }, k) => (present.has(k) ? [{ name, rows: rows[k] }] : [])),
+    absent: absent.map((station) => station.name),
+    leftOut,
+  };
+}
+
+function scansOf(observation: Observation, timetable: Timetable, { averages }: AveragingResult) {
+  return timetable.scans.map(({ first, last, startMjd, endMjd }, scan) => {
+    const baselines = new Set<number>();
+    const stations = new Set<number>();
+    for (let k = 0; k < averages.count; k++) {
+      if (timetable.scanOfInterval[averages.interval[k]] !== scan) continue;
+      baselines.add(averages.station1[k] * observation.stations.length + averages.station2[k]);
+      stations.add(averages.station1[k]).add(averages.station2[k]);
+    }
+    return {
+      scan,
+      startMjd,
+      endMjd,
+      records: last - first + 1,
+      /** Numbers of the output's NS_SCAN that lie in this scan. */
+      intervals: [timetable.intervalOf[first], timetable.intervalOf[last]],
+      baselines: baselines.size,
+      stations: stations.size,
+    };
+  });
+}
+
+/** Scatter of records inside an average over their stated noise. */
+function scatterOf(observation: Observation, timetable: Timetable, { averages }: AveragingResult) {
+  const judged = list(averages.count, (k) => k).filter((k) => averages.records[k] > 2);
+  const values = judged.map((k) => averages.scatter[k]);
+  return {
+    definition:
+      'reduced chi-square per real component of the records of one average about their mean, averages of three records or more; 1 when the stated noise is right',
+    averages: judged.length,
+    median: middle(values),
+    worst: extreme(observation, timetable, averages, judged, averages.scatter),
+  };
+}
+
+function coherenceOf(observation: Observation, timetable: Timetable, { averages }: AveragingResult) {
+  const judged = list(averages.count, (k) => k).filter(
+    (k) => averages.records[k] > 2 && snrOf(averages, k) >= STRONG && !Number.isNaN(averages.loss[k]),
+  );
+  return {
+    definition: `fraction of amplitude lost in a coherent average, against the debiased root mean square of its records, averages with a signal-to-noise ratio of ${STRONG} or more`,
+    averages: judged.length,
+    medianLoss: middle(judged.map((k) => averages.loss[k])),
+    worst: extreme(observation, timetable, averages, judged, averages.loss),
+  };
+}
+
+function extreme(
+  { stations }: Observation,
+  { scanOfInterval }: Timetable,
+  averages: AveragingResult['averages'],
+  judged: readonly number[],
+  values: Float64Array,
+) {
+  if (judged.length === 0) return null;
+  const k = judged.reduce((worst, each) => (values[each] > values[worst] ? each : worst));
+  return {
+    baseline: `${stations[averages.station1[k]].name}-${stations[averages.station2[k]].name}`,
+    scan: scanOfInterval[averages.interval[k]],
+    value: values[k],
+    snr: snrOf(averages, k),
+  };
+}
+
+function list(count: number, value: (k: number) => number): number[] {
+  return Array.from({ length: count }, (_, k) => value(k));
+}
+
+function middle(values: readonly number[]): number | null {
+  return values.length === 0 ? null : median(values);
+}

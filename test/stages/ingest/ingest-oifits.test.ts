@@ -1,0 +1,115 @@
+import { readFileSync } from 'node:fs';
+import { describe, expect, it } from 'vitest';
+import { memorySink } from '../../../stages/bytes.ts';
+import type { Visibilities } from '../../../stages/data.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { project, REFERENCE_MJD, rows, STATIONS, times, uvFile } from '../uv-synthetic.ts';
+import { problemOf, runIngest } from './run-ingest.ts';
+
+const fixture = (name: string) => readFileSync(new URL(`../../data/fits/${name}`, import.meta.url));
+
+describe('OIFITS', () => {
+  it('gives the complex visibilities of one wavelength, as astropy wrote them', () => {
+    const { visibilities, report, stage } = runIngest(fixture('double.oifits'), { channels: [2] });
+    expect(report.format).toBe('oifits');
+    expect(visibilities.count).toBe(6);
+    expect(visibilities.wavelengthMetres).toBeCloseTo(1.6e-6, 12);
+    // Source: test/data/scripts/make-oifits-fixtures.py, V = (1 + f exp(−2πi(u l + v m)))/(1 + f), f = 0.4,
+    // (l, m) = (3, −1.5) mas, and the station positions below; the errors are 0.01.
+    const mas = Math.PI / 180 / 3.6e6;
+    const xy = [
+      [0, 0],
+      [60, 10],
+      [20, 80],
+      [-50, 40],
+    ];
+    for (let k = 0; k < 6; k++) {
+      const [a, b] = [visibilities.station1[k], visibilities.station2[k]];
+      const [u, v] = [0, 1].map((axis) => (xy[b][axis] - xy[a][axis]) / Math.fround(1.6e-6));
+      expect(visibilities.u[k]).toBeCloseTo(u, 2);
+      expect(visibilities.v[k]).toBeCloseTo(v, 2);
+      const phase = -2 * Math.PI * (u * 3 * mas - v * 1.5 * mas);
+      expect(visibilities.re[k]).toBeCloseTo((1 + 0.4 * Math.cos(phase)) / 1.4, 10);
+      expect(visibilities.im[k]).toBeCloseTo((0.4 * Math.sin(phase)) / 1.4, 10);
+      expect(visibilities.sigma[k]).toBeCloseTo(0.01, 12);
+    }
+    expect(stage.warnings?.[0]).toBe(
+      'The visibilities are normalised: a total flux of 1 is written as 1 Jy.',
+    );
+  });
+
+  it('does not average wavelengths that lie far apart', () => {
+    expect(problemOf(fixture('double.oifits')).code).toBe('wide-band');
+    expect(runIngest(fixture('double.oifits'), { channels: [1, 2] }).report.samples.read).toBe(12);
+  });
+
+  it('without complex visibilities is refused, clearly', () => {
+    expect(problemOf(fixture('two-arrays.oifits')).message).toContain(
+      'no-complex-visibilities: expected a table OI_VIS with complex visibilities, got',
+    );
+  });
+
+  it('of our own comes back as it went in', () => {
+    const first = runIngest(uvFile(rows({ days: times(3, 4) })));
+    const again = runIngest(first.bytes);
+    const close = (name: 'u' | 'v' | 're' | 'im' | 'sigma' | 'timeMjd', digits: number) => {
+      for (const [k, value] of first.visibilities[name].entries()) {
+        expect(again.visibilities[name][k] / value).toBeCloseTo(1, digits);
+      }
+    };
+    for (const name of ['u', 'v', 're', 'im', 'sigma'] as const) close(name, 9);
+    close('timeMjd', 12);
+    expect(again.visibilities.scan).toEqual(first.visibilities.scan);
+    expect(again.visibilities.stations).toEqual(first.visibilities.stations);
+  });
+
+  it('with u and v of the wrong sign is an error when the positions tell', () => {
+    // Sidereal time by Meeus eq. 12.4, moved to the generator's through the right ascension.
+    const gmst = (280.46061837 + 360.98564736629 * (REFERENCE_MJD - 51544.5)) % 360;
+    const file = (sign: number) => {
+      const sink = memorySink();
+      writeVisibilities(sink, twoStations(sign, 187.5 + gmst - 201.3));
+      return sink.bytes();
+    };
+    expect(runIngest(file(1)).report.uv.finding).toContain('the sign is that of the format');
+    expect(problemOf(file(-1)).code).toBe('uv-sign');
+    expect(runIngest(file(-1), { uvSign: 'reversed' }).visibilities.u[0]).toBeCloseTo(
+      runIngest(file(1)).visibilities.u[0],
+      3,
+    );
+  });
+});
+
+/** Two rows of one baseline, u and v from station 1 to station 2. */
+function twoStations(sign: number, raDegrees: number): Visibilities {
+  const days = [0.25, 0.35];
+  const [a, b] = [STATIONS[1], STATIONS[0]];
+  const wavelengthMetres = 1.3e-3;
+  const uv = days.map((day) =>
+    project(
+      b.xyz.map((value, axis) => value - a.xyz[axis]),
+      day,
+    ).map((seconds) => (sign * seconds * 299792458) / wavelengthMetres),
+  );
+  const column = (value: (k: number) => number) => Float64Array.from(days, (_, k) => value(k));
+  return {
+    target: { name: 'INVENTED', raDegrees: ((raDegrees % 360) + 360) % 360, decDegrees: 12.25 },
+    arrayName: 'TESTARRAY',
+    remark: 'invented data',
+    stations: [a, b].map(({ name, xyz }) => ({ name, xyz })),
+    wavelengthMetres,
+    bandwidthMetres: 1e-6,
+    count: 2,
+    station1: Int32Array.of(0, 0),
+    station2: Int32Array.of(1, 1),
+    scan: Int32Array.of(0, 1),
+    timeMjd: column((k) => REFERENCE_MJD + days[k]),
+    integrationSeconds: column(() => 10),
+    u: column((k) => uv[k][0]),
+    v: column((k) => uv[k][1]),
+    re: column(() => 1),
+    im: column(() => 0.5),
+    sigma: column(() => 0.01),
+    sigmaPhase: column(() => 0.01),
+  };
+}
