@@ -1,5 +1,6 @@
-/** Errors of the book, each text built once. */
+/** Errors of the book, each text built once. Every text says where, what was expected, what stood there, what to do. */
 
+/** Append-only; no code is reused. */
 export type LedgerCode =
   | 'no-book'
   | 'book-unreadable'
@@ -9,13 +10,22 @@ export type LedgerCode =
   | 'not-found'
   | 'ambiguous'
   | 'cannot-write'
-  | 'not-canonical';
+  | 'not-canonical'
+  | 'bad-draft'
+  | 'bad-call'
+  | 'file-changed'
+  | 'file-unreadable';
+
+/** The call was wrong and nothing was started; with every other code the work ended badly. */
+const WRONG_CALL: ReadonlySet<LedgerCode> = new Set(['no-book', 'not-found', 'ambiguous', 'bad-call']);
 
 export class LedgerProblem extends Error {
   override readonly name = 'LedgerProblem';
   readonly code: LedgerCode;
   readonly file: string | null;
   readonly line: number | null;
+  /** The exit status of a command that ends with this problem. */
+  readonly exitStatus: 1 | 2;
 
   constructor(
     code: LedgerCode,
@@ -27,5 +37,194 @@ export class LedgerProblem extends Error {
     this.code = code;
     this.file = place.file ?? null;
     this.line = place.line ?? null;
+    this.exitStatus = WRONG_CALL.has(code) ? 2 : 1;
   }
 }
+
+// The directory
+
+/** No book where one was asked for. */
+export function noBook(directory: string): LedgerProblem {
+  return new LedgerProblem(
+    'no-book',
+    `${directory}: there is no book here. Run a recipe to start one, or name the book's directory with --book.`,
+    { file: directory },
+  );
+}
+
+/** A book was to be started in a directory that holds other things. */
+export function otherDirectory(directory: string, found: readonly string[]): LedgerProblem {
+  const some = found.slice(0, 3).join(', ') + (found.length > 3 ? ', …' : '');
+  return new LedgerProblem(
+    'no-book',
+    `${directory}: expected a book, an empty directory or none, got a directory with ${some}. ` +
+      'Name another directory with --book.',
+    { file: directory },
+  );
+}
+
+export function notADirectory(directory: string): LedgerProblem {
+  return new LedgerProblem(
+    'no-book',
+    `${directory}: expected a directory, got a file. Name another directory with --book.`,
+    { file: directory },
+  );
+}
+
+export function badBookName(name: string): LedgerProblem {
+  return new LedgerProblem(
+    'bad-call',
+    `The book's name: expected 1 to 100 characters without control characters, got ${JSON.stringify(name)}. Choose another.`,
+  );
+}
+
+/** The file system refuses to give something of the book. */
+export function bookUnreadable(file: string, cause: unknown): LedgerProblem {
+  return new LedgerProblem(
+    'book-unreadable',
+    `${file}: cannot be read (${reasonOf(cause)}). Check the file's permissions and the disk.`,
+    { file },
+    { cause },
+  );
+}
+
+// Writing
+
+export function cannotWrite(file: string, cause: unknown): LedgerProblem {
+  return new LedgerProblem(
+    'cannot-write',
+    `${file}: cannot be written (${reasonOf(cause)}). The book is as before; mend the cause and repeat.`,
+    { file },
+    { cause },
+  );
+}
+
+/** Another process holds the book for too long. */
+export function noTurn(file: string, seconds: number): LedgerProblem {
+  return new LedgerProblem(
+    'cannot-write',
+    `${file}: another process has been writing to this book for ${seconds} s. Wait for it, or look whether it hangs.`,
+    { file },
+  );
+}
+
+export function nobodyWrites(): LedgerProblem {
+  return new LedgerProblem(
+    'bad-draft',
+    'The book was opened without a person, so nothing can be entered. Say who keeps it.',
+  );
+}
+
+/** A draft names something that is not there, or contradicts what it names. */
+export function badDraft(type: string, what: string): LedgerProblem {
+  return new LedgerProblem('bad-draft', `A ${type} cannot be entered: ${what}. Nothing was written.`);
+}
+
+// The ledger
+
+export function notCanonical(place: string, expected: string, found: string): LedgerProblem {
+  return new LedgerProblem('not-canonical', `${place}: expected ${expected}, got ${found}.`);
+}
+
+export function notJson(place: string, cause: unknown): LedgerProblem {
+  return new LedgerProblem(
+    'not-canonical',
+    `${place}: expected JSON, got something else (${reasonOf(cause)}).`,
+    {},
+    { cause },
+  );
+}
+
+/** The ledger is not what was written. */
+export function ledgerDamaged(file: string, line: number | undefined, what: string): LedgerProblem {
+  const place = line === undefined ? { file } : { file, line };
+  return new LedgerProblem(
+    'ledger-damaged',
+    `${file}${line === undefined ? '' : `:${line}`}: ${what}. ` +
+      'Audit the book, and take the ledger from a copy; nothing was changed.',
+    place,
+  );
+}
+
+// The store
+
+export function storeMissing(file: string): LedgerProblem {
+  return new LedgerProblem(
+    'store-missing',
+    `${file}: the store has no such file. Run the recipe again, or take the file from a copy of the book.`,
+    { file },
+  );
+}
+
+export function storeDamaged(file: string, digest: string): LedgerProblem {
+  return new LedgerProblem(
+    'store-damaged',
+    `${file}: expected bytes of the digest in its name, got ${digest}. Audit the book; remove the file and run the recipe again.`,
+    { file },
+  );
+}
+
+export function notADigest(text: string): LedgerProblem {
+  return new LedgerProblem(
+    'bad-call',
+    `Expected a digest, 64 hexadecimal digits in lower case, got ${JSON.stringify(text)}.`,
+  );
+}
+
+// Files outside
+
+export function fileUnreadable(file: string, cause: unknown): LedgerProblem {
+  return new LedgerProblem(
+    'file-unreadable',
+    `${file}: cannot be read (${reasonOf(cause)}). Check the path and the permissions.`,
+    { file },
+    { cause },
+  );
+}
+
+/** A file changed while its digest was taken. */
+export function fileChanged(file: string): LedgerProblem {
+  return new LedgerProblem(
+    'file-changed',
+    `${file}: changed while it was read. Wait until whatever writes it has finished, then repeat.`,
+    { file },
+  );
+}
+
+// Questions
+
+export function badTime(text: string, expected: string): LedgerProblem {
+  return new LedgerProblem('bad-call', `${JSON.stringify(text)}: expected ${expected} (RFC 3339).`);
+}
+
+export function badCall(message: string): LedgerProblem {
+  return new LedgerProblem('bad-call', message);
+}
+
+/** Nothing of that name, number or digest. */
+export function notFound(what: string, advice: string): LedgerProblem {
+  return new LedgerProblem('not-found', `${what}. ${advice}`);
+}
+
+export function ambiguous(what: string, candidates: readonly string[]): LedgerProblem {
+  const some = candidates.slice(0, 5).join(', ') + (candidates.length > 5 ? ', …' : '');
+  return new LedgerProblem('ambiguous', `${what} can be any of ${some}. Give more of it.`);
+}
+
+function reasonOf(cause: unknown): string {
+  if (!(cause instanceof Error)) return String(cause);
+  const code = (cause as NodeJS.ErrnoException).code;
+  return REASONS[code ?? ''] ?? cause.message;
+}
+
+const REASONS: Readonly<Record<string, string>> = {
+  ENOENT: 'no such file',
+  EACCES: 'permission denied',
+  EPERM: 'not permitted',
+  EISDIR: 'it is a directory',
+  ENOSPC: 'no space left on the disk',
+  EDQUOT: 'the disk quota is used up',
+  EROFS: 'the file system is read-only',
+  EMFILE: 'too many files are open',
+  EIO: 'the disk reports an error',
+};

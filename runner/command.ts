@@ -4,6 +4,8 @@
 export interface Io {
   out(text: string): void;
   err(text: string): void;
+  /** The stream behind `err`, for drawing on a terminal. */
+  readonly errorStream: NodeJS.WritableStream;
   readonly cwd: string;
   readonly env: Readonly<Record<string, string | undefined>>;
   /** Whether standard error is a terminal of so many columns. */

@@ -1,0 +1,155 @@
+/** The book: a directory in which entries are appended and never changed.
+ *
+ *      ledger.jsonl        the entries, one a line
+ *      seals/latest.json   how many there are, and the digest of the last
+ *      store/3f9/3f9a…     files named by their SHA-256, read-only
+ *      logs/               what stages said, while they ran
+ *      index.sqlite        derived from the ledger; can be deleted
+ *      turns.sqlite        empty; the lock by which writers take turns
+ *      torn-after-entry-…  what an interrupted write left; see recovery.ts
+ *
+ *  Grammar of the ledger. A line is an object of entry.ts in canonical JSON (RFC 8785, UTF-8), then one line feed; there
+ *  is nothing else in the file. `number` is the line's number, from 1. `before` is the SHA-256 of the line before without
+ *  its line feed, of no bytes in the first. An entry's digest is the SHA-256 of its line without the line feed. A line in
+ *  any other spelling is damage. Fields and types may be added; what stands keeps its meaning.
+ *
+ *  A book with one entry, a run of a recipe without stages (a test makes exactly this book):
+ *
+ *      {"before":"e3b0c44298fc1c149afbf4c8996fb92427ae41e4649b934ca495991b7852b855","book":"lantern","by":{"name":"A. Keeper"},"finished":true,"number":1,"numbers":[],"overrides":[],"plates":[],"recipe":{"bytes":14,"digest":"77caf4937ae08aea6bf91729c88da5cfe69fe57505dec54d9650293990ac2177","name":"empty","path":"empty.yaml"},"run":1,"stages":[],"time":"2026-01-02T03:04:05.678Z","type":"run"}
+ *
+ *  and its seal:
+ *
+ *      {"book":"lantern","bytes":388,"entries":1,"last":"384808308cb00fd76d04d8b3135a373e1495d3834afaa4cb94d786539ee3ceec"}
+ *
+ *  Order of writing: the files an entry names (synced), the line (synced), the seal (synced), the index. A crash
+ *  between two of them leaves a book that opens. Readers go by the seal, take no turn and wait for nobody. */
+
+import { basename, join, resolve } from 'node:path';
+import { appendEntry, type Writer } from './append.ts';
+import type { Draft, Entry, Person, RunEntry, StageEntry, StoredFile } from './entry.ts';
+import type { Index } from './index.ts';
+import { keepIndex } from './index-keeper.ts';
+import { hasBook, nameOf, requireBook, startBook } from './layout.ts';
+import { digestOfFile } from './outside-file.ts';
+import { digestOfEntry, readEntry, visitEntries } from './reading.ts';
+import { recover, standingOf } from './recovery.ts';
+import { openStore, type Store, sweepStore } from './store.ts';
+import { openTurns, type Turns } from './turns.ts';
+
+const STAGES_OF_KEY = 'SELECT number FROM entries WHERE key = ? ORDER BY number DESC';
+const RUN = 'SELECT number FROM entries WHERE run = ?';
+const LAST_RUN = 'SELECT max(run) AS run FROM entries';
+
+export type Announce = (text: string, what: 'put right' | 'damaged') => void;
+
+export interface BookOptions {
+  /** Who enters; without a person the book can only be read. */
+  readonly by?: Person;
+  /** The name of a book that is started; the directory's name when left out. A book keeps its name. */
+  readonly name?: string;
+  /** Start a book where there is none. Default false. */
+  readonly create?: boolean;
+  readonly now?: () => Date;
+  /** Hears what was put right after a crash, and of damage. Default: nobody. */
+  readonly announce?: Announce;
+}
+
+export interface Book {
+  /** Absolute. */
+  readonly directory: string;
+  readonly name: string;
+  readonly store: Store;
+  /** Enters a draft and returns when it is on the disk. Waits for its turn. Three syncs.
+   *  @throws LedgerProblem 'bad-draft' when something it names is not there, 'not-canonical', 'cannot-write',
+   *  'ledger-damaged'; the book is then as before. */
+  append(draft: Draft): { entry: Entry; digest: string };
+  /** @throws LedgerProblem 'not-found', or 'ledger-damaged' when the line is not what was written. */
+  entry(number: number): Entry;
+  digestOf(number: number): string;
+  count(): number;
+  /** Entries in order, from a number on. */
+  entries(from?: number): Iterable<Entry>;
+  /** The newest stage entry of a key whose outputs all stand in the store. */
+  findStage(key: string): StageEntry | undefined;
+  findRun(run: number): RunEntry | undefined;
+  lastRun(): RunEntry | undefined;
+  /** Digest and size of a file outside; remembered, and read again only when it changed or with `strict`. */
+  digestOfFile(path: string, options?: { readonly strict?: boolean }): StoredFile;
+  /** Asks the index, level with the ledger. */
+  ask<T>(question: (index: Index) => T): T;
+  close(): void;
+}
+
+/** Opens the book in a directory, and puts right what a crash left. Reads the seal and the last line, not the ledger.
+ *  Damage is announced and does not keep the book from opening; it keeps everybody from writing.
+ *  @throws LedgerProblem 'no-book', 'cannot-write' when one is to be started, 'ledger-damaged' without a ledger. */
+export function openBook(directory: string, options: BookOptions = {}): Book {
+  const at = resolve(directory);
+  const announce = options.announce ?? (() => {});
+  const turns = openTurns(at);
+  try {
+    if (options.create === true && !hasBook(at)) startBook(at, options.name ?? basename(at), turns);
+    requireBook(at);
+    putRight(at, turns, announce);
+    if (options.by !== undefined) sweepStore(join(at, 'store'), (options.now?.() ?? new Date()).getTime());
+    return bookIn(at, nameOf(at), turns, announce, options);
+  } catch (error) {
+    turns.close();
+    throw error;
+  }
+}
+
+function putRight(directory: string, turns: Turns, announce: Announce): void {
+  let standing = standingOf(directory);
+  if (standing.state === 'unsealed') {
+    turns.takeIfFree(() => {
+      standing = standingOf(directory);
+      if (standing.state === 'unsealed') recover(directory, standing, announce);
+    });
+  }
+  if (standing.state === 'damaged')
+    announce(`The book in ${directory} is damaged: ${standing.what}. Audit it.`, 'damaged');
+}
+
+function bookIn(
+  directory: string,
+  name: string,
+  turns: Turns,
+  announce: Announce,
+  { by, now = () => new Date() }: BookOptions,
+): Book {
+  const store = openStore(join(directory, 'store'));
+  const keeper = keepIndex(directory, name);
+  const writer: Writer = { directory, turns, keeper, store, by, now, announce };
+  const entry = (number: number) => readEntry(directory, keeper, number);
+  const lastRun = () => keeper.ask((index) => index.get<{ run: number | null }>(LAST_RUN))?.run ?? 0;
+  const findRun = (run: number) => {
+    const row = keeper.ask((index) => index.get<{ number: number }>(RUN, run));
+    return row === undefined ? undefined : (entry(row.number) as RunEntry);
+  };
+  return {
+    directory,
+    name,
+    store,
+    append: (draft) => appendEntry(writer, draft),
+    entry,
+    digestOf: (number) => digestOfEntry(keeper, number),
+    count: () => keeper.ask((index) => index.extent().entries),
+    entries: (from = 1) => visitEntries(directory, keeper, from),
+    findStage(key) {
+      for (const { number } of keeper.ask((index) => index.all<{ number: number }>(STAGES_OF_KEY, key))) {
+        const stage = entry(number) as StageEntry;
+        if (Object.values(stage.outputs).every((file) => store.has(file))) return stage;
+      }
+      return undefined;
+    },
+    findRun,
+    lastRun: () => findRun(lastRun()),
+    digestOfFile: (path, { strict = false } = {}) => digestOfFile(path, keeper, strict, now().getTime()),
+    ask: (question) => keeper.ask(question),
+    close() {
+      keeper.close();
+      turns.close();
+    },
+  };
+}

@@ -1,0 +1,194 @@
+/** Keeps the index level with the ledger. Before each question it is brought up to the seal; it is made again when it
+ *  is missing, of another book, ahead of the ledger, or no database; where the directory cannot be written it is held
+ *  in memory. When it is level, nothing but the seal is read. */
+
+import { rmSync } from 'node:fs';
+import { join } from 'node:path';
+import { sha256 } from './digest.ts';
+import { type Extent, type Index, type IndexedLine, openIndex } from './index.ts';
+import { ledgerPath, linesOf, parseEntry, sizeOf, withFile } from './ledger-file.ts';
+import { ledgerDamaged } from './problem.ts';
+import { readSeal, type Seal } from './seal.ts';
+
+// Result codes of SQLite, sqlite.org/rescode.html.
+const BUSY = 5;
+const CORRUPT = 11;
+const NOT_A_DATABASE = 26;
+
+export interface IndexKeeper {
+  /** Asks the index, after it has been brought up to the seal.
+   *  @throws LedgerProblem 'ledger-damaged' when it must be made again and the ledger is damaged. */
+  ask<T>(question: (index: Index) => T): T;
+  /** Makes the index again from the first line. */
+  rebuild(): void;
+  close(): void;
+}
+
+/** The index of the book in a directory; opened at the first question. */
+export function keepIndex(directory: string, book: string): IndexKeeper {
+  let index: Index | null = null;
+  /** The seal with which the index was last found level. */
+  let level: Seal | null = null;
+
+  const opened = (): Index => {
+    if (index === null) index = openOrReplace(directory, book);
+    return index;
+  };
+  const drop = (replacement: () => Index): Index => {
+    index?.close();
+    level = null;
+    index = replacement();
+    return index;
+  };
+  const sync = (): Index => {
+    const current = opened();
+    const seal = readSeal(directory);
+    if (typeof seal !== 'string' && level !== null && sameSeal(seal, level)) return current;
+    bringUp(current, directory, typeof seal === 'string' ? null : seal);
+    level = typeof seal === 'string' ? null : seal;
+    return current;
+  };
+
+  return {
+    ask(question) {
+      try {
+        return question(sync());
+      } catch (error) {
+        const code = sqliteCode(error);
+        if (code === null) throw error;
+        // The last level state is still a true answer; the next question tries again.
+        if (code === BUSY && index !== null) return question(index);
+        drop(() => (isBroken(code) ? openAgain(directory, book) : openIndex(':memory:', book)));
+        return question(sync());
+      }
+    },
+    rebuild() {
+      const seal = readSeal(directory);
+      const name = typeof seal === 'string' ? book : seal.book;
+      readNew(directory, emptyExtent(name), typeof seal === 'string' ? null : seal, (lines) =>
+        opened().rebuild(name, lines),
+      );
+      level = null;
+    },
+    close() {
+      index?.close();
+      index = null;
+      level = null;
+    },
+  };
+}
+
+/** Adds what the ledger has beyond the index, or makes the index again where it does not fit. */
+function bringUp(index: Index, directory: string, seal: Seal | null): void {
+  const extent = index.extent();
+  if (seal === null) {
+    readNew(directory, extent, null, (lines) => index.add(lines));
+    return;
+  }
+  if (extent.bytes === seal.bytes && extent.last === seal.last && extent.book === seal.book) return;
+  const fits = extent.book === seal.book && extent.bytes < seal.bytes && continues(directory, extent);
+  if (fits) readNew(directory, extent, seal, (lines) => index.add(lines));
+  else readNew(directory, emptyExtent(seal.book), seal, (lines) => index.rebuild(seal.book, lines));
+}
+
+/** Hands over the entries between the extent and the seal (or, without a seal, the end of the last whole line).
+ *  @throws LedgerProblem 'ledger-damaged' at the first line that does not continue the chain. */
+function readNew(
+  directory: string,
+  extent: Extent,
+  seal: Seal | null,
+  use: (lines: Iterable<IndexedLine>) => void,
+): void {
+  const path = ledgerPath(directory);
+  withFile(path, (descriptor) => use(chain(path, descriptor, extent, seal)));
+}
+
+function* chain(
+  path: string,
+  descriptor: number,
+  extent: Extent,
+  seal: Seal | null,
+): Generator<IndexedLine, void> {
+  let { entries, bytes: position, last } = extent;
+  for (const line of linesOf(descriptor, position, seal?.bytes ?? sizeOf(descriptor))) {
+    if (!line.whole) break;
+    const entry = entryOf(path, entries + 1, line.bytes);
+    if (entry.number !== entries + 1)
+      throw ledgerDamaged(path, entries + 1, `expected entry ${entries + 1}, got ${entry.number}`);
+    if (entry.before !== last) {
+      throw ledgerDamaged(
+        path,
+        entries + 1,
+        `the digest of the line before is ${last}, the entry says ${entry.before}`,
+      );
+    }
+    entries += 1;
+    last = sha256(line.bytes);
+    position += line.bytes.length + 1;
+    yield { entry, digest: last, length: line.bytes.length };
+  }
+  if (seal !== null && (position !== seal.bytes || last !== seal.last)) {
+    throw ledgerDamaged(path, seal.entries, `the seal says ${seal.entries} entries, the last ${seal.last}`);
+  }
+}
+
+function entryOf(path: string, line: number, bytes: Buffer) {
+  try {
+    return parseEntry(bytes);
+  } catch (error) {
+    throw ledgerDamaged(path, line, (error as Error).message.replace(/\.$/, ''));
+  }
+}
+
+/** Whether the line after the extent names the extent's last digest; false for another book's index. */
+function continues(directory: string, extent: Extent): boolean {
+  return withFile(ledgerPath(directory), (descriptor) => {
+    for (const { bytes } of linesOf(descriptor, extent.bytes, sizeOf(descriptor))) {
+      try {
+        return parseEntry(bytes).before === extent.last;
+      } catch {
+        return false;
+      }
+    }
+    return false;
+  });
+}
+
+function openOrReplace(directory: string, book: string): Index {
+  try {
+    return openIndex(join(directory, 'index.sqlite'), book);
+  } catch (error) {
+    const code = sqliteCode(error);
+    if (code === null) throw error;
+    return isBroken(code) ? openAgain(directory, book) : openIndex(':memory:', book);
+  }
+}
+
+/** A new index in place of one that is no database. */
+function openAgain(directory: string, book: string): Index {
+  try {
+    for (const suffix of ['', '-wal', '-shm'])
+      rmSync(join(directory, `index.sqlite${suffix}`), { force: true });
+    return openIndex(join(directory, 'index.sqlite'), book);
+  } catch {
+    return openIndex(':memory:', book);
+  }
+}
+
+function emptyExtent(book: string): Extent {
+  return { book, entries: 0, bytes: 0, last: sha256('') };
+}
+
+function sameSeal(a: Seal, b: Seal): boolean {
+  return a.bytes === b.bytes && a.last === b.last && a.book === b.book;
+}
+
+function isBroken(code: number): boolean {
+  return code === CORRUPT || code === NOT_A_DATABASE;
+}
+
+/** The primary result code of SQLite's error; null for any other error. */
+function sqliteCode(error: unknown): number | null {
+  const { errcode } = error as { errcode?: number };
+  return typeof errcode === 'number' ? errcode & 0xff : null;
+}

@@ -1,0 +1,49 @@
+/** `audit`: is every entry and every stored byte what the ledger says. */
+
+import { resolve } from 'node:path';
+import { type AuditDocument, audit } from '../../ledger/audit.ts';
+import { openBook } from '../../ledger/book.ts';
+import { LedgerProblem } from '../../ledger/problem.ts';
+import type { CommonOptions, ExitStatus, Io } from '../command.ts';
+import { counted, labelled, roundSize, wrapText } from '../text-table.ts';
+
+/** Prints the verdict; status 1 when it is `damaged`. Reads everything that the book holds. */
+export function auditCommand(options: CommonOptions, io: Io): ExitStatus {
+  const directory = resolve(options.book);
+  const name = settle(directory, io);
+  const document = audit({ directory });
+  io.out(options.json ? `${JSON.stringify(document, null, 2)}\n` : auditText(document, name, io.columns));
+  return document.verdict === 'sound' ? 0 : 1;
+}
+
+/** Opens and closes the book, so that what a crash left is put right before it is judged. Damage is the audit's to
+ *  tell. @returns the book's name */
+function settle(directory: string, io: Io): string {
+  try {
+    const book = openBook(directory, {
+      announce: (text, what) => what === 'put right' && io.err(`${text}\n`),
+    });
+    book.close();
+    return book.name;
+  } catch (error) {
+    if (error instanceof LedgerProblem && error.code === 'ledger-damaged') return directory;
+    throw error;
+  }
+}
+
+function auditText(
+  { verdict, entries, problems, remarks, files, bytes }: AuditDocument,
+  book: string,
+  columns: number,
+): string {
+  const width = Math.min(100, Math.max(80, columns));
+  const read = `${counted(entries, 'entry', 'entries')}, ${counted(files, 'file', 'files')} in the store, ${roundSize(bytes)}`;
+  const lines = [`Book ${book}: ${verdict}`, '', `  read: ${read}`];
+  if (verdict === 'sound') lines.push('  Every entry and every stored byte is what the ledger says.');
+  if (problems.length > 0) lines.push('', `${counted(problems.length, 'problem', 'problems')}:`, '');
+  const labels = Math.max(0, ...problems.map(({ entry }) => `entry ${entry}`.length));
+  for (const { entry, what } of problems) lines.push(...labelled(`entry ${entry}`, what, labels, 2, width));
+  if (remarks.length > 0) lines.push('', 'Remarks, no damage:', '');
+  for (const remark of remarks) lines.push(...wrapText(remark, width - 2).map((line) => `  ${line}`));
+  return `${lines.join('\n')}\n`;
+}

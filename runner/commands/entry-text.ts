@@ -1,0 +1,280 @@
+/** An entry in full, as text: down to the digest, size and path of every file that it names. */
+
+import type {
+  Entry,
+  FailureEntry,
+  Json,
+  PlateEntry,
+  RecordedFinding,
+  RerunEntry,
+  RunEntry,
+  StageEntry,
+  StoredFile,
+} from '../../ledger/entry.ts';
+import type { TracedEntry } from '../../ledger/trace.ts';
+import { roundedNumber } from '../../stages/formats/drawing/rounding.ts';
+import {
+  alignRows,
+  counted,
+  labelled,
+  NO_BREAK,
+  readableTime,
+  roundSize,
+  thousands,
+  wrapText,
+} from '../text-table.ts';
+import { entryTitle } from './entry-title.ts';
+
+/** Blanks before a name inside an entry, and the least width of the column of names. */
+const INDENT = 4;
+const NAMES = 14;
+
+/** The lines of one entry. @param lineage  entries whose names can be told */
+export function entryLines(entry: TracedEntry, lineage: readonly TracedEntry[], width: number): string[] {
+  const title = `Entry ${entry.number}: ${entryTitle(entry)}`;
+  const heading = [title, '-'.repeat(title.length)];
+  const common = field('entered', `${readableTime(entry.time)} UTC by ${entry.by.name}`, width).concat(
+    field('digest', entry.digest, width),
+  );
+  return [...heading, ...common, ...bodyLines(entry, lineage, width)];
+}
+
+function bodyLines(entry: Entry, lineage: readonly TracedEntry[], width: number): string[] {
+  switch (entry.type) {
+    case 'stage':
+      return stageLines(entry, lineage, width);
+    case 'failure':
+      return failureLines(entry, lineage, width);
+    case 'run':
+      return runLines(entry, width);
+    case 'plate':
+      return plateLines(entry, width);
+    case 'rerun':
+      return rerunLines(entry, width);
+    default:
+      return [];
+  }
+}
+
+function stageLines(entry: StageEntry, lineage: readonly TracedEntry[], width: number): string[] {
+  const outputs = Object.entries(entry.outputs).flatMap(([name, file]) =>
+    storedFile(name, file.format, file, width),
+  );
+  return [
+    ...executionLines(entry, width),
+    ...inputLines(entry, lineage, width),
+    ...parameterLines(entry.parameters, entry.seed, width),
+    ...section('outputs', outputs),
+    ...section('log', entry.log === null ? [] : storedFile('log', 'text', entry.log, width)),
+    ...findingLines(entry.findings, width),
+    ...section(
+      'warnings',
+      entry.warnings.flatMap((text) => item(text, width)),
+    ),
+    ...section('stopped the run', entry.stop === null ? [] : item(entry.stop, width)),
+    ...section('mark on plates', entry.mark === null ? [] : item(entry.mark, width)),
+  ];
+}
+
+function failureLines(entry: FailureEntry, lineage: readonly TracedEntry[], width: number): string[] {
+  return [
+    ...executionLines(entry, width),
+    ...inputLines(entry, lineage, width),
+    ...parameterLines(entry.parameters, entry.seed, width),
+    ...section('log', entry.log === null ? [] : storedFile('log', 'text', entry.log, width)),
+    ...section(`failed: ${entry.error.code}`, item(entry.error.message, width)),
+  ];
+}
+
+function executionLines(
+  { code, platform, seconds, peakMemory }: StageEntry | FailureEntry,
+  width: number,
+): string[] {
+  const files = counted(Object.keys(code.files).length, 'file', 'files');
+  const packages = counted(Object.keys(code.packages).length, 'package', 'packages');
+  const memory = peakMemory > 0 ? `, at most ${roundSize(peakMemory)}` : '';
+  return [
+    ...field('code', code.digest, width),
+    ...field('', `version ${code.version}, ${files}, ${packages}, runtime ${code.runtime}`, width),
+    ...field('executed', `on ${platform}, ${seconds.toFixed(1)} s${memory}`, width),
+  ];
+}
+
+function inputLines(
+  { inputs }: StageEntry | FailureEntry,
+  lineage: readonly TracedEntry[],
+  width: number,
+): string[] {
+  const lines = Object.entries(inputs).flatMap(([name, list]) =>
+    list.flatMap(({ origin, digest, bytes }, i) => {
+      const label = list.length > 1 ? `${name} ${i + 1}` : name;
+      const from =
+        'file' in origin
+          ? `file ${origin.file}`
+          : `output ${origin.output} of ${entryNamed(origin.entry, lineage)}`;
+      return [
+        ...named(label, `${from}, ${thousands(bytes)} bytes`, width),
+        ...named('', `digest ${digest}`, width),
+      ];
+    }),
+  );
+  return section('inputs', lines);
+}
+
+function entryNamed(number: number, lineage: readonly TracedEntry[]): string {
+  const entry = lineage.find((candidate) => candidate.number === number);
+  return entry?.type === 'stage' ? `entry ${number}, ${entry.name}` : `entry ${number}`;
+}
+
+function parameterLines(
+  parameters: { readonly [name: string]: Json },
+  seed: number | null,
+  width: number,
+): string[] {
+  const flat = flatten('', parameters);
+  if (seed !== null && !('seed' in parameters)) flat.push(['seed', String(seed)]);
+  const labels = Math.min(36, Math.max(NAMES, ...flat.map(([name]) => name.length)));
+  return section(
+    'parameters',
+    flat.flatMap(([name, text]) => labelled(name, text, labels, INDENT, width)),
+  );
+}
+
+/** Parameters by name, the fields of a group by dotted path; what lies deeper stands in one piece. A list of groups has
+ *  one line for each. */
+function flatten(path: string, value: Json): [string, string][] {
+  if (isLeaf(value)) return [[path, plain(value)]];
+  if (Array.isArray(value)) {
+    return value.every(isLeaf)
+      ? [[path, plain(value)]]
+      : value.map((each, i) => [`${path}.${i}`, plain(each)]);
+  }
+  const fields = Object.entries(value as { readonly [key: string]: Json });
+  if (path.includes('.')) return [[path, plain(value)]];
+  if (fields.length === 0) return path === '' ? [] : [[path, 'none']];
+  return fields.flatMap(([key, field]) => flatten(path === '' ? key : `${path}.${key}`, field));
+}
+
+function isLeaf(value: Json): boolean {
+  return typeof value !== 'object' || value === null || isQuantity(value);
+}
+
+/** A value in one piece of text, without quotation marks where none are needed. */
+export function plain(value: Json): string {
+  if (typeof value === 'string') return value === '' ? '""' : value;
+  if (typeof value !== 'object' || value === null) return String(value);
+  if (Array.isArray(value)) return value.length === 0 ? 'none' : value.map(plain).join(', ');
+  if (isQuantity(value)) return `${plain(value.value as Json)}${NO_BREAK}${value.unit}`.trim();
+  return Object.entries(value)
+    .sort(([a], [b]) => Number(b === 'name') - Number(a === 'name'))
+    .map(([key, field]) => `${key}${NO_BREAK}${Array.isArray(field) ? `(${plain(field)})` : plain(field)}`)
+    .join('; ');
+}
+
+function isQuantity(value: Json): value is { readonly [key: string]: Json } {
+  return (
+    typeof value === 'object' &&
+    value !== null &&
+    Object.keys(value).length === 2 &&
+    'value' in value &&
+    'unit' in value
+  );
+}
+
+function findingLines(findings: readonly RecordedFinding[], width: number): string[] {
+  const good = findings.filter(({ finding }) => finding === 'within limits').length;
+  const others = findings.filter(({ finding }) => finding !== 'within limits');
+  const lines = others.flatMap(({ check, finding, value, marginal, limit, detail }) =>
+    named(
+      check,
+      `${finding}: ${roundedNumber(value, null, null)} (marginal ${marginal}, limit ${limit}). ${detail}`,
+      width,
+    ),
+  );
+  if (good > 0) lines.push(...item(`${counted(good, 'check is', 'checks are')} within limits`, width));
+  return section('findings', lines);
+}
+
+function runLines(
+  { recipe, overrides, stages, plates, numbers, finished }: RunEntry,
+  width: number,
+): string[] {
+  const stageRows = stages.map(({ stage, kind, state, entry }) => [
+    stage,
+    kind,
+    state,
+    entry === null ? '' : `entry ${entry}`,
+  ]);
+  const plateRows = plates.map(({ name, plate, entry }) => [name, plate, `entry ${entry}`]);
+  const numberRows = numbers.map(({ name, value, low, high, unit, entry, output }) => [
+    name,
+    `${roundedNumber(value, low, high)} ${unit}`.trim(),
+    `entry ${entry}, ${output}`,
+  ]);
+  return [
+    ...field('finished', finished ? 'yes' : 'no', width),
+    ...section('recipe', storedFile(recipe.name, `as ${recipe.path}`, recipe, width)),
+    ...section(
+      'overrides',
+      overrides.flatMap(({ stage, parameter, text }) => item(`${stage}.${parameter}=${text}`, width)),
+    ),
+    ...section('stages', alignRows(stageRows, [], INDENT)),
+    ...section('plates', alignRows(plateRows, [], INDENT)),
+    ...section('numbers', alignRows(numberRows, [], INDENT)),
+  ];
+}
+
+function plateLines({ drawn, output, figure, stamped, mark }: PlateEntry, width: number): string[] {
+  return [
+    ...section('figure', [
+      ...named(output, `of entry ${drawn}`, width),
+      ...named('', `digest ${figure}`, width),
+    ]),
+    ...section('plate, with its number', [
+      ...storedFile('svg', 'SVG', stamped.svg, width),
+      ...storedFile('png', 'PNG', stamped.png, width),
+    ]),
+    ...section('mark', mark === null ? [] : item(mark, width)),
+  ];
+}
+
+function rerunLines({ of, verdict, outputs, differences }: RerunEntry, width: number): string[] {
+  const rows = outputs.map(({ stage, output, verdict }) => [`${stage}.${output}`, verdict]);
+  return [
+    ...field('again', `entry ${of}`, width),
+    ...field('verdict', verdict, width),
+    ...section('outputs', alignRows(rows, [], INDENT)),
+    ...section(
+      'differences from the record',
+      differences.flatMap((text) => item(text, width)),
+    ),
+  ];
+}
+
+// Pieces
+
+function section(title: string, lines: readonly string[]): string[] {
+  return lines.length === 0 ? [] : [`  ${title}`, ...lines];
+}
+
+/** A field of the entry itself. */
+function field(label: string, text: string, width: number): string[] {
+  return labelled(label, text, NAMES + INDENT - 2, 2, width);
+}
+
+/** A named thing inside a section. */
+function named(label: string, text: string, width: number): string[] {
+  return labelled(label, text, NAMES, INDENT, width);
+}
+
+function item(text: string, width: number): string[] {
+  return wrapText(text, width - INDENT).map((line) => ' '.repeat(INDENT) + line);
+}
+
+/** A file of the store; its path holds the whole digest. */
+function storedFile(label: string, format: string, { digest, bytes }: StoredFile, width: number): string[] {
+  return [
+    ...named(label, `${format}, ${thousands(bytes)} bytes`, width),
+    ...named('', `store/${digest.slice(0, 3)}/${digest}`, width),
+  ];
+}

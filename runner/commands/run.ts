@@ -1,0 +1,185 @@
+/** `run RECIPE`: executes a recipe and enters it in the book. */
+
+import { basename, isAbsolute, relative, resolve } from 'node:path';
+import { type Book, openBook } from '../../ledger/book.ts';
+import type { RunEntry, StoredFile } from '../../ledger/entry.ts';
+import { stageKinds } from '../../stages/kinds.ts';
+import type { CommonOptions, ExitStatus, Io } from '../command.ts';
+import { writer } from '../configuration.ts';
+import { execute } from '../execute.ts';
+import { isGood, type Job, type Outcome } from '../job.ts';
+import { kindsFolder, stageEngine } from '../program.ts';
+import { makeProgress } from '../progress.ts';
+import { layNumbers, type Plate, type PublishedNumbers, publishFigures, publishNumbers } from '../publish.ts';
+import { type DeclaredStage, type Recipe, readRecipe } from '../recipe/recipe.ts';
+import { runText } from '../run-text.ts';
+
+export interface RunOptions extends CommonOptions {
+  readonly cores: number;
+  readonly let: readonly string[];
+  readonly root: readonly string[];
+  readonly afresh: boolean;
+  readonly strict: boolean;
+  readonly plates: string;
+  readonly by?: string;
+  readonly signal: AbortSignal;
+}
+
+/** What a finished run is told by, on the terminal and as JSON. */
+export interface RunSummary {
+  readonly run: RunEntry;
+  readonly recipe: Recipe;
+  readonly outcomes: readonly Outcome[];
+  readonly plates: readonly Plate[];
+  readonly numbers: PublishedNumbers;
+  readonly files: readonly string[];
+}
+
+export async function runCommand(recipePath: string, options: RunOptions, io: Io): Promise<ExitStatus> {
+  const roots = options.root.map((root) => resolve(io.cwd, root));
+  const path = resolve(io.cwd, recipePath);
+  const recipe = readRecipe({ path, shown: recipePath, kinds: stageKinds, roots, lets: options.let });
+  const book = openBook(options.book, {
+    by: await writer(io, options.by),
+    create: true,
+    announce: (text) => io.err(`${text}\n`),
+  });
+  try {
+    const summary = await runRecipe(recipe, recipePath, book, options, io);
+    if (options.json) io.out(`${JSON.stringify(runDocument(summary, book), null, 2)}\n`);
+    else if (!options.quiet) io.out(runText(summary, options, io));
+    return summary.run.finished ? 0 : 1;
+  } finally {
+    book.close();
+  }
+}
+
+async function runRecipe(
+  recipe: Recipe,
+  recipePath: string,
+  book: Book,
+  options: RunOptions,
+  io: Io,
+): Promise<RunSummary> {
+  const recipeFile = book.store.keepBytes(recipe.bytes);
+  const jobs = recipe.stages.map(jobOf);
+  const progress = await makeProgress(io, jobs, options.quiet || options.json);
+  const outcomes = await execute(jobs, {
+    book,
+    cores: options.cores,
+    carry: !options.afresh,
+    enter: true,
+    strict: options.strict,
+    engine: stageEngine(io.env),
+    kindsFolder,
+    signal: options.signal,
+    reporter: progress,
+  }).finally(() => progress.close());
+  const byName = new Map(outcomes.map((outcome) => [outcome.name, outcome]));
+  const request = { recipe, jobs, outcomes: byName, book, folder: options.plates };
+  const plates = await publishFigures(request);
+  const numbers = publishNumbers(request);
+  const run = enterRun(
+    { recipe, recipePath: recordedPath(recipePath, io), recipeFile, outcomes, plates, numbers },
+    book,
+  );
+  const files = numbers.numbers.length === 0 ? [] : layNumbers(request, run.run, numbers.numbers);
+  return { run, recipe, outcomes, plates, numbers, files };
+}
+
+/** A stage of a recipe as the executor takes it. */
+function jobOf(stage: DeclaredStage): Job {
+  const inputs = Object.fromEntries(
+    Object.entries(stage.inputs).map(([name, references]) => [
+      name,
+      references.map((reference) =>
+        'file' in reference
+          ? {
+              from: 'file' as const,
+              given: reference.file,
+              path: reference.path,
+              keep: reference.keep,
+              expected: null,
+            }
+          : { from: 'stage' as const, ...reference },
+      ),
+    ]),
+  );
+  return {
+    name: stage.name,
+    kind: stage.kind,
+    inputs,
+    parameters: stage.parameters,
+    recorded: stage.recorded,
+  };
+}
+
+interface RunFacts {
+  readonly recipe: Recipe;
+  readonly recipePath: string;
+  readonly recipeFile: StoredFile;
+  readonly outcomes: readonly Outcome[];
+  readonly plates: readonly Plate[];
+  readonly numbers: PublishedNumbers;
+}
+
+function enterRun(facts: RunFacts, book: Book): RunEntry {
+  const { recipe, recipeFile, outcomes, plates, numbers } = facts;
+  const { entry } = book.append({
+    type: 'run',
+    recipe: { ...recipeFile, name: recipe.name, path: facts.recipePath },
+    overrides: recipe.overrides,
+    stages: outcomes.map(({ name, kind, state, entry }) => ({ stage: name, kind, state, entry })),
+    plates: plates.map(({ name, plate, entry }) => ({ name, plate, entry })),
+    numbers: numbers.numbers,
+    finished: outcomes.every((outcome) => isGood(outcome) && outcome.stop === null),
+  });
+  return entry as RunEntry;
+}
+
+/** The recipe's path as given; an absolute one relative to the working directory, or its name alone when it lies
+ *  outside: a home directory is nobody's business. */
+function recordedPath(given: string, io: Io): string {
+  if (!isAbsolute(given)) return given;
+  const inside = relative(io.cwd, given);
+  return inside.startsWith('..') ? basename(given) : inside;
+}
+
+/** The document of design section 7. */
+function runDocument(summary: RunSummary, book: Book) {
+  const { run, recipe, outcomes, plates, numbers } = summary;
+  return {
+    run: run.run,
+    entry: run.number,
+    recipe: recipe.name,
+    finished: run.finished,
+    stages: outcomes.map((outcome) => ({
+      stage: outcome.name,
+      kind: outcome.kind,
+      state: outcome.state,
+      entry: outcome.entry,
+      seconds: outcome.seconds,
+      outputs: Object.fromEntries(
+        Object.entries(outcome.outputs).map(([name, { digest, bytes }]) => [
+          name,
+          { digest, bytes, path: book.store.path(digest) },
+        ]),
+      ),
+      findings: outcome.findings,
+      warnings: outcome.warnings,
+      stop: outcome.stop,
+      error: outcome.error,
+    })),
+    plates,
+    numbers: numbers.numbers.map(({ name, value, low, high, unit, entry, against }) => ({
+      name,
+      value,
+      low,
+      high,
+      unit,
+      entry,
+      against,
+    })),
+    absent: numbers.absent,
+  };
+}

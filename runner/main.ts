@@ -1,0 +1,233 @@
+/** The command line. `main` is a function of words and an Io; only `runProcess` touches the process. */
+
+import { availableParallelism } from 'node:os';
+import { resolve } from 'node:path';
+import { Command, CommanderError, InvalidArgumentError, Option } from 'commander';
+import type { CommonOptions, ExitStatus, Io } from './command.ts';
+import { describeProblem } from './describe-problem.ts';
+import { programVersion } from './program.ts';
+
+interface Raw {
+  readonly book: string;
+  readonly json?: boolean;
+  readonly quiet?: boolean;
+  readonly [name: string]: unknown;
+}
+
+/** Runs one command. Every problem is printed, none is thrown.
+ *  @param words   the command line without node and program
+ *  @param signal  aborted when the user interrupts */
+export async function main(words: readonly string[], io: Io, signal: AbortSignal): Promise<ExitStatus> {
+  let status: ExitStatus = 0;
+  const program = makeProgram(io, signal, (ended) => {
+    status = ended;
+  });
+  try {
+    await program.parseAsync([...words], { from: 'user' });
+    return status;
+  } catch (error) {
+    if (error instanceof CommanderError) return error.exitCode === 0 ? 0 : 2;
+    const described = describeProblem(error);
+    if (words.includes('--json')) io.out(`${JSON.stringify(described.document, null, 2)}\n`);
+    else io.err(`${described.text}\n`);
+    return described.status;
+  }
+}
+
+/** Declares the commands. Their modules are loaded when called, so that each start pays for one only. */
+function makeProgram(io: Io, signal: AbortSignal, end: (status: ExitStatus) => void): Command {
+  const program = new Command('platebook')
+    .description(
+      'Runs a declared imaging pipeline on interferometer data, and keeps a ledger in which every input,\n' +
+        'parameter and output has its digest.',
+    )
+    .version(programVersion)
+    .exitOverride()
+    .configureOutput({ writeOut: io.out, writeErr: io.err })
+    .configureHelp({ helpWidth: Math.min(100, Math.max(60, io.columns)) })
+    .showHelpAfterError('(platebook --help lists the commands)')
+    .helpCommand(false);
+  const add = (name: string, description: string, example: string) => {
+    const command = program
+      .command(name)
+      .description(description)
+      .option('--book <dir>', 'the book', 'book')
+      .option('--json', 'print one JSON document and nothing else')
+      .option('--quiet', 'print problems only')
+      .addHelpText('after', `\nExample:\n  ${example.split('\n').join('\n  ')}`);
+    return command.copyInheritedSettings(program);
+  };
+  const common = (raw: Raw): CommonOptions => ({
+    book: resolve(io.cwd, raw.book),
+    json: raw.json === true,
+    quiet: raw.quiet === true,
+  });
+  addExecuting(add, common, io, signal, end);
+  addAsking(add, common, io, end);
+  addReading(add, common, io, end);
+  return program;
+}
+
+type Add = (name: string, description: string, example: string) => Command;
+type Common = (raw: Raw) => CommonOptions;
+type End = (status: ExitStatus) => void;
+
+function addExecuting(add: Add, common: Common, io: Io, signal: AbortSignal, end: End): void {
+  const list = (value: string, before: readonly string[]) => [...before, value];
+  const cores = () =>
+    new Option('--cores <n>', 'stages that run side by side at most')
+      .default(availableParallelism(), 'all')
+      .argParser(positiveInteger);
+  add(
+    'run',
+    'execute a recipe; enter it in the book',
+    'platebook run recipes/lantern/lantern.yaml --let fit.components=30',
+  )
+    .argument('<recipe>', 'the recipe, a YAML file')
+    .addOption(cores())
+    .option('--let <stage.parameter=value>', 'override one parameter for this run; may be repeated', list, [])
+    .option('--afresh', 'compute every stage again, carry nothing forward')
+    .option('--strict', 'read input files again even where size and times are as remembered')
+    .option(
+      '--root <dir>',
+      'a folder besides the recipe’s own from which inputs may come; may be repeated',
+      list,
+      [],
+    )
+    .option('--plates <dir>', 'where the plates and numbers are laid', 'plates')
+    .option('--by <name>', 'who writes in the book; otherwise from the configuration')
+    .action(async (recipe: string, raw: Raw) => {
+      const { runCommand } = await import('./commands/run.ts');
+      const options = {
+        ...common(raw),
+        cores: raw.cores as number,
+        let: raw.let as string[],
+        root: raw.root as string[],
+        afresh: raw.afresh === true,
+        strict: raw.strict === true,
+        plates: resolve(io.cwd, raw.plates as string),
+        ...(raw.by === undefined ? {} : { by: raw.by as string }),
+        signal,
+      };
+      end(await runCommand(recipe, options, io));
+    });
+  add(
+    'rerun',
+    'execute again what an entry, plate or run records, and compare',
+    'platebook rerun run 1\nplatebook rerun plates/lantern-ring/ring-image.png',
+  )
+    .argument('<what...>', 'an entry, a plate number, `run N`, a published number, a digest or a file')
+    .addOption(cores())
+    .option('--by <name>', 'who writes in the book; otherwise from the configuration')
+    .action(async (what: string[], raw: Raw) => {
+      const { rerunCommand } = await import('./commands/rerun.ts');
+      const by = raw.by === undefined ? {} : { by: raw.by as string };
+      end(await rerunCommand(what, { ...common(raw), cores: raw.cores as number, ...by, signal }, io));
+    });
+}
+
+function addAsking(add: Add, common: Common, io: Io, end: End): void {
+  add(
+    'trace',
+    'where does this come from: back to the bytes',
+    'platebook trace plates/lantern-ring/ring-image.png\nplatebook trace ring-diameter',
+  )
+    .argument('<what...>', 'an entry, a plate number, `run N`, a published number, a digest or a file')
+    .action(async (what: string[], raw: Raw) => {
+      const { traceCommand } = await import('./commands/trace.ts');
+      end(await traceCommand(what, common(raw), io));
+    });
+  add(
+    'diff',
+    'what is different between two runs, and what it did to the results',
+    'platebook diff 1 2\nplatebook diff last-1 last',
+  )
+    .argument('<a>', 'a run: its number, `last` or `last-1`')
+    .argument('<b>', 'another run')
+    .action(async (a: string, b: string, raw: Raw) => {
+      const { diffCommand } = await import('./commands/diff.ts');
+      end(await diffCommand([a, b], common(raw), io));
+    });
+  add('contents', 'the book’s table of contents', 'platebook contents --type run --last 5')
+    .option('--recipe <name>', 'runs of this recipe')
+    .option('--stage <name>', 'entries of this stage')
+    .option('--kind <kind>', 'entries of this kind of stage')
+    .option('--type <type>', 'stage, failure, run, plate or rerun')
+    .option('--since <date>', 'from this date on, such as 2026-03-01')
+    .option('--until <date>', 'up to this date')
+    .option('--digest <digest>', 'entries that name this digest')
+    .option('--last <n>', 'so many of the latest', positiveInteger, 20)
+    .action(async (raw: Raw) => {
+      const { contentsCommand } = await import('./commands/contents.ts');
+      const { recipe, stage, kind, type, since, until, digest, last } = raw;
+      const filters = { recipe, stage, kind, type, since, until, digest, last };
+      end(await contentsCommand({ ...common(raw), ...(filters as object) }, io));
+    });
+  add('audit', 'is every entry and every stored byte what the ledger says', 'platebook audit').action(
+    async (raw: Raw) => {
+      const { auditCommand } = await import('./commands/audit.ts');
+      end(await auditCommand(common(raw), io));
+    },
+  );
+}
+
+function addReading(add: Add, common: Common, io: Io, end: End): void {
+  add(
+    'proofread',
+    'read a recipe, say what is wrong, compute nothing',
+    'platebook proofread recipes/lantern/lantern.yaml',
+  )
+    .argument('<recipe>', 'the recipe, a YAML file')
+    .option(
+      '--root <dir>',
+      'a folder from which inputs may come',
+      (value, before: string[]) => [...before, value],
+      [],
+    )
+    .action(async (recipe: string, raw: Raw) => {
+      const { proofreadCommand } = await import('./commands/proofread.ts');
+      end(await proofreadCommand(recipe, { ...common(raw), root: raw.root as string[] }, io));
+    });
+  add(
+    'kinds',
+    'the stage kinds with their inputs, parameters, units and outputs',
+    'platebook kinds\nplatebook kinds fit',
+  )
+    .argument('[kind]', 'one kind, in full')
+    .action(async (kind: string | undefined, raw: Raw) => {
+      const { kindsCommand } = await import('./commands/kinds.ts');
+      end(await kindsCommand(kind, common(raw), io));
+    });
+}
+
+function positiveInteger(text: string): number {
+  const value = Number(text);
+  if (!(Number.isSafeInteger(value) && value >= 1)) {
+    throw new InvalidArgumentError('Expected a whole number from 1 on.');
+  }
+  return value;
+}
+
+/** Runs the command line of a process and sets its exit status. Ctrl-C asks the command to stop; a second one leaves
+ *  at once. */
+export async function runProcess(target: NodeJS.Process): Promise<void> {
+  const interruption = new AbortController();
+  let asked = 0;
+  const interrupt = () => {
+    asked += 1;
+    if (asked === 1) interruption.abort();
+    else target.exit(1);
+  };
+  target.on('SIGINT', interrupt);
+  target.on('SIGTERM', interrupt);
+  const io: Io = {
+    out: (text) => target.stdout.write(text),
+    err: (text) => target.stderr.write(text),
+    errorStream: target.stderr,
+    cwd: target.cwd(),
+    env: target.env,
+    terminal: target.stderr.isTTY === true,
+    columns: target.stdout.columns ?? 100,
+  };
+  target.exitCode = await main(target.argv.slice(2), io, interruption.signal);
+}

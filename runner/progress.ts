@@ -1,0 +1,101 @@
+/** What a person sees of a run while it goes on: one line per stage as it ends, and on a terminal a line for each stage
+ *  that is running. Everything goes to standard error, so that standard output holds results only. */
+
+import type { Io } from './command.ts';
+import type { ExecutionReporter } from './execute.ts';
+import type { Job, Outcome } from './job.ts';
+
+/** Milliseconds between two drawings of the running stages. */
+const redrawEvery = 120;
+const barCells = 20;
+
+export interface ProgressDisplay extends ExecutionReporter {
+  /** Ends the drawing; what stands stays. */
+  close(): void;
+}
+
+/** A display for these jobs. Quiet says nothing; without a terminal each stage has one line, when it ends. */
+export async function makeProgress(io: Io, jobs: readonly Job[], quiet: boolean): Promise<ProgressDisplay> {
+  const width = Math.max(...jobs.map((job) => job.name.length));
+  if (quiet) return { started() {}, progress() {}, ended() {}, close() {} };
+  if (!io.terminal) {
+    const ended = (outcome: Outcome) => io.err(`${endedLine(outcome, width)}\n`);
+    return { started() {}, progress() {}, ended, close() {} };
+  }
+  return terminalDisplay(io, width);
+}
+
+interface Running {
+  readonly since: number;
+  fraction: number | null;
+}
+
+async function terminalDisplay(io: Io, width: number): Promise<ProgressDisplay> {
+  const { createLogUpdate } = await import('log-update');
+  const running = new Map<string, Running>();
+  const draw = createLogUpdate(io.errorStream);
+  const redraw = () => draw([...running].map(([name, state]) => runningLine(name, state, width)).join('\n'));
+  const timer = setInterval(redraw, redrawEvery);
+  return {
+    started(job) {
+      running.set(job.name, { since: performance.now(), fraction: null });
+      redraw();
+    },
+    progress(job, fraction) {
+      const state = running.get(job.name);
+      if (state !== undefined) state.fraction = fraction;
+    },
+    ended(outcome) {
+      running.delete(outcome.name);
+      draw.clear();
+      io.err(`${endedLine(outcome, width)}\n`);
+      redraw();
+    },
+    close() {
+      clearInterval(timer);
+      draw.clear();
+    },
+  };
+}
+
+function runningLine(name: string, state: Running, width: number): string {
+  const seconds = `${((performance.now() - state.since) / 1000).toFixed(0)} s`.padStart(6);
+  if (state.fraction === null)
+    return `  ${name.padEnd(width)}  ${'running'.padEnd(barCells + 5)}  ${seconds}`;
+  const cells = Math.round(state.fraction * barCells);
+  const bar = `${'='.repeat(cells)}${'.'.repeat(barCells - cells)}`;
+  const percent = `${Math.round(state.fraction * 100)}%`.padStart(4);
+  return `  ${name.padEnd(width)}  ${bar} ${percent}  ${seconds}`;
+}
+
+/** One line, and what the stage wants said below it. */
+export function endedLine(outcome: Outcome, width: number): string {
+  const entry = outcome.entry === null ? '' : `entry ${outcome.entry}`;
+  const time =
+    outcome.state === 'computed' || outcome.state === 'failed' ? `${outcome.seconds.toFixed(1)} s` : '';
+  const line = `  ${outcome.name.padEnd(width)}  ${outcome.state.padEnd(15)}  ${entry.padEnd(10)} ${time.padStart(8)}`;
+  const below = [
+    ...outcome.findings
+      .filter((finding) => finding.finding !== 'within limits')
+      .map((finding) => `${finding.finding}: ${finding.check}: ${finding.detail}`),
+    ...outcome.warnings.map((warning) => `warning: ${warning}`),
+    ...(outcome.stop === null ? [] : [`stopped the run: ${outcome.stop}`]),
+    ...(outcome.error === null ? [] : [outcome.error.message]),
+  ];
+  return [line.trimEnd(), ...below.map((text) => wrapped(text, 100, 4))].join('\n');
+}
+
+/** Text broken at spaces to lines of at most `columns`, every line indented. */
+export function wrapped(text: string, columns: number, indent: number): string {
+  const margin = ' '.repeat(indent);
+  const lines: string[] = [];
+  let line = '';
+  for (const word of text.split(/\s+/)) {
+    if (line !== '' && indent + line.length + 1 + word.length > columns) {
+      lines.push(line);
+      line = '  ';
+    }
+    line += line.trim() === '' ? word : ` ${word}`;
+  }
+  return [...lines, line].map((each) => margin + each).join('\n');
+}

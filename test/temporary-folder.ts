@@ -1,0 +1,11 @@
+/** One folder for everything that tests put into the system's temporary folder; it goes when they end. */
+
+import { mkdtempSync, rmSync } from 'node:fs';
+import { tmpdir } from 'node:os';
+import { join } from 'node:path';
+
+export default function setup(): () => void {
+  const folder = mkdtempSync(join(tmpdir(), 'platebook-tests-'));
+  process.env.TMPDIR = folder;
+  return () => rmSync(folder, { recursive: true, force: true });
+}
