@@ -91,6 +91,8 @@ test.each([
 
 test('refuses matrices that are not positive definite, that hold NaN, or have no full rank', () => {
   expect(cholesky(Float64Array.of(1, 2, 2, 1), 2)).toBeNull();
+  expect(cholesky(Float64Array.of(1, 1.1, 1.1, 1), 2)).toBeNull();
+  expect(cholesky(Float64Array.of(0), 1)).toBeNull();
   expect(cholesky(Float64Array.of(1, 0, 0, Number.NaN), 2)).toBeNull();
   expect(leastSquares(Float64Array.of(1, 2, 2, 4, 3, 6), Float64Array.of(1, 2, 3), 2)).toBeNull();
 });

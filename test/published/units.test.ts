@@ -52,6 +52,8 @@ const rejected = [
     'microarcsec',
   ],
   ...['μas', 'µas'],
+  // One `/` in all, whatever the brackets (VOUnits 1.0, section 2.3).
+  ...['(W/m**2)/Hz', 'W/(m/s)'],
 ];
 
 // SI brochure, 9th edition; IAU 2012 B2 (au), IAU 2015 B2 (pc); computed with 30 digits by a library of arbitrary
@@ -74,6 +76,9 @@ const factors: readonly (readonly [value: number, from: string, to: string, expe
   [1, 'hPa', 'Pa', '100'],
   [1, 'GHz', 'Hz', '1e9'],
   [1, 'h', 's', '3600'],
+  // Quotients within 1e-11 of a tie between two doubles; the nearest by Python's fractions module.
+  [38304028719947, 'm', 'AU', '256.04661711235843'],
+  [4820728124209, 'm', 'AU', '32.224577139044804'],
   // GM_sun 1.3271244e20 (IAU 2015 B3 nominal) over G 6.67430e-11 (CODATA 2018), to the digits given.
   [1, 'solMass', 'kg', '1.9884098707e30'],
 ];

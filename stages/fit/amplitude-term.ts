@@ -1,0 +1,244 @@
+/** Amplitudes as a data term, with one gain per station and scan as a nuisance:
+ *
+ *    residual   (E|e^{g_i + g_j} M + n| - A) / sigma,   the mean under noise from rice.ts
+ *    penalty    g_i^2 / tau_i^2 / 2                     Gaussian prior on the logarithm of each gain
+ *
+ *  For given model visibilities M the gains of a scan are set to their optimum; their curvature is taken out of that of
+ *  the parameters by the Schur complement (variable projection: Golub and Pereyra 1973, SIAM J. Numer. Anal. 10, 413),
+ *  which in the Gaussian approximation is the marginalisation over them. */
+
+import type { Visibilities } from '../data.ts';
+import { exp } from '../numerics/elementary.ts';
+import { cholesky, invertCholesky, solveCholesky, solveLower } from '../numerics/linear.ts';
+import type { LinearModel, ModelVisibilities } from './linear-model.ts';
+import { riceMean } from './rice.ts';
+import { addResidual, type Expansion, logDerivatives, type Term } from './term.ts';
+
+/** Log gains of the stations of one scan at the optimum, with their conditional standard deviations. */
+export interface ScanGains {
+  readonly scan: number;
+  /** Indices of the stations. */
+  readonly stations: readonly number[];
+  readonly logGains: Float64Array;
+  readonly deviations: Float64Array;
+}
+
+export interface AmplitudeTerm extends Term {
+  gains(at: ModelVisibilities): ScanGains[];
+  only(scans: ReadonlySet<number>): AmplitudeTerm;
+}
+
+interface Scan {
+  readonly scan: number;
+  readonly rows: readonly number[];
+  readonly stations: readonly number[];
+  /** Places of the two stations of each row in `stations`. */
+  readonly first: Int32Array;
+  readonly second: Int32Array;
+}
+
+interface Solved {
+  readonly g: Float64Array;
+  /** Whitened residuals by row of the scan. */
+  readonly residuals: Float64Array;
+  /** d residual / d ln(e^{g_i+g_j}|M|). */
+  readonly slopes: Float64Array;
+  /** Cholesky factor of the gains' curvature. */
+  readonly L: Float64Array;
+}
+
+/** Newton steps for the gains of a scan; from zero five are usual. */
+const MOST_STEPS = 40;
+/** Largest change of a log gain in one step: keeps the first steps inside the region of convergence. */
+const LARGEST_STEP = 0.5;
+const TOLERANCE = 1e-10;
+
+/** @param deviations  prior standard deviation of each station's log gain, by station index */
+export function makeAmplitudeTerm(data: Visibilities, deviations: Float64Array): AmplitudeTerm {
+  const amplitudes = data.re.map((re, r) => Math.sqrt(re * re + data.im[r] * data.im[r]));
+  return amplitudeTerm(data, amplitudes, deviations, groupByScan(data));
+}
+
+function groupByScan(data: Visibilities): Scan[] {
+  const rowsOf = new Map<number, number[]>();
+  for (let r = 0; r < data.count; r++) {
+    const rows = rowsOf.get(data.scan[r]);
+    if (rows) rows.push(r);
+    else rowsOf.set(data.scan[r], [r]);
+  }
+  const scans = [...rowsOf].sort(([a], [b]) => a - b);
+  return scans.map(([scan, rows]) => {
+    const present = rows.flatMap((r) => [data.station1[r], data.station2[r]]);
+    const stations = [...new Set(present)].sort((a, b) => a - b);
+    const places = (list: Int32Array) => Int32Array.from(rows, (r) => stations.indexOf(list[r]));
+    return { scan, rows, stations, first: places(data.station1), second: places(data.station2) };
+  });
+}
+
+function amplitudeTerm(
+  data: Visibilities,
+  amplitudes: Float64Array,
+  deviations: Float64Array,
+  scans: readonly Scan[],
+): AmplitudeTerm {
+  const solve = (scan: Scan, at: ModelVisibilities) =>
+    solveGains(scan, at, data.sigma, amplitudes, deviations);
+  const sumOver = (value: (scan: Scan) => number) => scans.reduce((sum, scan) => sum + value(scan), 0);
+  return {
+    name: 'amplitudes with gains',
+    count: sumOver((scan) => scan.rows.length),
+    scans: scans.map(({ scan }) => scan),
+    chiSquare: (at) => sumOver((scan) => squares(solve(scan, at).residuals)),
+    cost: (at) => sumOver((scan) => scanCost(scan, solve(scan, at), deviations)),
+    nuisances: (at) => sumOver((scan) => effectiveGains(scan, solve(scan, at).L, deviations)),
+    gains: (at) =>
+      scans.map((scan) => {
+        const { g, L } = solve(scan, at);
+        const n = g.length;
+        const inverse = invertCholesky(L, n);
+        const sd = Float64Array.from({ length: n }, (_, i) => Math.sqrt(inverse[i * n + i]));
+        return { scan: scan.scan, stations: scan.stations, logGains: g, deviations: sd };
+      }),
+    expand: (at, model, out) =>
+      sumOver((scan) => {
+        const solved = solve(scan, at);
+        expandScan(scan, solved, at, model, out);
+        return scanCost(scan, solved, deviations);
+      }),
+    only: (wanted) =>
+      amplitudeTerm(
+        data,
+        amplitudes,
+        deviations,
+        scans.filter(({ scan }) => wanted.has(scan)),
+      ),
+  };
+}
+
+/** The gains that minimise the scan's cost, by damped Newton steps from zero. */
+function solveGains(
+  scan: Scan,
+  at: ModelVisibilities,
+  sigma: Float64Array,
+  amplitudes: Float64Array,
+  deviations: Float64Array,
+): Solved {
+  const n = scan.stations.length;
+  const g = new Float64Array(n);
+  const residuals = new Float64Array(scan.rows.length);
+  const slopes = new Float64Array(scan.rows.length);
+  const sizes = Float64Array.from(
+    scan.rows,
+    (r) => Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r],
+  );
+  const H = new Float64Array(n * n);
+  const gradient = new Float64Array(n);
+  let L: Float64Array = new Float64Array(n * n);
+  for (let step = 0; step < MOST_STEPS; step++) {
+    H.fill(0);
+    for (let i = 0; i < n; i++) {
+      const weight = 1 / (deviations[scan.stations[i]] * deviations[scan.stations[i]]);
+      H[i * n + i] = weight;
+      gradient[i] = weight * g[i];
+    }
+    for (let m = 0; m < scan.rows.length; m++) {
+      const r = scan.rows[m];
+      const i = scan.first[m];
+      const j = scan.second[m];
+      const nu = sizes[m] * exp(g[i] + g[j]);
+      const [mean, slope] = riceMean(nu);
+      residuals[m] = mean - amplitudes[r] / sigma[r];
+      const d = nu * slope;
+      slopes[m] = d;
+      gradient[i] += residuals[m] * d;
+      gradient[j] += residuals[m] * d;
+      H[i * n + i] += d * d;
+      H[j * n + j] += d * d;
+      H[Math.max(i, j) * n + Math.min(i, j)] += d * d;
+    }
+    L = cholesky(H, n) ?? L;
+    const change = solveCholesky(L, gradient);
+    const largest = change.reduce((most, value) => Math.max(most, Math.abs(value)), 0);
+    if (!(largest > TOLERANCE)) break;
+    const scale = Math.min(1, LARGEST_STEP / largest);
+    for (let i = 0; i < n; i++) g[i] -= scale * change[i];
+  }
+  return { g, residuals, slopes, L };
+}
+
+function expandScan(
+  scan: Scan,
+  solved: Solved,
+  at: ModelVisibilities,
+  model: LinearModel,
+  out: Expansion,
+): void {
+  const columns = out.gradient.length;
+  const n = scan.stations.length;
+  const J = new Float64Array(columns);
+  const cross = new Float64Array(n * columns);
+  for (let m = 0; m < scan.rows.length; m++) {
+    logDerivatives(J, null, at, model, scan.rows[m], columns);
+    const d = solved.slopes[m];
+    const i = scan.first[m] * columns;
+    const j = scan.second[m] * columns;
+    for (let k = 0; k < columns; k++) {
+      J[k] *= d;
+      cross[i + k] += d * J[k];
+      cross[j + k] += d * J[k];
+    }
+    addResidual(out, solved.residuals[m], J, 0);
+  }
+  takeOut(out.curvature, solved.L, cross, n, columns);
+}
+
+/** curvature -= cross^T (L L^T)^-1 cross, lower triangle. */
+function takeOut(
+  curvature: Float64Array,
+  L: Float64Array,
+  cross: Float64Array,
+  n: number,
+  columns: number,
+): void {
+  const white = new Float64Array(n * columns);
+  const column = new Float64Array(n);
+  for (let k = 0; k < columns; k++) {
+    for (let i = 0; i < n; i++) column[i] = cross[i * columns + k];
+    solveLower(L, column).forEach((value, i) => {
+      white[i * columns + k] = value;
+    });
+  }
+  for (let i = 0; i < n; i++) {
+    for (let k = 0; k < columns; k++) {
+      const value = white[i * columns + k];
+      for (let l = 0; l <= k; l++) curvature[k * columns + l] -= value * white[i * columns + l];
+    }
+  }
+}
+
+function scanCost(scan: Scan, { g, residuals }: Solved, deviations: Float64Array): number {
+  let sum = squares(residuals);
+  for (let i = 0; i < g.length; i++) {
+    const scaled = g[i] / deviations[scan.stations[i]];
+    sum += scaled * scaled;
+  }
+  return sum / 2;
+}
+
+/** Sum over stations of 1 - posterior variance / prior variance. */
+function effectiveGains(scan: Scan, L: Float64Array, deviations: Float64Array): number {
+  const n = scan.stations.length;
+  const inverse = invertCholesky(L, n);
+  let sum = 0;
+  for (let i = 0; i < n; i++) {
+    const tau = deviations[scan.stations[i]];
+    sum += 1 - inverse[i * n + i] / (tau * tau);
+  }
+  return sum;
+}
+
+function squares(values: Float64Array): number {
+  let sum = 0;
+  for (const value of values) sum += value * value;
+  return sum;
+}

@@ -1,0 +1,140 @@
+/** Closure phases and log closure amplitudes as data terms. Closures of one scan that share a baseline are correlated;
+ *  the residuals are whitened with the Cholesky factor of their covariance: r = L^-1 (model - observed), phases wrapped
+ *  to (-pi, pi]. No gain or phase of a station enters. */
+
+import type { Visibilities } from '../data.ts';
+import {
+  type Closure,
+  type ClosureSet,
+  closurePhase,
+  logClosureAmplitude,
+  wrapPhase,
+} from '../numerics/closures.ts';
+import { cholesky, solveLower } from '../numerics/linear.ts';
+import { InternalError } from '../problem.ts';
+import { addResidual, logDerivatives, type Term } from './term.ts';
+
+/** The closures of one kind in one scan, ready for use. */
+interface Block {
+  readonly scan: number;
+  readonly closures: readonly Closure[];
+  readonly observed: Float64Array;
+  readonly L: Float64Array;
+  /** Rows of the visibilities that the closures touch. */
+  readonly rows: readonly number[];
+  /** L^-1 A, closures by rows: turns derivatives of phases or log amplitudes into those of whitened residuals. */
+  readonly whitening: Float64Array;
+}
+
+export function makeClosurePhaseTerm(data: Visibilities, sets: readonly ClosureSet[]): Term {
+  const blocks = sets
+    .filter((set) => set.triangles.length > 0)
+    .map((set) =>
+      makeBlock(set.scan, set.triangles, set.phaseCovariance, (c) => closurePhase(c, data.re, data.im)),
+    );
+  return closureTerm('closure phases', blocks, closurePhase, wrapPhase, 'phase');
+}
+
+export function makeLogClosureAmplitudeTerm(data: Visibilities, sets: readonly ClosureSet[]): Term {
+  const blocks = sets
+    .filter((set) => set.quadrangles.length > 0)
+    .map((set) =>
+      makeBlock(set.scan, set.quadrangles, set.logAmplitudeCovariance, (c) =>
+        logClosureAmplitude(c, data.re, data.im),
+      ),
+    );
+  return closureTerm('log closure amplitudes', blocks, logClosureAmplitude, (value) => value, 'amplitude');
+}
+
+function makeBlock(
+  scan: number,
+  closures: readonly Closure[],
+  covariance: Float64Array,
+  observe: (closure: Closure) => number,
+): Block {
+  const n = closures.length;
+  const L = cholesky(covariance, n);
+  if (!L)
+    throw new InternalError('makeBlock', `the closures' covariance of scan ${scan} is not positive definite`);
+  const rows = [...new Set(closures.flatMap((closure) => closure.rows))].sort((a, b) => a - b);
+  const whitening = new Float64Array(n * rows.length);
+  rows.forEach((row, m) => {
+    const column = Float64Array.from(closures, (closure) => {
+      const place = closure.rows.indexOf(row);
+      return place < 0 ? 0 : closure.signs[place];
+    });
+    solveLower(L, column).forEach((value, t) => {
+      whitening[t * rows.length + m] = value;
+    });
+  });
+  return { scan, closures, observed: Float64Array.from(closures, observe), L, rows, whitening };
+}
+
+function closureTerm(
+  name: string,
+  blocks: readonly Block[],
+  evaluate: (closure: Closure, re: Float64Array, im: Float64Array) => number,
+  wrap: (value: number) => number,
+  part: 'phase' | 'amplitude',
+): Term {
+  const residuals = (block: Block, re: Float64Array, im: Float64Array) =>
+    solveLower(
+      block.L,
+      Float64Array.from(block.closures, (closure, t) => wrap(evaluate(closure, re, im) - block.observed[t])),
+    );
+  const chiSquare: Term['chiSquare'] = (at) => {
+    let sum = 0;
+    for (const block of blocks) {
+      for (const value of residuals(block, at.re, at.im)) sum += value * value;
+    }
+    return sum;
+  };
+  return {
+    name,
+    count: blocks.reduce((sum, block) => sum + block.closures.length, 0),
+    scans: blocks.map((block) => block.scan),
+    chiSquare,
+    nuisances: () => 0,
+    cost: (at) => chiSquare(at) / 2,
+    expand(at, model, out) {
+      const columns = out.gradient.length;
+      const slope = new Float64Array(columns);
+      for (const block of blocks) {
+        const n = block.closures.length;
+        const J = new Float64Array(n * columns);
+        block.rows.forEach((row, m) => {
+          logDerivatives(
+            part === 'phase' ? null : slope,
+            part === 'phase' ? slope : null,
+            at,
+            model,
+            row,
+            columns,
+          );
+          addWhitened(J, block, m, slope);
+        });
+        const r = residuals(block, at.re, at.im);
+        for (let t = 0; t < n; t++) addResidual(out, r[t], J, t * columns);
+      }
+      return chiSquare(at) / 2;
+    },
+    only: (scans) =>
+      closureTerm(
+        name,
+        blocks.filter((block) => scans.has(block.scan)),
+        evaluate,
+        wrap,
+        part,
+      ),
+  };
+}
+
+/** J[t] += whitening[t, m] * slope for every closure t. */
+function addWhitened(J: Float64Array, block: Block, m: number, slope: Float64Array): void {
+  const columns = slope.length;
+  for (let t = 0; t < block.closures.length; t++) {
+    const weight = block.whitening[t * block.rows.length + m];
+    if (weight === 0) continue;
+    for (let k = 0; k < columns; k++) J[t * columns + k] += weight * slope[k];
+  }
+}

@@ -1,0 +1,79 @@
+/** One fit, ready to be solved with any number of components on any scans. */
+
+import type { Basis, Visibilities } from '../data.ts';
+import { type ClosureSet, closureSets } from '../numerics/closures.ts';
+import { type GaussNewtonOptions, gaussNewton, type Minimum } from '../numerics/gauss-newton.ts';
+import { type AmplitudeTerm, makeAmplitudeTerm } from './amplitude-term.ts';
+import { makeClosurePhaseTerm, makeLogClosureAmplitudeTerm } from './closure-terms.ts';
+import { makeComplexTerm } from './complex-term.ts';
+import type { BasisVisibilities, LinearModel } from './linear-model.ts';
+import { makeObjective } from './objective.ts';
+import type { PositivityTerm } from './positivity-term.ts';
+import { type DataKind, type FitSettings, LEAST_AMPLITUDE_SNR } from './settings.ts';
+import type { Term } from './term.ts';
+
+export interface FitProblem {
+  readonly data: Visibilities;
+  readonly sets: readonly ClosureSet[];
+  readonly basis: Basis;
+  readonly visibilities: BasisVisibilities;
+  readonly model: LinearModel;
+  /** Prior standard deviation of every station's log gain. */
+  readonly deviations: Float64Array;
+  readonly terms: readonly Term[];
+  readonly positivity: PositivityTerm | null;
+}
+
+/** The closures of the rows that enter the fit. */
+export function fitClosures(data: Visibilities, minimumSnr: number): ClosureSet[] {
+  return closureSets(data, {
+    minimumSnr,
+    minimumAmplitudeSnr: Math.max(minimumSnr, LEAST_AMPLITUDE_SNR),
+  });
+}
+
+/** The data terms of a fit. @param deviations  prior of the log gains by station */
+export function makeTerms(
+  kind: DataKind,
+  data: Visibilities,
+  sets: readonly ClosureSet[],
+  deviations: Float64Array,
+): Term[] {
+  if (kind === 'complex-visibilities') return [makeComplexTerm(data)];
+  const second =
+    kind === 'closure-phases-and-amplitudes'
+      ? makeAmplitudeTerm(data, deviations)
+      : makeLogClosureAmplitudeTerm(data, sets);
+  return [makeClosurePhaseTerm(data, sets), second];
+}
+
+export function amplitudeTermOf(terms: readonly Term[]): AmplitudeTerm | null {
+  const found = terms.find((term) => 'gains' in term);
+  return found ? (found as AmplitudeTerm) : null;
+}
+
+/** Prior standard deviation of every station's log gain. */
+export function gainDeviations(data: Visibilities, priors: FitSettings['gainPriors']): Float64Array {
+  return Float64Array.from(data.stations, ({ name }) => priors.stations[name] ?? priors.usual);
+}
+
+/** The best minimum from several starts, and the costs of all. @param scans  those that enter; all when absent */
+export function solveFrom(
+  problem: FitProblem,
+  starts: readonly Float64Array[],
+  options: GaussNewtonOptions & { readonly scans?: ReadonlySet<number> } = {},
+): { best: Minimum; minima: Minimum[] } {
+  const { scans } = options;
+  const terms = scans ? problem.terms.map((term) => term.only(scans)) : problem.terms;
+  const objective = makeObjective(problem.model, terms, problem.positivity);
+  const minima = starts.map((start) => gaussNewton(objective, start, options));
+  const best = minima.reduce((a, b) => (b.cost < a.cost ? b : a));
+  return { best, minima };
+}
+
+/** A start for more components, or fewer: zeros added, or the last ones cut. */
+export function resized(x: Float64Array, columns: number): Float64Array {
+  const out = new Float64Array(columns);
+  out.set(x.subarray(0, columns));
+  return out;
+}

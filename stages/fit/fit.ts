@@ -1,0 +1,146 @@
+/** Declaration of the kind `fit`: an image from visibilities, in the space of a basis. */
+
+import type { StageKind } from '../kind.ts';
+
+export const fit = {
+  kind: 'fit',
+  version: 1,
+  doc:
+    'Fits flux and coefficients of a basis to visibilities in the Fourier plane: image = flux * mean + sum of ' +
+    'coefficient * component, the source at the resolution of the basis; the transform of its Gaussian is taken out of ' +
+    'the model. The optimum is searched by damped Gauss-Newton steps from several starts, the posterior ' +
+    'is the Gaussian of the curvature there; for complex visibilities without positivity that is exact.',
+  source:
+    'Thompson, Moran & Swenson, 3rd ed., sections 9.3 (amplitudes under noise), 10.3 (closures) and 11.4; marginalised ' +
+    'nuisances: Golub & Pereyra 1973, SIAM J. Numer. Anal. 10, 413; choice by held-out data: Hastie, Tibshirani & ' +
+    'Friedman, The Elements of Statistical Learning, 2nd ed., section 7.10.',
+  inputs: {
+    visibilities: {
+      format: 'visibilities',
+      doc: 'Scan averages, with the error budget of the calibration check.',
+    },
+    basis: { format: 'basis', doc: 'Mean image and components of a library.' },
+  },
+  parameters: {
+    data: {
+      type: 'word',
+      words: [
+        'closure-phases-and-amplitudes',
+        'complex-visibilities',
+        'closure-phases-and-log-closure-amplitudes',
+      ],
+      default: 'closure-phases-and-amplitudes',
+      doc: 'Data terms. Amplitudes come with one gain per station and scan as a nuisance.',
+      why: 'Closures alone see neither the flux nor a broad pedestal; phases of real data are those of the stations.',
+    },
+    components: {
+      type: 'either',
+      of: [
+        { type: 'integer', from: 1, to: 400, doc: 'So many.' },
+        { type: 'word', words: ['by-data'], doc: 'Chosen by scans that are held out of the fit.' },
+      ],
+      default: 'by-data',
+      doc: 'Leading components to fit, or `by-data`.',
+      why: 'Too few components give a wrong diameter, and how many are enough differs from data to data.',
+    },
+    priorWidth: {
+      type: 'number',
+      from: 0.01,
+      to: 1000,
+      default: 2,
+      doc: 'Prior standard deviation of each coefficient, in standard deviations of the library.',
+      why: 'The source need not be typical of the library; twice its spread lets the data decide.',
+    },
+    flux: {
+      type: 'quantity',
+      unit: 'Jy',
+      from: 1e-6,
+      to: 1e6,
+      optional: true,
+      doc: 'Prior mean of the compact flux; estimated from amplitudes when absent. Needed for closures alone.',
+    },
+    fluxPrior: {
+      type: 'number',
+      from: 0.001,
+      to: 10,
+      default: 0.5,
+      doc: 'Prior standard deviation of the compact flux, relative to its mean.',
+      why: 'The flux is measured by the amplitudes; the prior only keeps it in the right decade.',
+    },
+    shortest: {
+      type: 'number',
+      from: 0,
+      to: 20,
+      default: 0.1,
+      doc: 'Shortest baseline that enters the image fit, in units of 1e9 wavelengths.',
+      why: 'Stations on one site see flux that all other baselines resolve out.',
+    },
+    gainPriors: {
+      type: 'group',
+      doc:
+        'Prior standard deviations of the logarithm of the gains. A station that is not named here and lies far off ' +
+        'in most scans is reported, and its prior widened.',
+      fields: {
+        usual: {
+          type: 'number',
+          from: 0.001,
+          to: 3,
+          default: 0.1,
+          doc: 'For stations not named below.',
+          why: '10 % is what a good station of a millimetre array reaches.',
+        },
+        stations: {
+          type: 'map',
+          of: { type: 'number', from: 0.001, to: 3, doc: 'Prior standard deviation of the log gain.' },
+          default: {},
+          doc: 'By name of station, such as 0.5 for a bad one.',
+        },
+      },
+      default: {},
+    },
+    minimumSnr: {
+      type: 'number',
+      from: 0,
+      to: 100,
+      default: 2.5,
+      doc: 'Least signal-to-noise of visibilities in closure phases; at least 4 in log closure amplitudes.',
+      why: 'Below it phase errors are no longer Gaussian, and log amplitudes are biased by the cut itself.',
+    },
+    positivity: {
+      type: 'number',
+      from: 0,
+      to: 1e6,
+      default: 1,
+      doc: 'Weight of the soft penalty on negative pixels; 0 for none.',
+      why: 'Without it the centre of a ring goes negative and the diameter comes out small.',
+    },
+    starts: {
+      type: 'integer',
+      from: 1,
+      to: 100,
+      default: 4,
+      doc: 'Starts of the search: the mean of the prior, and the library images that agree best with the data.',
+      why: 'Closure phases have false minima; starts that end elsewhere are reported.',
+    },
+    samples: {
+      type: 'integer',
+      from: 2,
+      to: 100000,
+      default: 400,
+      doc: 'Draws from the posterior.',
+      why: 'The ends of a 68 % interval are then known to a tenth of a standard deviation.',
+    },
+    seed: { type: 'integer', from: 0, to: 2147483647, default: 1, doc: 'Seed of the draws.' },
+  },
+  outputs: {
+    image: {
+      format: 'fits-image',
+      doc: 'The image at the maximum of the posterior, at the resolution of the basis, Jy per pixel.',
+    },
+    samples: { format: 'fits-table', doc: 'Draws of flux and coefficients.' },
+    residuals: { format: 'json', doc: 'Data with model and error, row by row and closure by closure.' },
+    report: { format: 'json', doc: 'Chi-squares, choice of components, gains, starts, what was assumed.' },
+    flux: { format: 'numbers', doc: 'Total compact flux with its credible intervals.' },
+  },
+  load: () => import('./compute.ts'),
+} as const satisfies StageKind;

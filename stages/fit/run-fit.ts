@@ -1,0 +1,153 @@
+/** The whole fit, from visibilities and basis in memory to the optimum with its curvature. Knows no file. */
+
+import type { Basis, Visibilities } from '../data.ts';
+import type { ClosureSet } from '../numerics/closures.ts';
+import type { Minimum } from '../numerics/gauss-newton.ts';
+import { median } from '../numerics/statistics.ts';
+import { InputProblem } from '../problem.ts';
+import { type ComponentChoice, chooseComponents } from './component-choice.ts';
+import {
+  type FitProblem,
+  fitClosures,
+  gainDeviations,
+  makeTerms,
+  resized,
+  solveFrom,
+} from './fit-problem.ts';
+import { type LibraryMatch, matchLibrary, pickStarts, startOf } from './library-starts.ts';
+import {
+  type BasisVisibilities,
+  basisVisibilities,
+  type ModelVisibilities,
+  makeLinearModel,
+  predict,
+} from './linear-model.ts';
+import { makePositivityTerm } from './positivity-term.ts';
+import { longestBaseline, type Selection, selectRows } from './select-rows.ts';
+import type { FitSettings } from './settings.ts';
+import { type Settled, settleGains } from './settle-gains.ts';
+
+export interface StartOutcome {
+  readonly start: string;
+  readonly cost: number;
+  readonly steps: number;
+  readonly converged: boolean;
+}
+
+export interface FitResult extends Settled {
+  readonly selection: Selection;
+  readonly fluxSource: string;
+  readonly choice: ComponentChoice | null;
+  /** The model's visibilities at the optimum. */
+  readonly at: ModelVisibilities;
+  readonly starts: readonly StartOutcome[];
+}
+
+/** Components of the first fit, from which the choice by held-out data starts. */
+const FIRST_COMPONENTS = 20;
+/** A library image's flux is uncertain by its fit; the median of so many of the best is the prior's mean. */
+const FLUX_MATCHES = 10;
+
+export function runFit(
+  visibilities: Visibilities,
+  basis: Basis,
+  settings: FitSettings,
+  progress: (fraction: number) => void = () => {},
+): FitResult {
+  const longest = longestBaseline(basis.resolutionRadians);
+  const selection = selectRows(visibilities, settings.shortest * 1e9, longest);
+  const sets = fitClosures(selection.data, settings.minimumSnr);
+  const B = basisVisibilities(basis, selection.data.u, selection.data.v);
+  const matches = matchLibrary(basis, B, selection.data, sets);
+  progress(0.1);
+  const { flux, fluxSource } = fluxPrior(settings, selection, matches);
+  const problem = makeProblem(selection.data, sets, basis, B, flux, settings);
+  const picked = pickStarts(matches, settings.starts - 1);
+  const first = firstColumns(settings, basis);
+  const settled = settleGains(problem, placesOf(makeStarts(problem, picked, first)), settings);
+  progress(0.2);
+  const choice =
+    settings.components === 'by-data'
+      ? chooseComponents(settled.problem, settled.best.x, (fraction) => progress(0.2 + 0.6 * fraction))
+      : null;
+  const columns = choice ? 1 + choice.components : first;
+  const before = { start: 'fit before the choice', x: resized(settled.best.x, columns) };
+  const starts = [...makeStarts(settled.problem, picked, columns), before];
+  const { best: bestStart, minima } = solveFrom(settled.problem, placesOf(starts));
+  const last = settleGains(settled.problem, [bestStart.x], settings, settled.widenings);
+  progress(0.95);
+  return {
+    selection,
+    fluxSource,
+    choice,
+    ...last,
+    at: predict(last.problem.model, last.best.x),
+    starts: minima.map((minimum, k) => outcomeOf(starts[k].start, minimum)),
+  };
+}
+
+interface Start {
+  readonly start: string;
+  readonly x: Float64Array;
+}
+
+function firstColumns({ components }: FitSettings, basis: Basis): number {
+  return 1 + (components === 'by-data' ? Math.min(FIRST_COMPONENTS, basis.components.length) : components);
+}
+
+function makeStarts(problem: FitProblem, picked: readonly LibraryMatch[], columns: number): Start[] {
+  const fromLibrary = picked.map((match) => ({
+    start: `library image ${match.image}, family ${match.family}`,
+    x: startOf(match, problem.basis, problem.model, columns),
+  }));
+  return [{ start: 'mean of the prior', x: new Float64Array(columns) }, ...fromLibrary];
+}
+
+function placesOf(starts: readonly Start[]): Float64Array[] {
+  return starts.map(({ x }) => x);
+}
+
+function fluxPrior(settings: FitSettings, { totalFlux }: Selection, matches: readonly LibraryMatch[]) {
+  if (settings.flux !== undefined) return { flux: settings.flux, fluxSource: 'stated' };
+  const estimate = matches.length > 0 ? median(matches.slice(0, FLUX_MATCHES).map(({ flux }) => flux)) : 0;
+  if (!(estimate > 0)) {
+    throw new InputProblem({
+      code: 'flux-needed',
+      place: 'parameter flux',
+      expected: 'the compact flux, because no library image agrees with the amplitudes at a flux above 0',
+      found: 'no value',
+      advice: 'State the flux, such as `flux: 0.6 Jy`.',
+    });
+  }
+  const library = 'estimated: median flux of the library images that agree best with the data';
+  return totalFlux !== null && totalFlux > 0 && totalFlux < estimate
+    ? { flux: totalFlux, fluxSource: 'estimated: amplitude of the baselines shorter than `shortest`' }
+    : { flux: estimate, fluxSource: library };
+}
+
+function makeProblem(
+  data: Visibilities,
+  sets: readonly ClosureSet[],
+  basis: Basis,
+  B: BasisVisibilities,
+  flux: number,
+  settings: FitSettings,
+): FitProblem {
+  const prior = { flux, fluxWidth: settings.fluxPrior, priorWidth: settings.priorWidth };
+  const model = makeLinearModel(B, basis.eigenvalues, prior);
+  const deviations = gainDeviations(data, settings.gainPriors);
+  return {
+    data,
+    sets,
+    basis,
+    visibilities: B,
+    model,
+    deviations,
+    terms: makeTerms(settings.data, data, sets, deviations),
+    positivity: settings.positivity > 0 ? makePositivityTerm(basis, model, settings.positivity) : null,
+  };
+}
+
+function outcomeOf(start: string, { cost, steps, converged }: Minimum): StartOutcome {
+  return { start, cost, steps, converged };
+}

@@ -1,0 +1,73 @@
+/** The resolved parameters of `fit`, typed; and the checks that a declaration cannot make. */
+
+import type { Visibilities } from '../data.ts';
+import { InputProblem } from '../problem.ts';
+
+export type DataKind =
+  | 'closure-phases-and-amplitudes'
+  | 'complex-visibilities'
+  | 'closure-phases-and-log-closure-amplitudes';
+
+export interface FitSettings {
+  readonly data: DataKind;
+  readonly components: number | 'by-data';
+  readonly priorWidth: number;
+  /** Jy. */
+  readonly flux?: number;
+  readonly fluxPrior: number;
+  /** 1e9 wavelengths. */
+  readonly shortest: number;
+  readonly gainPriors: { readonly usual: number; readonly stations: Readonly<Record<string, number>> };
+  readonly minimumSnr: number;
+  readonly positivity: number;
+  readonly starts: number;
+  readonly samples: number;
+  readonly seed: number;
+}
+
+/** Least signal-to-noise of log closure amplitudes: a cut at 3 selects +0.20 in ln(A^2 - sigma^2) at a true 3 (common practice). */
+export const LEAST_AMPLITUDE_SNR = 4;
+
+export function readSettings(
+  parameters: Readonly<Record<string, unknown>>,
+  visibilities: Visibilities,
+  available: number,
+): FitSettings {
+  const settings = parameters as unknown as FitSettings;
+  requireComponents(settings.components, available);
+  requireStations(settings.gainPriors.stations, visibilities);
+  if (settings.data === 'closure-phases-and-log-closure-amplitudes' && settings.flux === undefined) {
+    throw new InputProblem({
+      code: 'flux-needed',
+      place: 'parameter flux',
+      expected: 'the compact flux, because closures do not see it',
+      found: 'no value',
+      advice: 'State the flux, such as `flux: 0.6 Jy`, or take the data `closure-phases-and-amplitudes`.',
+    });
+  }
+  return settings;
+}
+
+function requireComponents(components: FitSettings['components'], available: number): void {
+  if (components === 'by-data' ? available >= 1 : components <= available) return;
+  throw new InputProblem({
+    code: 'too-few-components',
+    place: 'parameter components',
+    expected: `at most ${available}, which the basis has`,
+    found: `${components}`,
+    advice: 'Ask for fewer, or build the basis with more.',
+  });
+}
+
+function requireStations(named: Readonly<Record<string, number>>, { stations }: Visibilities): void {
+  const known = stations.map(({ name }) => name);
+  const unknown = Object.keys(named).find((name) => !known.includes(name));
+  if (unknown === undefined) return;
+  throw new InputProblem({
+    code: 'unknown-station',
+    place: 'parameter gainPriors.stations',
+    expected: `names among ${known.join(', ')}`,
+    found: unknown,
+    advice: 'Write the name as the data do.',
+  });
+}

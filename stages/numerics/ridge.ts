@@ -1,0 +1,143 @@
+/** The ridge of a ring: along rays from a centre, where the brightness is largest; and the centre itself. Works in
+ *  pixels: columns rise to the west, rows to the north; ray k has the position angle 2 pi k / count, north through
+ *  east. Used by ring.ts, which has the definitions. */
+
+import { cos, sin } from './elementary.ts';
+import { type SplineImage, splineValue } from './spline-image.ts';
+
+/** Steps of the search for the centre; 10 are enough for any ring, images without a ring may wander. */
+const MOST_STEPS = 30;
+/** Steps without less scatter after which the search ends. */
+const MOST_IDLE_STEPS = 4;
+/** Pixels; the centre's error that is let stand. */
+const CENTRE_TOLERANCE = 1e-4;
+/** Pixels between samples along a ray. */
+export const RAY_STEP = 0.5;
+
+export interface Ridge {
+  readonly radii: Float64Array;
+  readonly brightness: Float64Array;
+  readonly mean: number;
+  /** Standard deviation, pixels. */
+  readonly scatter: number;
+}
+
+export interface Rays {
+  readonly sines: Float64Array;
+  readonly cosines: Float64Array;
+}
+
+export function makeRays(count: number): Rays {
+  if (!(count >= 8)) throw new RangeError(`measureRing: ${count} rays are too few, at least 8`);
+  const angle = (k: number) => (2 * Math.PI * k) / count;
+  return {
+    sines: Float64Array.from({ length: count }, (_, k) => sin(angle(k))),
+    cosines: Float64Array.from({ length: count }, (_, k) => cos(angle(k))),
+  };
+}
+
+/** Where the search for the centre starts: centroid of the positive brightness. */
+export function brightnessCentroid(nx: number, ny: number, pixels: Float64Array): [number, number] {
+  let sum = 0;
+  let sumX = 0;
+  let sumY = 0;
+  for (let j = 0; j < ny; j++) {
+    for (let i = 0; i < nx; i++) {
+      const value = Math.max(0, pixels[j * nx + i]);
+      sum += value;
+      sumX += i * value;
+      sumY += j * value;
+    }
+  }
+  return [sumX / sum, sumY / sum];
+}
+
+/** Moves the centre by the first Fourier mode of the ridge radii (the Gauss-Newton step of a circle through the ridge)
+ *  and keeps the centre of least scatter. */
+export function findCentre(spline: SplineImage, start: [number, number], rays: Rays) {
+  let [column, row] = start;
+  let best: { column: number; row: number; ridge: Ridge } | undefined;
+  let idle = 0;
+  for (let step = 0; step < MOST_STEPS; step++) {
+    const ridge = findRidge(spline, column, row, rays);
+    const relative = ridge.scatter / Math.max(ridge.mean, RAY_STEP);
+    if (!best || relative < best.ridge.scatter / Math.max(best.ridge.mean, RAY_STEP)) {
+      best = { column, row, ridge };
+      idle = 0;
+    } else if (++idle >= MOST_IDLE_STEPS) break;
+    const east = 2 * correlate(ridge.radii, rays.sines);
+    const north = 2 * correlate(ridge.radii, rays.cosines);
+    if (east * east + north * north < CENTRE_TOLERANCE * CENTRE_TOLERANCE) break;
+    column = clamp(column - east, 2, spline.nx - 3);
+    row = clamp(row + north, 2, spline.ny - 3);
+  }
+  return best as { column: number; row: number; ridge: Ridge };
+}
+
+function findRidge(spline: SplineImage, column: number, row: number, rays: Rays): Ridge {
+  const count = rays.sines.length;
+  const reach = reachFrom(spline, column, row);
+  const radii = new Float64Array(count);
+  const brightness = new Float64Array(count);
+  for (let k = 0; k < count; k++) {
+    const along = ray(spline, column, row, rays, k);
+    const radius = brightestRadius(along, reach);
+    radii[k] = radius;
+    brightness[k] = along(radius);
+  }
+  const mean = average(radii);
+  let squares = 0;
+  for (const radius of radii) squares += (radius - mean) * (radius - mean);
+  return { radii, brightness, mean, scatter: Math.sqrt(squares / count) };
+}
+
+/** Brightness along ray k as a function of the radius in pixels. */
+export function ray(spline: SplineImage, column: number, row: number, rays: Rays, k: number) {
+  const east = rays.sines[k];
+  const north = rays.cosines[k];
+  return (radius: number) => splineValue(spline, column - radius * east, row + radius * north);
+}
+
+/** Radius of the largest brightness: samples, then two parabolas, the second through points close by. */
+function brightestRadius(along: (radius: number) => number, reach: number): number {
+  let best = 0;
+  let brightest = along(0);
+  for (let radius = RAY_STEP; radius <= reach; radius += RAY_STEP) {
+    const value = along(radius);
+    if (value > brightest) {
+      brightest = value;
+      best = radius;
+    }
+  }
+  if (best < RAY_STEP || best > reach - RAY_STEP) return best;
+  const first = parabolaTop(along, best, RAY_STEP);
+  return first < RAY_STEP ? first : parabolaTop(along, first, RAY_STEP / 8);
+}
+
+function parabolaTop(along: (radius: number) => number, middle: number, step: number): number {
+  const before = along(middle - step);
+  const after = along(middle + step);
+  const curvature = before - 2 * along(middle) + after;
+  return curvature < 0 ? middle + clamp((step * (before - after)) / (2 * curvature), -step, step) : middle;
+}
+
+/** Distance in pixels from a place to the nearest edge of the image. */
+export function reachFrom(spline: SplineImage, column: number, row: number): number {
+  return Math.min(column, row, spline.nx - 1 - column, spline.ny - 1 - row);
+}
+
+export function correlate(values: Float64Array, weights: Float64Array): number {
+  let sum = 0;
+  for (let k = 0; k < values.length; k++) sum += values[k] * weights[k];
+  return sum / values.length;
+}
+
+export function average(values: Float64Array): number {
+  let sum = 0;
+  for (const value of values) sum += value;
+  return sum / values.length;
+}
+
+function clamp(value: number, low: number, high: number): number {
+  return Math.min(high, Math.max(low, value));
+}

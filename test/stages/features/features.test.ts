@@ -1,0 +1,160 @@
+/** The kind `features`: numbers from draws whose rings are known, and what is no ring. */
+
+import { expect, test } from 'vitest';
+import { memorySink, sourceOf } from '../../../stages/bytes.ts';
+import type { Basis, Posterior } from '../../../stages/data.ts';
+import { compute } from '../../../stages/features/compute.ts';
+import { measureDraws } from '../../../stages/features/measure-draws.ts';
+import { makeRingNumbers, widthViolated } from '../../../stages/features/ring-numbers.ts';
+import { writeBasis } from '../../../stages/formats/basis.ts';
+import { readJson, readNumbers } from '../../../stages/formats/json.ts';
+import { writePosterior } from '../../../stages/formats/posterior.ts';
+import { writeSkyImage } from '../../../stages/formats/sky-image.ts';
+import { blurredRingImage, imageOf, UAS } from '../numerics/ring-images.ts';
+
+const GRID = { nx: 64, pixel: 2.5 };
+
+function unit(pixels: Float64Array): Float64Array {
+  const total = pixels.reduce((a, b) => a + b);
+  return pixels.map((value) => value / total);
+}
+
+/** A basis whose mean is one image and whose only component leads to another: coefficient = flux * t mixes them. */
+function between(from: Float64Array, to: Float64Array): Basis {
+  const [mean, other] = [unit(from), unit(to)];
+  return {
+    ...GRID,
+    ny: GRID.nx,
+    pixelRadians: GRID.pixel * UAS,
+    resolutionRadians: 0,
+    mean,
+    components: [other.map((value, p) => value - mean[p])],
+    eigenvalues: Float64Array.of(1),
+    totalVariance: 1,
+    scores: new Float64Array(1),
+    families: ['ring'],
+  };
+}
+
+function draws(mixing: readonly number[], flux = 0.7): Posterior {
+  return {
+    count: mixing.length,
+    components: 1,
+    flux: new Float64Array(mixing.length).fill(flux),
+    coefficients: Float64Array.from(mixing, (t) => t * flux),
+  };
+}
+
+const ring = (options: object) =>
+  blurredRingImage({ ...GRID, diameter: 42, blur: 10, b: 0.2, angle: 40, ...options }).pixels;
+const gaussian = imageOf(64, 64, 2.5, (x, y) => Math.exp(-(x * x + y * y) / 500)).pixels;
+
+test('gives the published numbers of a blurred ring when every draw is that ring', () => {
+  const posterior = draws(new Array(20).fill(0));
+  const { values, remarks } = makeRingNumbers(measureDraws(between(ring({}), gaussian), posterior), {});
+  // ring.blurred_features: ridge and radial FWHM of a thin ring of 42 uas blurred by 10 uas (mpmath).
+  expect(Math.abs(values.diameter.value - 41.1131569885504)).toBeLessThan(0.01);
+  expect(Math.abs(values.width.value - 10.1146330335936)).toBeLessThan(0.03);
+  expect(Math.abs(values['thin-ring-diameter'].value - 42)).toBeLessThan(0.02);
+  expect(Math.abs(values.asymmetry.value - 0.2)).toBeLessThan(0.003);
+  expect(Math.abs(values['position-angle'].value - 40)).toBeLessThan(0.3);
+  expect(values['central-depression'].value).toBeLessThan(0.01);
+  expect(values.roundness.value).toBeGreaterThan(0.99);
+  expect(values['ring-fraction'].value).toBe(1);
+  expect(values.diameter.low).toBe(values.diameter.high95);
+  expect(remarks.join(' ')).toContain('It is no picture of a horizon and no proof of one.');
+  expect(remarks.join(' ')).toContain("do not hold the method's own bias");
+  expect(Object.values(values).map(({ unit: u }) => u)).toEqual(['uas', 'uas', '', 'deg', '', '', 'uas', '']);
+});
+
+test('averages position angles across north', () => {
+  const posterior = draws([0, 0, 0, 1, 1, 1]);
+  const basis = between(ring({ angle: 350 }), ring({ angle: 20 }));
+  const { values } = makeRingNumbers(measureDraws(basis, posterior), {});
+  const found = values['position-angle'];
+  expect(Math.abs(found.value - 5)).toBeLessThan(0.3);
+  expect(Math.abs((found.low95 ?? 0) + 10)).toBeLessThan(0.5);
+  expect(Math.abs((found.high95 ?? 0) - 20)).toBeLessThan(0.5);
+});
+
+test('gives no numbers when most draws have no ring', () => {
+  const posterior = draws([0, 1, 1, 1, 1]);
+  const measured = measureDraws(between(ring({}), gaussian), posterior);
+  const { values, remarks } = makeRingNumbers(measured, { alpha: 10 });
+  expect(Object.keys(values)).toEqual(['ring-fraction']);
+  expect(values['ring-fraction'].value).toBe(0.2);
+  expect(remarks).toEqual(['No ring: 1 of 5 draws have one, so no number of a ring is given.']);
+  expect(measured.reasons['no inner half-maximum']).toBe(4);
+});
+
+test('gives the angular gravitational radius, the mass, and what they assume', () => {
+  const posterior = draws(new Array(4).fill(0));
+  const measured = measureDraws(between(ring({}), gaussian), posterior);
+  const { values, remarks } = makeRingNumbers(measured, { alpha: 10.392304845413264, distance: 1e7 });
+  // shadow.examples: 2e9 suns at 1e7 pc have a diameter of 20.51571652187541 uas (mpmath).
+  expect(values['gravitational-radius'].value).toBeCloseTo(values.diameter.value / 10.392304845413264, 10);
+  expect(values.mass.value / (2e9 * (values.diameter.value / 20.51571652187541))).toBeCloseTo(1, 10);
+  expect(values.mass.unit).toBe('solMass');
+  expect(remarks.join(' ')).toContain('assumes that the ring');
+  const alone = makeRingNumbers(measured, { distance: 1e7 });
+  expect(alone.values.mass).toBeUndefined();
+  expect(alone.remarks).toContain('A distance without alpha gives no mass: state alpha too.');
+});
+
+test('warns when the uncertainty of the diameter is not below the width', () => {
+  const wide = draws([0, 0, 0, 1, 1, 1]);
+  const basis = between(ring({ diameter: 30, blur: 6, b: 0 }), ring({ diameter: 60, blur: 6, b: 0 }));
+  const numbers = makeRingNumbers(measureDraws(basis, wide), {});
+  expect(widthViolated(numbers)).toMatch(
+    /^the diameter's 95 % interval of ±1[45]\.\d uas is not below the ring's width of \d\.\d uas: the posterior holds different images$/,
+  );
+  const narrow = makeRingNumbers(measureDraws(basis, draws([0, 0, 0])), {});
+  expect(widthViolated(narrow)).toBeNull();
+});
+
+test('reads files, writes numbers and report, and says `no ring` in both', () => {
+  const run = (mixing: readonly number[]) => {
+    const [basis, samples, image] = [memorySink(), memorySink(), memorySink()];
+    const made = between(ring({}), gaussian);
+    writeBasis(basis, made);
+    writePosterior(samples, draws(mixing));
+    writeSkyImage(image, { ...made, pixels: made.mean });
+    const outputs = { ring: memorySink(), report: memorySink() };
+    const source = (sink: { bytes(): Uint8Array }, name: string) => [sourceOf(sink.bytes(), name)];
+    const report = compute({
+      inputs: {
+        basis: source(basis, 'basis'),
+        samples: source(samples, 'samples'),
+        image: source(image, 'image'),
+      },
+      parameters: {},
+      outputs,
+      note: () => {},
+      progress: () => {},
+    });
+    return {
+      warnings: 'warnings' in report ? report.warnings : [],
+      numbers: readNumbers(sourceOf(outputs.ring.bytes())),
+      report: readJson(sourceOf(outputs.report.bytes())) as { verdict: string; image: { diameter: number } },
+    };
+  };
+  const found = run([0, 0, 0, 0]);
+  expect(found.warnings).toEqual([]);
+  expect(found.report.verdict).toBe('ring');
+  expect(Math.abs(found.report.image.diameter - 41.1131569885504)).toBeLessThan(0.01);
+  const none = run([1, 1, 1, 1]);
+  expect(none.warnings).toEqual(['no ring: only 0 % of the draws have one']);
+  expect(none.report.verdict).toBe('no ring');
+  expect(none.numbers.values.diameter).toBeUndefined();
+});
+
+test('refuses samples of another basis', () => {
+  const basis = between(ring({}), gaussian);
+  const other = { ...draws([0, 0]), components: 2, coefficients: new Float64Array(4) };
+  expect(() => measureDraws(basis, other)).toThrow(
+    'input samples: wrong-shape: expected at most 1 coefficients a draw, the components of the basis, got 2. Give the basis with which the fit was made.',
+  );
+  expect(() => measureDraws(basis, draws([0]))).toThrow(
+    'input samples: too-few-draws: expected at least two draws, got 1. Raise the parameter `samples` of the fit.',
+  );
+});
