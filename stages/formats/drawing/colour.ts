@@ -55,15 +55,15 @@ export function hexOfLab(lab: Triple): string {
     .join('')}`;
 }
 
-/** Brightness, from a bluish black by rust and amber to ivory. L* from 5 to 97. The path in (a*, b*) is a cubic Bézier
- *  curve chosen here for its look and to stay inside the gamut. */
+/** Brightness, as of a blueprint: from the blue of the ground to the ivory of the paper. L* from 6 to 97. The path in
+ *  (a*, b*) is a cubic Bézier curve chosen here for its look and to stay inside the gamut. */
 export const brightness: ColourMap = makeMap(
-  [5, 97],
+  [6, 97],
   [
-    [0, -10],
-    [58, 20],
-    [24, 100],
-    [-5, 16],
+    [10, -22],
+    [20, -54],
+    [-14, -30],
+    [-2, 14],
   ],
 );
 
