@@ -18,7 +18,7 @@ const importPattern =
 export function codeOfKind(folder: string, kind: string, version: number): RecordedCode {
   const closure = importClosure(join(folder, kind, `${kind}${sourceExtension}`));
   const files: Record<string, string> = {};
-  for (const [path, bytes] of closure.files) files[programPath(path)] = sha256(bytes);
+  for (const [path, { digest }] of closure.files) files[programPath(path)] = digest;
   const packages = versionsOf([...closure.packages].sort());
   const runtime = process.version;
   return {
@@ -30,27 +30,48 @@ export function codeOfKind(folder: string, kind: string, version: number): Recor
   };
 }
 
+/** The files of a kind's import closure, by path as the record names them: the very bytes that `codeOfKind` digests. */
+export function codeFilesOf(folder: string, kind: string): Map<string, Uint8Array> {
+  const { files } = importClosure(join(folder, kind, `${kind}${sourceExtension}`));
+  return new Map([...files].map(([path, { bytes }]) => [programPath(path), bytes]));
+}
+
+interface SourceFile {
+  readonly bytes: Buffer;
+  readonly digest: string;
+  readonly specifiers: readonly string[];
+}
+
 interface Closure {
-  readonly files: ReadonlyMap<string, Uint8Array>;
+  readonly files: ReadonlyMap<string, SourceFile>;
   readonly packages: ReadonlySet<string>;
 }
 
+/** Source files by path: kinds share most of theirs. */
+const sourceFiles = new Map<string, SourceFile>();
+
 /** All of our files that `entry` reaches, sorted by path, and the names of the packages they import. */
 export function importClosure(entry: string): Closure {
-  const files = new Map<string, Uint8Array>();
+  const files = new Map<string, SourceFile>();
   const packages = new Set<string>();
   const waiting = [entry];
   for (let path = waiting.pop(); path !== undefined; path = waiting.pop()) {
     if (files.has(path)) continue;
-    const bytes = readFileSync(path);
-    files.set(path, bytes);
-    for (const specifier of importsOf(bytes.toString('utf8'))) {
+    const file = sourceFiles.get(path) ?? readSource(path);
+    sourceFiles.set(path, file);
+    files.set(path, file);
+    for (const specifier of file.specifiers) {
       if (specifier.startsWith('.')) waiting.push(resolve(dirname(path), specifier));
       else if (!specifier.startsWith('node:')) packages.add(packageName(specifier));
     }
   }
   const sorted = [...files].sort(([a], [b]) => (a < b ? -1 : 1));
   return { files: new Map(sorted), packages };
+}
+
+function readSource(path: string): SourceFile {
+  const bytes = readFileSync(path);
+  return { bytes, digest: sha256(bytes), specifiers: importsOf(bytes.toString('utf8')) };
 }
 
 export function importsOf(source: string): string[] {
@@ -73,7 +94,17 @@ interface LockFile {
   >;
 }
 
-let lockFile: LockFile | null = null;
+interface FoundPackage {
+  /** Such as `node_modules/a`. */
+  readonly place: string;
+  readonly version: string;
+  readonly dependencies: Readonly<Record<string, string>>;
+}
+
+const lockPath = join(packageRoot, 'package-lock.json');
+/** Read at the first question; null where there is none, as in an installed package. */
+let lockFile: LockFile | null | undefined;
+const foundPackages = new Map<string, FoundPackage | null>();
 
 /** Versions of packages and of all that they depend on. A nested copy is named by its place. */
 function versionsOf(names: readonly string[]): Record<string, string> {
@@ -91,13 +122,15 @@ function versionsOf(names: readonly string[]): Record<string, string> {
 }
 
 /** Looks a package up as Node does: next to the package that asks, then outwards. */
-function findPackage(name: string, from: string) {
-  for (const place of outwards(from)) {
-    const candidate = place === '' ? `node_modules/${name}` : `${place}/node_modules/${name}`;
-    const found = describePackage(candidate);
-    if (found !== null) return { place: candidate, ...found };
-  }
-  return null;
+function findPackage(name: string, from: string): FoundPackage | null {
+  const key = `${from}:${name}`;
+  const known = foundPackages.get(key);
+  if (known !== undefined) return known;
+  const found = outwards(from)
+    .map((place) => describePackage(place === '' ? `node_modules/${name}` : `${place}/node_modules/${name}`))
+    .find((each) => each !== null);
+  foundPackages.set(key, found ?? null);
+  return found ?? null;
 }
 
 /** `node_modules/a/node_modules/b` gives itself, `node_modules/a` and the root. */
@@ -110,17 +143,18 @@ function outwards(place: string): string[] {
   return places;
 }
 
-function describePackage(place: string) {
-  const lockPath = join(packageRoot, 'package-lock.json');
-  if (lockFile === null && existsSync(lockPath)) lockFile = JSON.parse(readFileSync(lockPath, 'utf8'));
+function describePackage(place: string): FoundPackage | null {
+  if (lockFile === undefined) {
+    lockFile = existsSync(lockPath) ? (JSON.parse(readFileSync(lockPath, 'utf8')) as LockFile) : null;
+  }
   if (lockFile !== null) {
     const locked = lockFile.packages[place];
     return locked === undefined
       ? null
-      : { version: locked.version ?? '', dependencies: locked.dependencies ?? {} };
+      : { place, version: locked.version ?? '', dependencies: locked.dependencies ?? {} };
   }
   const file = join(dirname(modulesFolder()), place, 'package.json');
   if (!existsSync(file)) return null;
   const installed = JSON.parse(readFileSync(file, 'utf8'));
-  return { version: installed.version as string, dependencies: installed.dependencies ?? {} };
+  return { place, version: installed.version as string, dependencies: installed.dependencies ?? {} };
 }

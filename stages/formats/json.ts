@@ -1,7 +1,6 @@
 /** The formats `json` and `numbers`: UTF-8, two spaces of indentation, a final newline, numbers as ECMAScript writes
  *  them. Layout: CONVENTIONS. JSON: RFC 8259. */
 
-import { z } from 'zod';
 import type { ByteSink, ByteSource } from '../bytes.ts';
 import { readAll } from '../bytes.ts';
 import type { Numbers, NumberValue } from '../data.ts';
@@ -43,33 +42,52 @@ export function writeJson(sink: ByteSink, value: unknown): void {
   sink.write(new TextEncoder().encode(`${text}\n`));
 }
 
-const numberSchema = z.strictObject({
-  value: z.number(),
-  unit: z.string(),
-  low: z.number().optional(),
-  high: z.number().optional(),
-  low95: z.number().optional(),
-  high95: z.number().optional(),
-  definition: z.string(),
-});
-
-const numbersSchema = z.strictObject({
-  values: z.record(z.string(), numberSchema),
-  remarks: z.array(z.string()),
-});
+const requiredFields = { value: 'number', unit: 'string', definition: 'string' } as const;
+const intervalFields = ['low', 'high', 'low95', 'high95'] as const;
 
 /** Reads a `numbers` document. @throws InputProblem that names the place within the document. */
 export function readNumbers(source: ByteSource): Numbers {
-  const result = numbersSchema.safeParse(readJson(source));
-  if (result.success) return result.data as Numbers;
-  const [issue] = result.error.issues;
+  const document = readJson(source);
+  const place = misplaced(document);
+  if (place === null) return document as Numbers;
   throw new InputProblem({
     code: 'bad-numbers',
-    place: `${source.name}, ${issue?.path.join('.') || 'the document'}`,
+    place: `${source.name}, ${place}`,
     expected: 'a document of values (value, unit, definition and intervals) and remarks',
-    found: issue?.message ?? 'something else',
+    found: 'something else there',
     advice: 'Give the output of a stage whose format is numbers.',
   });
+}
+
+/** The first place at which a document is no `numbers`; null when it is one. */
+function misplaced(document: unknown): string | null {
+  if (!isRecord(document)) return 'the document';
+  if (!isRecord(document.values)) return 'values';
+  const { remarks } = document;
+  if (!Array.isArray(remarks) || !remarks.every((remark) => typeof remark === 'string')) return 'remarks';
+  for (const [name, number] of Object.entries(document.values)) {
+    const field = misplacedField(number);
+    if (field !== null) return `values.${name}${field}`;
+  }
+  const other = Object.keys(document).find((key) => key !== 'values' && key !== 'remarks');
+  return other ?? null;
+}
+
+function misplacedField(number: unknown): string | null {
+  if (!isRecord(number)) return '';
+  for (const [field, type] of Object.entries(requiredFields)) {
+    if (typeof number[field] !== type) return `.${field}`;
+  }
+  for (const [field, value] of Object.entries(number)) {
+    if (field in requiredFields) continue;
+    const known = intervalFields.some((each) => each === field);
+    if (!known || typeof value !== 'number') return `.${field}`;
+  }
+  return null;
+}
+
+function isRecord(value: unknown): value is Record<string, unknown> {
+  return typeof value === 'object' && value !== null && !Array.isArray(value);
 }
 
 /** Writes a `numbers` document, keys in the order of the type. @throws InternalError for a value that is not finite */

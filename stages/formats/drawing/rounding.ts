@@ -2,7 +2,7 @@
  *  the value to the same place (common practice; ISO 80000-1 annex B gives the rounding rule, "if two, the larger").
  *  Without an interval six significant digits are shown. */
 
-import { withMinus } from './scale.ts';
+import { withMinus } from './minus.ts';
 
 export interface RoundedNumber {
   /** Decimal literals with ASCII minus, all to the same place; all but the value are absent when there is no interval.

@@ -2,6 +2,7 @@
 
 import { log10 } from '../../numerics/elementary.ts';
 import { InternalError } from '../../problem.ts';
+import { withMinus } from './minus.ts';
 
 export interface Tick {
   readonly value: number;
@@ -91,11 +92,6 @@ export function tickLabel(value: number, step: number): string {
   if (value !== 0 && (Math.abs(step) < 1e-4 || Math.abs(value) >= 1e6)) return scientificLabel(value);
   const places = Math.max(0, -Math.floor(log10(step) + 1e-9));
   return withMinus(value.toFixed(Math.min(8, places)));
-}
-
-/** Returns text in which the hyphen of a negative number is a minus sign. */
-export function withMinus(text: string): string {
-  return text.replaceAll('-', '−');
 }
 
 /** Returns an integer as superscript characters. */
