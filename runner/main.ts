@@ -73,7 +73,6 @@ type Common = (raw: Raw) => CommonOptions;
 type End = (status: ExitStatus) => void;
 
 function addExecuting(add: Add, common: Common, io: Io, signal: AbortSignal, end: End): void {
-  const list = (value: string, before: readonly string[]) => [...before, value];
   const cores = () =>
     new Option('--cores <n>', 'stages that run side by side at most')
       .default(availableParallelism(), 'all')
@@ -180,13 +179,15 @@ function addReading(add: Add, common: Common, io: Io, end: End): void {
     .argument('<recipe>', 'the recipe, a YAML file')
     .option(
       '--root <dir>',
-      'a folder from which inputs may come',
-      (value, before: string[]) => [...before, value],
+      'a folder besides the recipe’s own from which inputs may come; may be repeated',
+      list,
       [],
     )
+    .option('--let <stage.parameter=value>', 'override one parameter; may be repeated', list, [])
     .action(async (recipe: string, raw: Raw) => {
       const { proofreadCommand } = await import('./commands/proofread.ts');
-      end(await proofreadCommand(recipe, { ...common(raw), root: raw.root as string[] }, io));
+      const options = { ...common(raw), root: raw.root as string[], let: raw.let as string[] };
+      end(await proofreadCommand(recipe, options, io));
     });
   add(
     'kinds',
@@ -198,6 +199,11 @@ function addReading(add: Add, common: Common, io: Io, end: End): void {
       const { kindsCommand } = await import('./commands/kinds.ts');
       end(await kindsCommand(kind, common(raw), io));
     });
+}
+
+/** Gathers an option that may be repeated. */
+function list(value: string, before: readonly string[]): string[] {
+  return [...before, value];
 }
 
 function positiveInteger(text: string): number {

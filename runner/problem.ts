@@ -36,6 +36,7 @@ export const advice = {
   'wrong-dimension': 'Write the quantity in a unit of the right dimension.',
   'unknown-stage': 'Declare the stage, or correct its name.',
   'unknown-output': 'Name an output that the kind makes.',
+  'unknown-number': 'Publish one of those that the output can hold.',
   'wrong-format': 'Refer to an output of the right format.',
   'output-not-made': 'Give the stage that input, or refer to another output.',
   loop: 'Cut the loop: a stage cannot need its own outputs.',

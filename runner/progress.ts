@@ -4,6 +4,7 @@
 import type { Io } from './command.ts';
 import type { ExecutionReporter } from './execute.ts';
 import type { Job, Outcome } from './job.ts';
+import { wrapped } from './wrapped.ts';
 
 /** Milliseconds between two drawings of the running stages. */
 const redrawEvery = 120;
@@ -82,20 +83,5 @@ export function endedLine(outcome: Outcome, width: number): string {
     ...(outcome.stop === null ? [] : [`stopped the run: ${outcome.stop}`]),
     ...(outcome.error === null ? [] : [outcome.error.message]),
   ];
-  return [line.trimEnd(), ...below.map((text) => wrapped(text, 100, 4))].join('\n');
-}
-
-/** Text broken at spaces to lines of at most `columns`, every line indented. */
-export function wrapped(text: string, columns: number, indent: number): string {
-  const margin = ' '.repeat(indent);
-  const lines: string[] = [];
-  let line = '';
-  for (const word of text.split(/\s+/)) {
-    if (line !== '' && indent + line.length + 1 + word.length > columns) {
-      lines.push(line);
-      line = '  ';
-    }
-    line += line.trim() === '' ? word : ` ${word}`;
-  }
-  return [...lines, line].map((each) => margin + each).join('\n');
+  return [line.trimEnd(), ...below.map((text) => wrapped(text, 100, 4, 2))].join('\n');
 }

@@ -5,7 +5,7 @@ import type { PublishedNumber } from '../ledger/entry.ts';
 import type { Io } from './command.ts';
 import type { RunOptions, RunSummary } from './commands/run.ts';
 import { roundedNumber } from './numbers-files.ts';
-import { wrapped } from './progress.ts';
+import { wrapped } from './wrapped.ts';
 
 /** The whole text, ending in a line feed. */
 export function runText(summary: RunSummary, options: RunOptions, io: Io): string {
@@ -14,7 +14,7 @@ export function runText(summary: RunSummary, options: RunOptions, io: Io): strin
   return [
     `\nRun ${run.run} of ${summary.recipe.name} ${ended}: entry ${run.number} of book ${shownPath(options.book, io)}\n`,
     numbersTable(summary.numbers.numbers),
-    ...summary.numbers.absent.map((text) => `${wrapped(`not published: ${text}`, 100, 2)}\n`),
+    ...summary.numbers.absent.map((text) => `${wrapped(`not published: ${text}`, 100, 2, 2)}\n`),
     plateList(summary, io),
     suggestions(summary, options, io),
   ]

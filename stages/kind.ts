@@ -88,6 +88,9 @@ export type ParameterDeclaration =
 export interface OutputDeclaration {
   readonly format: Format;
   readonly doc: string;
+  /** Of an output of format `numbers`: every name that it can hold, so that a recipe which publishes another is refused
+   *  before anything runs. Undefined where the names are not known beforehand. */
+  readonly numbers?: readonly string[];
   /** Names of optional inputs without which this output is not made. */
   readonly needs?: readonly string[];
 }

@@ -12,6 +12,7 @@ import { RunnerProblem } from '../problem.ts';
 import { quoted } from '../recipe/cells.ts';
 import { describeParameter, enumerate, formatsOf } from '../recipe/describe.ts';
 import { isRequired } from '../recipe/schema.ts';
+import { wrapped } from '../wrapped.ts';
 
 export interface KindsOptions extends CommonOptions {
   /** The program's kinds by default. */
@@ -54,25 +55,21 @@ function formatJson(value: unknown): string {
 
 function formatList(kinds: readonly StageKind[]): string {
   const width = Math.max(...kinds.map(({ kind }) => kind.length));
-  const lines = kinds.map(({ kind, doc }) => {
-    const start = `${kind.padEnd(width)}  `;
-    const summary = doc.split(/(?<=\.)\s/)[0];
-    return start + shortened(summary, WIDTH - start.length);
+  const items = kinds.map(({ kind, doc }) => {
+    const summary = doc.split(/(?<=\.)\s/)[0] ?? doc;
+    const text = wrapped(summary, WIDTH, width + 2).trimStart();
+    return `${kind.padEnd(width)}  ${text}`;
   });
-  return `${lines.join('\n')}\n`;
-}
-
-function shortened(text: string, width: number): string {
-  return text.length <= width ? text : `${text.slice(0, text.lastIndexOf(' ', width - 1))}…`;
+  return `${items.join('\n')}\n`;
 }
 
 function formatKind(kind: StageKind): string {
   const sections = [
     [
       `${kind.kind}, version ${kind.version}`,
-      ...wrapped(kind.doc, 2),
+      wrapped(kind.doc, WIDTH, 2),
       '',
-      ...wrapped(`Source: ${kind.source}`, 2),
+      wrapped(`Source: ${kind.source}`, WIDTH, 2),
     ],
     section('Inputs', Object.entries(kind.inputs), formatInput),
     section('Parameters', Object.entries(kind.parameters), (name, parameter) =>
@@ -98,21 +95,21 @@ function formatInput(name: string, input: InputDeclaration): string[] {
   const details = [formatsOf(input.format).join(' or ')];
   if (input.many) details.push('one or several');
   if (input.optional) details.push('may be left out');
-  return [...wrapped(`${name}: ${details.join('; ')}`, 2), ...wrapped(input.doc, 6)];
+  return [wrapped(`${name}: ${details.join('; ')}`, WIDTH, 2), wrapped(input.doc, WIDTH, 6)];
 }
 
 function formatOutput(name: string, output: OutputDeclaration): string[] {
   const needs = output.needs === undefined ? '' : `; made when ${enumerate(output.needs, 'and')} is given`;
-  return [...wrapped(`${name}: ${output.format}${needs}`, 2), ...wrapped(output.doc, 6)];
+  return [wrapped(`${name}: ${output.format}${needs}`, WIDTH, 2), wrapped(output.doc, WIDTH, 6)];
 }
 
 /** Name, type and default on the first line; below it what it is and why; fields of groups further in. */
 function formatParameter(name: string, declaration: ParameterDeclaration, indent: number): string[] {
   const { doc, why } = declaration;
   return [
-    ...wrapped(`${name}: ${typeOf(declaration)}; ${presence(declaration)}`, indent),
-    ...wrapped(doc, indent + 4),
-    ...(why === undefined ? [] : wrapped(`Default: ${why}`, indent + 4)),
+    wrapped(`${name}: ${typeOf(declaration)}; ${presence(declaration)}`, WIDTH, indent),
+    wrapped(doc, WIDTH, indent + 4),
+    ...(why === undefined ? [] : [wrapped(`Default: ${why}`, WIDTH, indent + 4)]),
     ...Object.entries(fieldsOf(declaration)).flatMap(([field, below]) =>
       formatParameter(field, below, indent + 4),
     ),
@@ -153,19 +150,4 @@ function fieldsOf(declaration: ParameterDeclaration): Readonly<Record<string, Pa
     default:
       return {};
   }
-}
-
-/** Lines of at most 100 columns; a longer word stands alone. */
-function wrapped(text: string, indent: number): string[] {
-  const lines: string[] = [];
-  let line = '';
-  for (const word of text.split(/\s+/).filter((word) => word !== '')) {
-    if (line !== '' && indent + line.length + 1 + word.length > WIDTH) {
-      lines.push(line);
-      line = '';
-    }
-    line = line === '' ? word : `${line} ${word}`;
-  }
-  if (line !== '') lines.push(line);
-  return lines.map((text) => ' '.repeat(indent) + text);
 }

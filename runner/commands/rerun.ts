@@ -24,8 +24,9 @@ import { execute } from '../execute.ts';
 import type { Job, JobInput, Outcome } from '../job.ts';
 import { advice, RunnerProblem } from '../problem.ts';
 import { kindsFolder, stageEngine } from '../program.ts';
-import { makeProgress, wrapped } from '../progress.ts';
+import { makeProgress } from '../progress.ts';
 import { plainParameters } from '../recorded-parameters.ts';
+import { wrapped } from '../wrapped.ts';
 
 export interface RerunOptions extends CommonOptions {
   readonly cores: number;
@@ -202,7 +203,7 @@ function rerunText(subject: Subject, draft: RerunDraft, entry: number, outcomes:
   const seconds = outcomes.reduce((sum, outcome) => sum + outcome.seconds, 0).toFixed(1);
   const what =
     subject.of.type === 'run' ? `run ${subject.of.run}` : `${subject.of.type} entry ${subject.of.number}`;
-  const differences = draft.differences.map((text) => wrapped(text, 100, 2));
+  const differences = draft.differences.map((text) => wrapped(text, 100, 2, 2));
   return [
     '',
     ...lines,

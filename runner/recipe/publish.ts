@@ -1,8 +1,10 @@
 /** What a recipe publishes: figures, and numbers with their tolerance and truth. */
 
+import { didYouMean } from '../../stages/near-miss.ts';
 import { InputProblem } from '../../stages/problem.ts';
 import { parseQuantity } from '../../stages/units.ts';
-import { type Cell, describeCell } from './cells.ts';
+import { type Cell, describeCell, quoted } from './cells.ts';
+import { enumerate } from './describe.ts';
 import { checkName, readKeys, readMap, readText, type Subject } from './keys.ts';
 import type { ProblemList } from './recipe-problems.ts';
 import {
@@ -100,7 +102,23 @@ function readPlacedNumber(
   const reference: PlacedReference | undefined = read?.reference;
   if (reference === undefined) return undefined;
   checkReference(reference, ['numbers'], stages, problems);
+  if (value !== undefined && at !== undefined) checkNumber(value, at, reference, stages, problems);
   return value === undefined ? undefined : { stage: reference.stage, output: reference.output, value };
+}
+
+/** The output can hold a number of that name, as far as its declaration says. */
+function checkNumber(
+  value: string,
+  { cell, path }: Subject,
+  { stage, output }: PlacedReference,
+  stages: Stages,
+  problems: ProblemList,
+): void {
+  const names = stages.get(stage)?.kind?.outputs[output]?.numbers;
+  if (names === undefined || names.includes(value)) return;
+  const advice = didYouMean(value, names).trim() || undefined;
+  const expected = enumerate(names, 'or');
+  problems.add({ spot: cell.spot, code: 'unknown-number', path, expected, found: quoted(value), advice });
 }
 
 function readTolerance(subject: Subject | undefined, problems: ProblemList): Tolerance | null {

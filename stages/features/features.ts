@@ -42,7 +42,22 @@ export const features = {
     },
   },
   outputs: {
-    ring: { format: 'numbers', doc: 'The numbers of the ring; only `ring-fraction` when there is none.' },
+    ring: {
+      format: 'numbers',
+      doc: 'The numbers of the ring; only `ring-fraction` when there is none.',
+      numbers: [
+        'diameter',
+        'width',
+        'asymmetry',
+        'position-angle',
+        'central-depression',
+        'roundness',
+        'thin-ring-diameter',
+        'ring-fraction',
+        'gravitational-radius',
+        'mass',
+      ],
+    },
     report: {
       format: 'json',
       doc: 'How many images have a ring, why the others have none, and the measures.',

@@ -140,7 +140,7 @@ export const fit = {
     samples: { format: 'fits-table', doc: 'Draws of flux and coefficients.' },
     residuals: { format: 'json', doc: 'Data with model and error, row by row and closure by closure.' },
     report: { format: 'json', doc: 'Chi-squares, choice of components, gains, starts, what was assumed.' },
-    flux: { format: 'numbers', doc: 'Total compact flux with its credible intervals.' },
+    flux: { format: 'numbers', doc: 'Total compact flux with its credible intervals.', numbers: ['flux'] },
   },
   load: () => import('./compute.ts'),
 } as const satisfies StageKind;

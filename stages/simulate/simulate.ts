@@ -315,6 +315,16 @@ export const simulate = {
     truth: {
       format: 'numbers',
       doc: 'Numbers of the truth at the declared resolution: diameter, width, asymmetry and so on, and the flux.',
+      numbers: [
+        'diameter',
+        'width',
+        'asymmetry',
+        'position-angle',
+        'central-depression',
+        'roundness',
+        'thin-ring-diameter',
+        'flux',
+      ],
     },
     image: { format: 'fits-image', doc: 'The truth, without extended flux, Jy per pixel.' },
   },

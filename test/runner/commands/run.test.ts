@@ -3,6 +3,7 @@ import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { beforeAll, describe, expect, it } from 'vitest';
 import { readPngText } from '../../../runner/plates/png-text.ts';
+import { stageKinds } from '../../../stages/kinds.ts';
 import { document, platebook } from '../test-io.ts';
 import { temporaryFolder } from '../test-jobs.ts';
 
@@ -20,6 +21,7 @@ const stageNames = [
 ];
 
 interface StageDocument {
+  readonly kind: string;
   readonly stage: string;
   readonly state: string;
   readonly entry: number;
@@ -54,6 +56,20 @@ describe('run, trace, diff, rerun and audit on the small recipe', () => {
     expect(diameter?.unit).toBe('uas');
     expect(diameter?.low).toBeLessThan(diameter?.value ?? 0);
     expect(diameter?.high).toBeGreaterThan(diameter?.value ?? 0);
+  });
+
+  it('writes only numbers that the kinds declare', () => {
+    const declared = new Map(stageKinds.map((kind) => [kind.kind, kind.outputs]));
+    const written = first.stages.flatMap(({ kind, outputs }) =>
+      Object.entries(outputs)
+        .filter(([name]) => declared.get(kind)?.[name]?.format === 'numbers')
+        .map(([name, { path }]) => ({
+          numbers: Object.keys(JSON.parse(readFileSync(path, 'utf8')).values),
+          declared: declared.get(kind)?.[name]?.numbers,
+        })),
+    );
+    expect(written).toHaveLength(3);
+    for (const { numbers, declared } of written) expect(declared).toEqual(expect.arrayContaining(numbers));
   });
 
   it('carries everything forward the second time, and the plates keep their numbers and bytes', async () => {
@@ -144,6 +160,19 @@ describe('run, trace, diff, rerun and audit on the small recipe', () => {
 });
 
 describe('run on a recipe that is wrong', () => {
+  it('refuses a published number that the output cannot hold, with the near miss', async () => {
+    const folder = temporaryFolder();
+    const text = readFileSync(recipe, 'utf8').replace(
+      'output: ring, value: diameter',
+      'output: ring, value: diametre',
+    );
+    writeFileSync(join(folder, 'wrong.yaml'), text);
+    const { status, err } = await platebook(folder, ['run', 'wrong.yaml']);
+    expect(status).toBe(2);
+    expect(err).toContain('unknown-number publish.numbers.ring-diameter.value');
+    expect(err).toContain('Did you mean `diameter`?');
+  });
+
   it('starts nothing, leaves no book, and ends with status 2', async () => {
     const folder = temporaryFolder();
     writeFileSync(join(folder, 'wrong.yaml'), 'recipe: wrong\nstages:\n  a: { kind: ingesst }\n');
