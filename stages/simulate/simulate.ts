@@ -1,6 +1,7 @@
 /** Declaration of the kind `simulate`: a synthetic observation of an invented or given truth. */
 
 import type { StageKind } from '../kind.ts';
+import { ringTruth, station } from './declared-groups.ts';
 
 export const simulate = {
   kind: 'simulate',
@@ -53,71 +54,7 @@ export const simulate = {
       least: 2,
       most: 60,
       doc: 'The stations, each with a position either as `xyz` or as `longitude`, `latitude` and `height`.',
-      of: {
-        type: 'group',
-        doc: 'One station.',
-        fields: {
-          name: { type: 'text', pattern: '^[A-Za-z0-9_-]{1,8}$', doc: 'At most 8 letters and digits.' },
-          xyz: {
-            type: 'list',
-            of: { type: 'quantity', unit: 'm', doc: 'A coordinate.' },
-            least: 3,
-            most: 3,
-            optional: true,
-            doc: 'Geocentric position (ITRF).',
-          },
-          longitude: {
-            type: 'quantity',
-            unit: 'deg',
-            from: -180,
-            to: 360,
-            optional: true,
-            doc: 'East positive.',
-          },
-          latitude: {
-            type: 'quantity',
-            unit: 'deg',
-            from: -90,
-            to: 90,
-            optional: true,
-            doc: 'Geodetic (WGS84).',
-          },
-          height: {
-            type: 'quantity',
-            unit: 'm',
-            from: -1000,
-            to: 1e5,
-            optional: true,
-            doc: 'Above the ellipsoid.',
-          },
-          sefd: { type: 'quantity', unit: 'Jy', from: 1e-3, to: 1e9, doc: 'System equivalent flux density.' },
-          gainError: {
-            type: 'number',
-            from: 0,
-            to: 2,
-            default: 0,
-            doc: 'Standard deviation of the logarithm of the gain, drawn anew for every scan.',
-            why: 'Errors are in the data only when asked for.',
-          },
-          gainFactor: {
-            type: 'number',
-            from: 0.01,
-            to: 100,
-            default: 1,
-            doc: 'Constant factor of the gain, for a station whose calibration is off.',
-            why: 'Errors are in the data only when asked for.',
-          },
-          elevationLimit: {
-            type: 'quantity',
-            unit: 'deg',
-            from: 0,
-            to: 90,
-            default: '10 deg',
-            doc: 'The station takes part in scans all of which lie above this elevation.',
-            why: 'Below, the atmosphere takes most of the signal.',
-          },
-        },
-      },
+      of: station,
     },
     start: { type: 'text', doc: 'Start of the first scan, UTC, such as 2031-04-07T21:00:00Z.' },
     duration: {
@@ -201,86 +138,7 @@ export const simulate = {
       doc: 'Noise in the data over the noise that the weights state.',
       why: 'Above 1 the stated noise is too small: a fault to be found.',
     },
-    truth: {
-      type: 'group',
-      optional: true,
-      doc:
-        'The truth where no image is given: a thin ring with brightness 1 + 2·asymmetry·cos(angle from positionAngle), and ' +
-        'a uniform disc of the ring’s diameter, both blurred by a Gaussian.',
-      fields: {
-        flux: {
-          type: 'quantity',
-          unit: 'Jy',
-          from: 1e-9,
-          to: 1e9,
-          doc: 'Total flux density of ring and disc.',
-        },
-        diameter: {
-          type: 'quantity',
-          unit: 'uas',
-          from: 1e-3,
-          to: 1e9,
-          doc: 'Of the thin ring, before blurring.',
-        },
-        width: { type: 'quantity', unit: 'uas', from: 0, to: 1e9, doc: 'FWHM of the Gaussian.' },
-        asymmetry: {
-          type: 'number',
-          from: 0,
-          to: 0.5,
-          default: 0,
-          doc: 'Of the thin ring.',
-          why: 'An even ring.',
-        },
-        positionAngle: {
-          type: 'quantity',
-          unit: 'deg',
-          from: -360,
-          to: 360,
-          default: '0 deg',
-          doc: 'Of the brightest point, from north through east.',
-          why: 'Nothing to point at in an even ring.',
-        },
-        east: {
-          type: 'quantity',
-          unit: 'uas',
-          default: '0 uas',
-          doc: 'Offset of the ring’s centre.',
-          why: 'Centred.',
-        },
-        north: {
-          type: 'quantity',
-          unit: 'uas',
-          default: '0 uas',
-          doc: 'Offset of the ring’s centre.',
-          why: 'Centred.',
-        },
-        floor: {
-          type: 'number',
-          from: 0,
-          to: 1,
-          default: 0,
-          doc: 'Part of the flux that lies in the disc.',
-          why: 'A ring with nothing inside.',
-        },
-        field: {
-          type: 'quantity',
-          unit: 'uas',
-          from: 1e-3,
-          to: 1e9,
-          default: '160 uas',
-          doc: 'Side of the truth image.',
-          why: 'Holds a ring of 50 uas with room.',
-        },
-        pixels: {
-          type: 'integer',
-          from: 16,
-          to: 1024,
-          default: 128,
-          doc: 'Pixels along that side.',
-          why: 'Fine against any beam.',
-        },
-      },
-    },
+    truth: ringTruth,
     extended: {
       type: 'group',
       optional: true,
