@@ -1,5 +1,6 @@
 /** Entering: one draft becomes the ledger's next line. See book.ts for the order of writing. */
 
+import type { KeyObject } from 'node:crypto';
 import { closeSync, fsyncSync, ftruncateSync, openSync } from 'node:fs';
 import { objectionsTo } from './acceptance.ts';
 import type { Announce } from './book.ts';
@@ -12,10 +13,12 @@ import type { IndexKeeper } from './index-keeper.ts';
 import { ledgerPath } from './ledger-file.ts';
 import { badDraft, cannotWrite, ledgerDamaged, nobodyWrites } from './problem.ts';
 import { digestOfEntry, readEntry } from './reading.ts';
-import { recover, standingOf } from './recovery.ts';
-import { readSeal, type Seal, sealPath, writeSeal } from './seal.ts';
+import { recover, type Sealed, standingOf, takeUp } from './recovery.ts';
+import { readSeal, type Seal, type SealFacts, sealPath } from './seal.ts';
+import { replaceSeal } from './sealing.ts';
 import type { Store } from './store.ts';
 import { formatTime } from './time.ts';
+import { askTree, type GrowingTree, growTree, rootOf, treeUnder } from './tree.ts';
 import type { Turns } from './turns.ts';
 
 export interface Writer {
@@ -26,30 +29,36 @@ export interface Writer {
   readonly by: Person | undefined;
   readonly now: () => Date;
   readonly announce: Announce;
+  /** The key that signs; read, or made, when it is first needed. */
+  readonly key: () => KeyObject;
+  /** What this writer itself sealed last: it need not be verified or read again. */
+  own: { readonly note: string | null; readonly tree: GrowingTree } | null;
 }
 
 /** Enters a draft; what Book.append promises. */
 export function appendEntry(writer: Writer, draft: Draft): { entry: Entry; digest: string } {
-  const { by, directory, turns } = writer;
+  const { by, turns } = writer;
   if (by === undefined) throw nobodyWrites();
   return turns.take(() => {
-    const seal = sealedState(writer);
-    const entry = fillIn(writer, by, draft, seal);
-    requireAcceptable(writer, entry, seal);
+    const sealed = sealedState(writer);
+    const entry = fillIn(writer, by, draft, sealed.seal);
+    requireAcceptable(writer, entry, sealed.seal);
     const text = canonicalJson(entry as unknown as Json, draft.type);
     const digest = sha256(text);
-    const line = Buffer.from(`${text}\n`);
-    writeLine(directory, seal, line, digest);
+    writeLine(writer, sealed, Buffer.from(`${text}\n`), digest, entry.time);
     level(writer.keeper);
     return { entry, digest };
   });
 }
 
 /** The seal that the ledger's end agrees with, after what an interrupted writer left has been put right. */
-function sealedState({ directory, announce }: Writer): Seal {
-  const standing = standingOf(directory);
+function sealedState({ directory, announce, own, key, now }: Writer): Sealed {
+  const standing = standingOf(directory, own?.note ?? null);
   if (standing.state === 'damaged') throw ledgerDamaged(ledgerPath(directory), undefined, standing.what);
-  return standing.state === 'unsealed' ? recover(directory, standing, announce) : standing.seal;
+  if (standing.state === 'sealed' && standing.seal.note !== null) return standing;
+  const sealing = { key: key(), time: formatTime(now()) };
+  const sealed = standing.state === 'sealed' ? standing : recover(directory, standing, announce, sealing);
+  return sealed.seal.note === null ? takeUp(directory, sealed, announce, sealing) : sealed;
 }
 
 function requireAcceptable({ directory, keeper, store }: Writer, entry: Entry, seal: Seal): void {
@@ -61,6 +70,8 @@ function requireAcceptable({ directory, keeper, store }: Writer, entry: Entry, s
       Number.isSafeInteger(number) && number >= 1 && number <= seal.entries
         ? { entry: readEntry(directory, keeper, number), digest: digestOfEntry(keeper, number) }
         : undefined,
+    book: seal.book,
+    rootAt: (size) => rootUnder(directory, seal, size),
   });
   if (objection !== undefined) throw badDraft(entry.type, objection);
 }
@@ -80,21 +91,43 @@ function fillIn({ keeper, now }: Writer, by: Person, draft: Draft, seal: Seal): 
   return { ...draft, ...common, run: (last?.run ?? 0) + 1 };
 }
 
+/** The root of the first `size` entries, base64; null when there are not so many. */
+function rootUnder(directory: string, seal: Seal, size: number): string | null {
+  if (!(Number.isSafeInteger(size) && size >= 0 && size <= seal.entries)) return null;
+  const whole = (tree: { rootAt(size: number): Buffer }) =>
+    [tree.rootAt(size), tree.rootAt(seal.entries)] as const;
+  const isRight = ([, root]: readonly [Buffer, Buffer]) => root.toString('base64') === seal.root;
+  return askTree(directory, seal, whole, isRight)[0].toString('base64');
+}
+
 /** Writes the line and its seal, or neither. */
-function writeLine(directory: string, seal: Seal, line: Buffer, digest: string): void {
+function writeLine(
+  writer: Writer,
+  { seal, lastType }: Sealed,
+  line: Buffer,
+  digest: string,
+  time: string,
+): void {
+  const { directory, announce, own } = writer;
   const path = ledgerPath(directory);
-  const grown: Seal = {
+  const key = writer.key();
+  const before = own !== null && own.note === seal.note ? own.tree : treeUnder(directory, seal);
+  const tree = growTree(directory, before, line.subarray(0, -1));
+  const grown: SealFacts = {
     book: seal.book,
     bytes: seal.bytes + line.length,
     entries: seal.entries + 1,
     last: digest,
+    root: rootOf(tree),
+    time,
   };
   let descriptor: number | undefined;
   try {
     descriptor = openSync(path, 'a');
     writeAll(descriptor, line);
     fsyncSync(descriptor);
-    writeSeal(directory, grown);
+    const { note } = replaceSeal(directory, grown, key, announce, lastType === 'run' ? seal : null);
+    writer.own = { note, tree };
   } catch (cause) {
     // A seal that was replaced before its directory failed to sync counts: taking the line back would be damage.
     if (descriptor !== undefined && !isSealed(directory, grown)) ftruncateSync(descriptor, seal.bytes);
@@ -104,7 +137,7 @@ function writeLine(directory: string, seal: Seal, line: Buffer, digest: string):
   }
 }
 
-function isSealed(directory: string, grown: Seal): boolean {
+function isSealed(directory: string, grown: SealFacts): boolean {
   const seal = readSeal(directory);
   return typeof seal !== 'string' && seal.entries >= grown.entries;
 }

@@ -1,103 +1,133 @@
-/** The part of an audit that holds the index against the ledger: a fresh one is made in memory, and every row of the
- *  one on disk must be the same. */
+/** The part of an audit that holds the index against the ledger: for each entry, the rows that it must have and those
+ *  that it has, side by side in the order of entries. */
 
 import { existsSync } from 'node:fs';
 import { join } from 'node:path';
 import type { DatabaseSync } from 'node:sqlite';
 import type { LedgerLine, Problem } from './audit-ledger.ts';
-import type { Entry } from './entry.ts';
-import { type Index, isCurrent, openForAudit, openIndex, TABLES } from './index.ts';
+import { isCurrent, LONGEST_VALUE, openForAudit } from './index.ts';
+import { rowsOf, settingsOf, TABLES, type Table, valuesOf } from './index-rows.ts';
+import { knownLinks } from './known-links.ts';
 
-/** @param blamed  entries already known as damaged: what the index says of them is no news */
-export function auditIndex(
-  directory: string,
-  lines: readonly LedgerLine[],
-  blamed: ReadonlySet<number>,
-): { problems: Problem[]; remarks: string[] } {
+const LIES = 'index.sqlite says something else of it than the ledger; remove index.sqlite, it is made again';
+
+export interface IndexAudit {
+  /** Takes the next line; lines come in order, and must all be entries. */
+  visit(line: LedgerLine): void;
+  /** What was found, and remarks. Closes the index. */
+  finish(): { problems: Problem[]; remarks: string[] };
+}
+
+/** Begins to audit the index of a book. What cannot be read is worth a remark: an index can be made again. */
+export function auditIndex(directory: string): IndexAudit {
   const path = join(directory, 'index.sqlite');
-  const remark = (what: string) => ({
-    problems: [],
-    remarks: [`index.sqlite ${what}; it is made again when needed`],
-  });
-  if (!existsSync(path)) return remark('is missing');
-  if (lines.some(({ entry }) => entry === null) || blamed.size > 0) {
-    return { problems: [], remarks: ['index.sqlite was not compared: the ledger itself is damaged'] };
-  }
-  const fresh = openIndex(':memory:', '');
+  if (!existsSync(path)) return remarking('is missing');
   try {
-    fresh.rebuild(lines[0]?.entry?.book ?? '', indexed(lines));
-    return compareFiles(path, fresh, lines.length) ?? remark('is of another version');
-  } catch (error) {
-    if (!('errcode' in (error as object))) throw error;
-    return remark(`cannot be read (${(error as Error).message})`);
-  } finally {
-    fresh.close();
-  }
-}
-
-function* indexed(lines: readonly LedgerLine[]) {
-  for (const { entry, digest, length } of lines) yield { entry: entry as Entry, digest, length };
-}
-
-function compareFiles(
-  path: string,
-  fresh: Index,
-  count: number,
-): { problems: Problem[]; remarks: string[] } | null {
-  const database = openForAudit(path);
-  try {
-    if (!isCurrent(database)) return null;
-    // An index that is behind tells no lies; entries appended since the ledger was read are not in question.
-    const extent = database.prepare('SELECT entries FROM extent').get() as { entries: number } | undefined;
-    const reach = Math.min(count, extent?.entries ?? 0);
-    const problems = new Map<number, Problem>();
-    for (const table of TABLES) {
-      for (const entry of differingEntries(database, fresh, table, reach)) {
-        problems.set(entry, {
-          entry,
-          what: 'index.sqlite says something else of it than the ledger; remove index.sqlite, it is made again',
-        });
-      }
-    }
-    return { problems: [...problems.values()], remarks: [] };
-  } finally {
+    const database = openForAudit(path);
+    if (isCurrent(database)) return auditing(database);
     database.close();
+    return remarking('is of another version');
+  } catch (error) {
+    if (!isOfDatabase(error)) throw error;
+    return remarking(`cannot be read (${(error as Error).message})`);
   }
 }
 
-/** Which column of a table names the entry that a row is of. */
-const ENTRY_OF: Readonly<Record<(typeof TABLES)[number], string>> = {
-  entries: 'number',
-  files: 'entry',
-  links: 'source',
-  plates: 'coalesce(entry, drawn)',
-  numbers: '(SELECT number FROM entries WHERE entries.run = numbers.run)',
-};
+function remarking(what: string): IndexAudit {
+  const found = { problems: [], remarks: [`index.sqlite ${what}; it is made again when needed`] };
+  return { visit: () => {}, finish: () => found };
+}
 
-function differingEntries(
+function auditing(database: DatabaseSync): IndexAudit {
+  // An index that is behind tells no lies; entries appended since the ledger was read are not in question.
+  const extent = database.prepare('SELECT entries FROM extent').get() as { entries: number } | undefined;
+  const reach = extent?.entries ?? 0;
+  const blamed = new Set<number>();
+  const cursors = TABLES.map((table) => cursorOf(database, table, reach, blamed));
+  const hasSetting = database.prepare('SELECT 1 FROM settings WHERE name = ? AND value = ? AND settings = ?');
+  const known = new Set<number>();
+  const links = knownLinks(1, () => []);
+  let count = 0;
+  let broken: string | null = null;
+
+  const compare = ({ entry, number, offset, digest, length }: LedgerLine) => {
+    if (entry === null || number > reach) return;
+    // Where a line was left out, the ledger is damaged, and what is found here does not count.
+    if (number !== count + 1) return;
+    count = number;
+    const expected = rowsOf(entry, { position: offset, length, digest }, links);
+    for (const [i, rows] of expected.entries()) cursors[i]?.compare(number, rows);
+    const settings = settingsOf(entry);
+    if (settings === null || known.has(settings)) return;
+    known.add(settings);
+    const stand = valuesOf(entry).every(
+      ([name, value]) => hasSetting.get(name, value.slice(0, LONGEST_VALUE), settings) !== undefined,
+    );
+    if (!stand) blamed.add(number);
+  };
+  const guarded = (work: () => void) => {
+    if (broken !== null) return;
+    try {
+      work();
+    } catch (error) {
+      if (!isOfDatabase(error)) throw error;
+      broken = (error as Error).message;
+    }
+  };
+  return {
+    visit: (line) => guarded(() => compare(line)),
+    finish() {
+      guarded(() => {
+        for (const cursor of cursors) cursor.rest(Math.min(count, reach));
+      });
+      database.close();
+      if (broken !== null) return remarking(`cannot be read (${broken})`).finish();
+      const problems = [...blamed].map((entry): Problem => ({ entry, what: LIES, beside: true }));
+      return { problems, remarks: [] };
+    },
+  };
+}
+
+/** Goes through a table in the order in which an honest one was written. */
+function cursorOf(
   database: DatabaseSync,
-  fresh: Index,
-  table: (typeof TABLES)[number],
+  { name, columns, entry }: Table,
   reach: number,
-): number[] {
-  const sql = `SELECT *, ${ENTRY_OF[table]} AS of_entry FROM ${table} ORDER BY rowid`;
-  const have = byEntry(database.prepare(sql).all() as unknown as OfEntry[], reach);
-  const want = byEntry(fresh.all<OfEntry>(sql), reach);
-  return [...new Set([...have.keys(), ...want.keys()])].filter(
-    (entry) => have.get(entry) !== want.get(entry),
-  );
+  blamed: Set<number>,
+) {
+  const sql = `SELECT ${entry} AS of_entry, ${columns.join(', ')} FROM ${name} ORDER BY rowid`;
+  const statement = database.prepare(sql);
+  statement.setReturnArrays(true);
+  const rows = statement.iterate() as unknown as Iterator<unknown[]>;
+  let row: unknown[] | null = null;
+  const advance = () => {
+    const next = rows.next();
+    row = next.done === true ? null : next.value;
+  };
+  const numberOf = (of: unknown[]) => (typeof of[0] === 'number' ? of[0] : reach);
+  advance();
+  return {
+    /** Takes the rows of an entry. Rows of an earlier one are out of place. */
+    compare(number: number, expected: readonly (readonly unknown[])[]): void {
+      let found = 0;
+      let same = true;
+      for (; row !== null && numberOf(row) <= number; advance()) {
+        if (numberOf(row) < number) blamed.add(numberOf(row));
+        else {
+          const wanted = expected[found];
+          same &&= wanted !== undefined && row.slice(1).every((value, i) => value === wanted[i]);
+          found += 1;
+        }
+      }
+      if (!same || found !== expected.length) blamed.add(number);
+    },
+    /** Takes what is left, which nothing in the ledger stands behind. */
+    rest(last: number): void {
+      for (; row !== null; advance()) if (numberOf(row) <= last) blamed.add(numberOf(row));
+    },
+  };
 }
 
-interface OfEntry {
-  readonly of_entry: number | null;
-}
-
-/** Rows of the entries up to `reach`, as text; a row of no entry counts as the last's. */
-function byEntry(rows: readonly OfEntry[], reach: number): Map<number, string> {
-  const grouped = new Map<number, string>();
-  for (const row of rows) {
-    const entry = row.of_entry ?? reach;
-    if (entry <= reach) grouped.set(entry, `${grouped.get(entry) ?? ''}${JSON.stringify(row)}\n`);
-  }
-  return grouped;
+function isOfDatabase(error: unknown): boolean {
+  return typeof error === 'object' && error !== null && 'errcode' in error;
 }

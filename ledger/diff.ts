@@ -11,6 +11,7 @@ import type {
   RunEntry,
   StageEntry,
 } from './entry.ts';
+import { withdrawalsOfNumber, withdrawnUpstream } from './withdrawal.ts';
 
 type Pair<T> = readonly [T, T];
 /** Null where a run has none. */
@@ -41,6 +42,14 @@ export interface DiffDocument {
     readonly digests: Either<string>;
   }[];
   readonly numbers: readonly DiffNumber[];
+  /** Withdrawals that stand of something that one of the runs depends on. */
+  readonly withdrawals: readonly {
+    readonly run: number;
+    /** The withdrawal's entry. */
+    readonly entry: number;
+    readonly withdraws: number;
+    readonly reason: string;
+  }[];
 }
 
 export interface DiffInput {
@@ -71,6 +80,8 @@ export interface DiffNumber {
   /** The shift in quadrature means of the half-widths of both 68 % intervals; null when there is none. */
   readonly sigmas: number | null;
   readonly intervals: Either<Pair<number>>;
+  /** Numbers of the withdrawals that the value in each run depends on. */
+  readonly withdrawn: Pair<readonly number[]>;
 }
 
 type Executed = StageEntry | FailureEntry;
@@ -104,7 +115,8 @@ export function diffRuns(book: Book, a: RunEntry, b: RunEntry): DiffDocument {
     numbers: namesOf(
       a.numbers.map(({ name }) => name),
       b.numbers.map(({ name }) => name),
-    ).map((name) => numberDifference(name, a, b)),
+    ).map((name) => numberDifference(book, name, a, b)),
+    withdrawals: [...new Set([a, b])].flatMap((run) => withdrawalsFor(book, run)),
   };
 }
 
@@ -250,7 +262,7 @@ function outputsOf(entry: Executed): StageEntry['outputs'] {
 
 // Numbers
 
-function numberDifference(name: string, runA: RunEntry, runB: RunEntry): DiffNumber {
+function numberDifference(book: Book, name: string, runA: RunEntry, runB: RunEntry): DiffNumber {
   const find = (run: RunEntry) => run.numbers.find((number) => number.name === name) ?? null;
   const [a, b] = [find(runA), find(runB)];
   const shift = a !== null && b !== null && a.unit === b.unit ? b.value - a.value : null;
@@ -262,7 +274,21 @@ function numberDifference(name: string, runA: RunEntry, runB: RunEntry): DiffNum
     shift,
     sigmas: shift !== null && width > 0 ? shift / width : null,
     intervals: [intervalOf(a), intervalOf(b)],
+    withdrawn: [withdrawalsOfValue(book, runA, a), withdrawalsOfValue(book, runB, b)],
   };
+}
+
+function withdrawalsOfValue(book: Book, run: RunEntry, number: PublishedNumber | null): number[] {
+  return number === null ? [] : withdrawalsOfNumber(book, run.number, number.entry);
+}
+
+function withdrawalsFor(book: Book, { run, number }: RunEntry): DiffDocument['withdrawals'] {
+  return withdrawnUpstream(book, number).map(({ number: entry, withdraws, reason }) => ({
+    run,
+    entry,
+    withdraws,
+    reason,
+  }));
 }
 
 /** Half the width of the 68 % interval; 0 without one. */

@@ -37,6 +37,9 @@ const FIELDS: Readonly<Record<Draft['type'], Readonly<Record<string, string>>>> 
     stamped: 'object',
   },
   rerun: { of: 'number', verdict: 'string', outputs: 'object', differences: 'object' },
+  import: { origin: 'object', imported: 'object', record: 'object', files: 'object', entries: 'object' },
+  withdrawal: { withdraws: 'number', reason: 'string' },
+  countersignature: { signs: 'number', what: 'string', key: 'string', signature: 'string' },
 };
 
 /** What an object lacks to be an entry, as the end of a sentence; null when it lacks nothing. */

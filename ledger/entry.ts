@@ -43,6 +43,10 @@ export interface RecordedCode {
   /** Package to version, from the lock file. */
   readonly packages: { readonly [name: string]: string };
   readonly runtime: string;
+  /** package.json. Where it stands, it and every file of `files` are kept in the store under their digests. */
+  readonly package?: StoredFile;
+  /** The lock file; absent when the program was installed without one. */
+  readonly lock?: StoredFile;
 }
 
 export interface RecordedFinding {
@@ -159,7 +163,59 @@ export interface RerunDraft {
   readonly differences: readonly string[];
 }
 
-export type Draft = StageDraft | FailureDraft | RunDraft | PlateDraft | RerunDraft;
+/** A file that an imported entry names and the bag held; now in this book's store. */
+export interface ImportedFile extends StoredFile {
+  /** What it is to the imported entry: a role of references.ts, or `code`. */
+  readonly role: string;
+  readonly name: string;
+}
+
+/** An entry of another book, taken over from a bag as it stood there. */
+export interface ImportDraft {
+  readonly type: 'import';
+  /** The book that it comes from, its number there, and the digest of its line. */
+  readonly origin: { readonly book: string; readonly number: number; readonly digest: string };
+  /** Type and name of the imported entry, and who wrote it. */
+  readonly imported: { readonly type: string; readonly name: string; readonly by: Person };
+  /** Its line, without line feed; the digest is the origin's. */
+  readonly record: StoredFile;
+  /** The document that proves it to be under a seal of its book; null when the bag had none. */
+  readonly proof: StoredFile | null;
+  readonly files: readonly ImportedFile[];
+  /** Entries of this book that stand for those which the imported entry depends on, and their numbers there. */
+  readonly entries: readonly { readonly number: number; readonly entry: number }[];
+}
+
+/** An entry that does not stand any more: nothing that depends on it is carried forward, and every question says so.
+ *  A withdrawal may itself be withdrawn; then it counts no more. */
+export interface WithdrawalDraft {
+  readonly type: 'withdrawal';
+  readonly withdraws: number;
+  readonly reason: string;
+}
+
+/** A signature, with a key of one's own, under an entry or under a seal. */
+export interface CountersignatureDraft {
+  readonly type: 'countersignature';
+  /** The entry that is signed; of a seal the last entry under it. */
+  readonly signs: number;
+  /** The digest of that entry, or the seal's text without signatures. See countersignature.ts for what is signed. */
+  readonly what: string;
+  /** The verifier key: `name+hash+base64`. */
+  readonly key: string;
+  /** Base64. */
+  readonly signature: string;
+}
+
+export type Draft =
+  | StageDraft
+  | FailureDraft
+  | RunDraft
+  | PlateDraft
+  | RerunDraft
+  | ImportDraft
+  | WithdrawalDraft
+  | CountersignatureDraft;
 
 export type StageEntry = StageDraft & EntryCommon;
 export type FailureEntry = FailureDraft & EntryCommon;
@@ -167,4 +223,15 @@ export type FailureEntry = FailureDraft & EntryCommon;
 export type RunEntry = RunDraft & EntryCommon & { readonly run: number };
 export type PlateEntry = PlateDraft & EntryCommon;
 export type RerunEntry = RerunDraft & EntryCommon;
-export type Entry = StageEntry | FailureEntry | RunEntry | PlateEntry | RerunEntry;
+export type ImportEntry = ImportDraft & EntryCommon;
+export type WithdrawalEntry = WithdrawalDraft & EntryCommon;
+export type CountersignatureEntry = CountersignatureDraft & EntryCommon;
+export type Entry =
+  | StageEntry
+  | FailureEntry
+  | RunEntry
+  | PlateEntry
+  | RerunEntry
+  | ImportEntry
+  | WithdrawalEntry
+  | CountersignatureEntry;

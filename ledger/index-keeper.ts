@@ -6,7 +6,7 @@ import { rmSync } from 'node:fs';
 import { join } from 'node:path';
 import { sha256 } from './digest.ts';
 import { type Extent, type Index, type IndexedLine, openIndex } from './index.ts';
-import { ledgerPath, linesOf, parseEntry, sizeOf, withFile } from './ledger-file.ts';
+import { ledgerPath, linesOf, parseEntry, parseTrusted, sizeOf, withFile } from './ledger-file.ts';
 import { ledgerDamaged } from './problem.ts';
 import { readSeal, type Seal } from './seal.ts';
 
@@ -134,7 +134,7 @@ function* chain(
 
 function entryOf(path: string, line: number, bytes: Buffer) {
   try {
-    return parseEntry(bytes);
+    return parseTrusted(bytes);
   } catch (error) {
     throw ledgerDamaged(path, line, (error as Error).message.replace(/\.$/, ''));
   }

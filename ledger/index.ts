@@ -2,41 +2,66 @@
  *  again. It holds where each line lies and its digest, so that a line that was changed is noticed when it is read.
  *
  *  Write-ahead logging lets readers read while one process writes. Only `remembered` (the digests of files outside) is
- *  not derived; losing it costs one reading of each file. */
+ *  not derived; losing it costs one reading of each file. `settings` holds the values of parameters by the number that
+ *  settingsOf gives a whole set of them: sets repeat from run to run, so it grows much slower than the ledger. */
 
 import { DatabaseSync, type StatementSync } from 'node:sqlite';
 import { DIGEST_OF_NOTHING } from './digest.ts';
 import type { Entry } from './entry.ts';
-import { plateNumbersOf } from './plate-number.ts';
-import { referencesOf } from './references.ts';
+import { rowsOf, settingsOf, TABLES, type Value, valuesOf } from './index-rows.ts';
+import { knownLinks } from './known-links.ts';
 
 /** Changes when the tables do; an index of another version is made again. */
-const VERSION = 1;
+const VERSION = 2;
 /** How long a write may wait for another process's; both last a millisecond. */
 const PATIENCE_MILLISECONDS = 500;
-
-/** The derived tables; audits compare them whole. */
-export const TABLES = ['entries', 'files', 'links', 'plates', 'numbers'] as const;
+/** Pages held in memory, kB: SQLite's own default, and what sorting millions of rows asks for. */
+const CACHE = 2_000;
+const CACHE_WHILE_MAKING = 64_000;
+/** Longer values of parameters are known by their beginning. */
+export const LONGEST_VALUE = 200;
 
 const SCHEMA = `
   CREATE TABLE entries(number INTEGER PRIMARY KEY, position INTEGER, length INTEGER, digest TEXT, type TEXT, time TEXT,
-    name TEXT, kind TEXT, key TEXT, run INTEGER);
-  CREATE INDEX entries_key ON entries(key, number) WHERE key IS NOT NULL;
-  CREATE INDEX entries_run ON entries(run) WHERE run IS NOT NULL;
-  CREATE INDEX entries_digest ON entries(digest);
-  CREATE INDEX entries_type ON entries(type, name, number);
+    name TEXT, kind TEXT, key TEXT, run INTEGER, settings INTEGER);
   CREATE TABLE files(digest TEXT, bytes INTEGER, role TEXT, name TEXT, entry INTEGER);
-  CREATE INDEX files_digest ON files(digest, entry);
   CREATE TABLE links(source INTEGER, target INTEGER);
-  CREATE INDEX links_source ON links(source);
-  CREATE INDEX links_target ON links(target);
-  CREATE TABLE plates(plate TEXT, entry INTEGER, drawn INTEGER, output TEXT);
-  CREATE INDEX plates_plate ON plates(plate);
-  CREATE TABLE numbers(name TEXT, run INTEGER, place INTEGER);
-  CREATE INDEX numbers_name ON numbers(name, run);
+  CREATE TABLE plates(plate TEXT, entry INTEGER, drawn INTEGER, output TEXT, name TEXT);
+  CREATE TABLE numbers(name TEXT, run INTEGER, place INTEGER, entry INTEGER, output TEXT,
+    publisher INTEGER);
+  CREATE TABLE lineages(ancestor INTEGER, dependant INTEGER, distance INTEGER, numbers TEXT);
+  CREATE TABLE withdrawals(withdraws INTEGER, entry INTEGER);
+  CREATE TABLE countersignatures(signs INTEGER, entry INTEGER);
+  CREATE TABLE settings(name TEXT, value TEXT, settings INTEGER, PRIMARY KEY(name, value, settings)) WITHOUT ROWID;
   CREATE TABLE extent(book TEXT, entries INTEGER, bytes INTEGER, last TEXT);
   CREATE TABLE IF NOT EXISTS remembered(path TEXT PRIMARY KEY, stamp TEXT, digest TEXT, bytes INTEGER);
   PRAGMA user_version = ${VERSION};
+`;
+
+/** Made after a new index has been filled: sorting once is faster than keeping them sorted. Those of entries end with
+ *  the number, by which the latest are found first; those of links hold both columns. */
+const INDEXES = `
+  CREATE INDEX entries_key ON entries(key, number) WHERE key IS NOT NULL;
+  CREATE INDEX entries_run ON entries(run) WHERE run IS NOT NULL;
+  CREATE INDEX entries_digest ON entries(digest);
+  CREATE INDEX entries_type ON entries(type, number);
+  CREATE INDEX entries_time ON entries(time, number);
+  CREATE INDEX entries_kind ON entries(kind, number) WHERE kind IS NOT NULL;
+  CREATE INDEX entries_stage ON entries(name, number) WHERE kind IS NOT NULL;
+  CREATE INDEX entries_recipe ON entries(name, number) WHERE run IS NOT NULL;
+  CREATE INDEX entries_settings ON entries(settings, number) WHERE settings IS NOT NULL;
+  CREATE INDEX files_digest ON files(digest, entry);
+  CREATE INDEX links_source ON links(source, target);
+  CREATE INDEX links_target ON links(target, source);
+  CREATE INDEX plates_plate ON plates(plate);
+  CREATE INDEX plates_entry ON plates(entry) WHERE entry IS NOT NULL;
+  CREATE INDEX plates_drawn ON plates(drawn);
+  CREATE INDEX numbers_name ON numbers(name, run);
+  CREATE INDEX numbers_entry ON numbers(entry);
+  CREATE INDEX numbers_publisher ON numbers(publisher);
+  CREATE INDEX lineages_ancestor ON lineages(ancestor, dependant, distance, numbers);
+  CREATE INDEX withdrawals_withdraws ON withdrawals(withdraws, entry);
+  CREATE INDEX countersignatures_signs ON countersignatures(signs, entry);
 `;
 
 /** How much of the ledger the index has. */
@@ -71,9 +96,9 @@ export interface PlateRow {
   readonly entry: number | null;
   readonly drawn: number;
   readonly output: string;
+  /** As published; null with `entry`. */
+  readonly name: string | null;
 }
-
-export type Value = string | number | null;
 
 export interface IndexedLine {
   readonly entry: Entry;
@@ -112,10 +137,13 @@ export function openIndex(path: string, book: string): Index {
       transact(database, () => addLines(prepare, index.extent(), lines));
     },
     rebuild(name, lines) {
+      database.exec(`PRAGMA cache_size = ${-CACHE_WHILE_MAKING}`);
       transact(database, () => {
         makeTables(database, name);
         addLines(prepare, index.extent(), lines);
+        database.exec(INDEXES);
       });
+      database.exec(`PRAGMA cache_size = ${-CACHE}`);
     },
     all: (sql, ...values) => prepare(sql).all(...values) as never,
     get: (sql, ...values) => prepare(sql).get(...values) as never,
@@ -145,7 +173,8 @@ export function isCurrent(database: DatabaseSync): boolean {
 }
 
 function makeTables(database: DatabaseSync, book: string): void {
-  for (const table of [...TABLES, 'extent']) database.exec(`DROP TABLE IF EXISTS ${table}`);
+  for (const table of [...TABLES.map(({ name }) => name), 'settings', 'extent'])
+    database.exec(`DROP TABLE IF EXISTS ${table}`);
   database.exec(SCHEMA);
   database.prepare('INSERT INTO extent VALUES (?, 0, 0, ?)').run(book, DIGEST_OF_NOTHING);
 }
@@ -161,87 +190,72 @@ function transact(database: DatabaseSync, work: () => void): void {
   }
 }
 
-function addLines(
-  prepare: (sql: string) => StatementSync,
-  extent: Extent,
-  lines: Iterable<IndexedLine>,
-): void {
+type Prepare = (sql: string) => StatementSync;
+
+function addLines(prepare: Prepare, extent: Extent, lines: Iterable<IndexedLine>): void {
   let { entries, bytes, last } = extent;
+  const links = knownLinks(entries + 1, (number) =>
+    (prepare(TARGETS).all(number) as { target: number }[]).map(({ target }) => target),
+  );
+  const tables = TABLES.map((table) => rowWriter(prepare, `INSERT INTO ${table.name}`, table.columns.length));
+  const settings = settingsWriter(prepare);
   for (const { entry, digest, length } of lines) {
     if (entry.number !== entries + 1 || entry.before !== last) {
       // Another process added it in the meantime.
       if (entry.number <= entries) continue;
       throw new Error(`the index was offered entry ${entry.number} after ${entries}`);
     }
-    addEntry(prepare, entry, digest, bytes, length);
+    for (const [i, rows] of rowsOf(entry, { position: bytes, length, digest }, links).entries()) {
+      for (const row of rows) tables[i]?.add(row);
+    }
+    settings.add(entry);
     entries += 1;
     bytes += length + 1;
     last = digest;
   }
+  for (const table of [...tables, settings]) table.end();
   prepare('UPDATE extent SET entries = ?, bytes = ?, last = ?').run(entries, bytes, last);
 }
 
-function addEntry(
-  prepare: (sql: string) => StatementSync,
-  entry: Entry,
-  digest: string,
-  position: number,
-  length: number,
-): void {
-  const { number, type, time } = entry;
-  const { name, kind, key, run } = columnsOf(entry);
-  prepare('INSERT INTO entries VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?)').run(
-    number,
-    position,
-    length,
-    digest,
-    type,
-    time,
-    name,
-    kind,
-    key,
-    run,
-  );
-  const { files, entries } = referencesOf(entry);
-  const file = prepare('INSERT INTO files VALUES (?, ?, ?, ?, ?)');
-  for (const { digest, bytes, role, name } of files) file.run(digest, bytes, role, name, number);
-  const link = prepare('INSERT INTO links VALUES (?, ?)');
-  for (const target of new Set(entries.map((named) => named.number))) link.run(number, target);
-  addNames(prepare, entry, digest);
+/** Rows that one statement writes where there are many: most of the time of a statement is in calling it. */
+const ROWS_AT_ONCE = 40;
+const TARGETS = 'SELECT target FROM links WHERE source = ?';
+const HAS_SETTING = 'SELECT 1 FROM settings WHERE name = ? AND value = ? AND settings = ?';
+
+function rowWriter(prepare: Prepare, insert: string, width: number) {
+  const marks = `(${Array.from({ length: width }, () => '?').join()})`;
+  const many = `${insert} VALUES ${Array.from({ length: ROWS_AT_ONCE }, () => marks).join()}`;
+  let values: Value[] = [];
+  return {
+    add(row: readonly Value[]): void {
+      for (const value of row) values.push(value);
+      if (values.length < ROWS_AT_ONCE * width) return;
+      prepare(many).run(...values);
+      values = [];
+    },
+    end(): void {
+      for (let at = 0; at < values.length; at += width)
+        prepare(`${insert} VALUES ${marks}`).run(...values.slice(at, at + width));
+      values = [];
+    },
+  };
 }
 
-/** Plates and published numbers. A figure has its plate number from the moment it is drawn. */
-function addNames(prepare: (sql: string) => StatementSync, entry: Entry, digest: string): void {
-  const plate = prepare('INSERT INTO plates VALUES (?, ?, ?, ?)');
-  if (entry.type === 'stage') {
-    for (const [output, text] of plateNumbersOf(entry.number, digest, entry.outputs)) {
-      plate.run(text, null, entry.number, output);
-    }
-  }
-  if (entry.type === 'plate') plate.run(entry.plate, entry.number, entry.drawn, entry.output);
-  if (entry.type === 'run') {
-    const number = prepare('INSERT INTO numbers VALUES (?, ?, ?)');
-    for (const [place, { name }] of entry.numbers.entries()) number.run(name, entry.run, place);
-  }
-}
-
-function columnsOf(entry: Entry): {
-  name: string | null;
-  kind: string | null;
-  key: string | null;
-  run: number | null;
-} {
-  const none = { name: null, kind: null, key: null, run: null };
-  switch (entry.type) {
-    case 'stage':
-      return { ...none, name: entry.name, kind: entry.kind, key: entry.key };
-    case 'failure':
-      return { ...none, name: entry.name, kind: entry.kind };
-    case 'run':
-      return { ...none, name: entry.recipe.name, run: entry.run };
-    case 'plate':
-      return { ...none, name: entry.name };
-    default:
-      return none;
-  }
+function settingsWriter(prepare: Prepare) {
+  const writer = rowWriter(prepare, 'INSERT OR IGNORE INTO settings', 3);
+  const known = new Set<number>();
+  return {
+    add(entry: Entry): void {
+      const settings = settingsOf(entry);
+      if (settings === null || known.has(settings)) return;
+      known.add(settings);
+      for (const [i, [name, value]] of valuesOf(entry).entries()) {
+        const row = [name, value.slice(0, LONGEST_VALUE), settings] as const;
+        // All values of a set come at once: where the first stands, so do the others.
+        if (i === 0 && prepare(HAS_SETTING).get(...row) !== undefined) return;
+        writer.add(row);
+      }
+    },
+    end: writer.end,
+  };
 }

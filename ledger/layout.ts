@@ -1,15 +1,26 @@
 /** What lies in a book's directory, and how it gets there. */
 
+import type { KeyObject } from 'node:crypto';
 import { closeSync, existsSync, fsyncSync, mkdirSync, openSync, readdirSync, statSync } from 'node:fs';
 import { basename, dirname, join } from 'node:path';
+import type { Announce } from './book.ts';
 import { syncDirectory } from './durable.ts';
 import { ledgerPath, linesOf, parseEntry, withFile } from './ledger-file.ts';
 import { badBookName, cannotWrite, ledgerDamaged, noBook, notADirectory, otherDirectory } from './problem.ts';
-import { emptySeal, readSeal, sealPath, writeSeal } from './seal.ts';
+import { emptySeal, hasSeal, readSeal } from './seal.ts';
+import { replaceSeal } from './sealing.ts';
 import type { Turns } from './turns.ts';
 
 /** What a directory may hold in which starting a book was interrupted. */
-const OURS = new Set(['ledger.jsonl', 'logs', 'seals', 'store', 'turns.sqlite', 'turns.sqlite-journal']);
+const OURS = new Set([
+  'ledger.jsonl',
+  'logs',
+  'seals',
+  'store',
+  'tree',
+  'turns.sqlite',
+  'turns.sqlite-journal',
+]);
 
 /** @throws LedgerProblem 'no-book' unless the directory holds a book; 'ledger-damaged' when it lost its ledger. */
 export function requireBook(directory: string): void {
@@ -24,16 +35,26 @@ export function requireBook(directory: string): void {
 /** Whether a directory holds a book, sound or not. A ledger without a line and without a seal is none yet: starting it
  *  was interrupted. */
 export function hasBook(directory: string): boolean {
-  if (existsSync(sealPath(directory))) return true;
+  if (hasSeal(directory)) return true;
   const ledger = statSync(ledgerPath(directory), { throwIfNoEntry: false });
   return ledger !== undefined && ledger.size > 0;
 }
 
+/** How a book is started. */
+export interface Start {
+  readonly name: string;
+  readonly key: () => KeyObject;
+  /** Of the first seal. */
+  readonly time: string;
+  readonly announce: Announce;
+}
+
 /** Starts a book, unless there is one. Processes that do so at once make one.
  *  @throws LedgerProblem 'no-book' when the directory is something else, 'cannot-write'. */
-export function startBook(directory: string, name: string, turns: Turns): void {
+export function startBook(directory: string, start: Start, turns: Turns): void {
   requireRoom(directory);
-  if (!isBookName(name)) throw badBookName(name);
+  if (!isBookName(start.name)) throw badBookName(start.name);
+  start.key();
   try {
     mkdirSync(directory, { recursive: true });
   } catch (cause) {
@@ -42,7 +63,7 @@ export function startBook(directory: string, name: string, turns: Turns): void {
   turns.take(() => {
     if (hasBook(directory)) return;
     try {
-      makeLayout(directory, name);
+      makeLayout(directory, start);
     } catch (cause) {
       throw cannotWrite(directory, cause);
     }
@@ -74,14 +95,14 @@ function requireRoom(directory: string): void {
 }
 
 /** The seal comes last: a book without it is not finished. */
-function makeLayout(directory: string, name: string): void {
+function makeLayout(directory: string, { name, key, time, announce }: Start): void {
   for (const part of ['store/new', 'seals', 'logs']) mkdirSync(join(directory, part), { recursive: true });
   const descriptor = openSync(ledgerPath(directory), 'a');
   fsyncSync(descriptor);
   closeSync(descriptor);
   syncDirectory(directory);
   syncDirectory(dirname(directory));
-  writeSeal(directory, emptySeal(name));
+  replaceSeal(directory, emptySeal(name, time), key(), announce, null);
 }
 
 function isBookName(name: string): boolean {

@@ -92,3 +92,12 @@ export function parseEntry(bytes: Uint8Array): Entry {
   if (lacks !== null) throw new LedgerProblem('not-canonical', `entry: ${lacks}.`);
   return entry as Entry;
 }
+
+/** The entry in a line whose digest something else vouches for, so that its spelling need not be looked at: it was, when
+ *  the line was written. A third of the time. @throws SyntaxError, LedgerProblem 'not-canonical'. */
+export function parseTrusted(bytes: Buffer): Entry {
+  const entry: unknown = JSON.parse(bytes.toString('utf8'));
+  const lacks = lackOf(entry);
+  if (lacks !== null) throw new LedgerProblem('not-canonical', `entry: ${lacks}.`);
+  return entry as Entry;
+}

@@ -14,7 +14,10 @@ export type LedgerCode =
   | 'bad-draft'
   | 'bad-call'
   | 'file-changed'
-  | 'file-unreadable';
+  | 'file-unreadable'
+  | 'bad-key'
+  | 'bad-note'
+  | 'no-proof';
 
 /** The call was wrong and nothing was started; with every other code the work ended badly. */
 const WRONG_CALL: ReadonlySet<LedgerCode> = new Set(['no-book', 'not-found', 'ambiguous', 'bad-call']);
@@ -169,6 +172,40 @@ export function notADigest(text: string): LedgerProblem {
     'bad-call',
     `Expected a digest, 64 hexadecimal digits in lower case, got ${JSON.stringify(text)}.`,
   );
+}
+
+// Keys, seals and proofs
+
+/** A key that signs cannot be used. */
+export function badKey(file: string, expected: string, found: string, cause?: unknown): LedgerProblem {
+  const advice = found.startsWith('mode ')
+    ? `Set it with: chmod 600 ${file}`
+    : 'Name the right file, in PLATEBOOK_KEY or with --key.';
+  return new LedgerProblem(
+    'bad-key',
+    `${file}: expected ${expected}, got ${found.replace(/\.$/, '')}. ${advice}`,
+    { file },
+    { cause },
+  );
+}
+
+/** The environment has neither a configuration directory nor a home. */
+export function noPlaceForKey(): LedgerProblem {
+  return new LedgerProblem(
+    'bad-key',
+    'The key that signs seals: expected PLATEBOOK_KEY, XDG_CONFIG_HOME or HOME in the environment, got none of them. ' +
+      'Name the file in PLATEBOOK_KEY.',
+  );
+}
+
+/** A signed note, a signature or a verifier key is not what it must be. */
+export function badNote(place: string, expected: string): LedgerProblem {
+  return new LedgerProblem('bad-note', `${place}: expected ${expected}.`);
+}
+
+/** Nothing can be shown to stand under a seal. */
+export function noProof(what: string, advice: string): LedgerProblem {
+  return new LedgerProblem('no-proof', `${what}. ${advice}`);
 }
 
 // Files outside

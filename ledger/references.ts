@@ -4,6 +4,7 @@
 import type {
   Draft,
   FailureDraft,
+  ImportDraft,
   PlateDraft,
   RerunDraft,
   RunDraft,
@@ -12,11 +13,12 @@ import type {
   StoredFile,
 } from './entry.ts';
 
-export type Role = 'output' | 'input' | 'log' | 'recipe' | 'figure' | 'stamped';
+export type Role = 'output' | 'input' | 'log' | 'recipe' | 'figure' | 'stamped' | 'imported';
 
 export interface NamedFile extends StoredFile {
   readonly role: Role;
-  /** The name of the input or output, `svg` or `png` of a stamped figure; empty for logs and recipes. */
+  /** The name of the input or output, `svg` or `png` of a stamped figure, role and name of an imported file; empty for
+   *  logs and recipes. */
   readonly name: string;
   /** Whether it must be in the store. Inputs from outside need not be. */
   readonly stored: boolean;
@@ -49,6 +51,12 @@ export function referencesOf(draft: Draft): References {
       return ofPlate(draft);
     case 'rerun':
       return ofRerun(draft);
+    case 'import':
+      return ofImport(draft);
+    case 'withdrawal':
+      return { files: [], entries: [{ number: draft.withdraws, as: 'what is withdrawn' }] };
+    case 'countersignature':
+      return { files: [], entries: [{ number: draft.signs, as: 'what is signed' }] };
     default:
       return { files: [], entries: [] };
   }
@@ -114,4 +122,22 @@ function ofPlate({ drawn, output, figure, stamped }: PlateDraft): References {
 // What a rerun computed need not be kept: its digests are the finding, not a promise of files.
 function ofRerun({ of }: RerunDraft): References {
   return { files: [], entries: [{ number: of, as: 'what was executed again' }] };
+}
+
+function ofImport({ record, proof, files, entries }: ImportDraft): References {
+  const imported = (file: StoredFile, name: string): NamedFile => ({
+    digest: file.digest,
+    bytes: file.bytes,
+    role: 'imported',
+    name,
+    stored: true,
+  });
+  return {
+    files: [
+      imported(record, 'record'),
+      ...(proof === null ? [] : [imported(proof, 'proof')]),
+      ...files.map((file) => imported(file, `${file.role} ${file.name}`.trim())),
+    ],
+    entries: entries.map(({ number, entry }) => ({ number: entry, as: `entry ${number} of the other book` })),
+  };
 }

@@ -5,11 +5,14 @@
  *
  *      by: { name: A. Writer, orcid: 0000-0002-1825-0097 }
  *
+ *  The key that signs seals lies beside it, in keys/seal.pem, or where PLATEBOOK_KEY says: ledger/signing-key.ts.
+ *
  *  Source of the form and check digit of an ORCID: ISO 7064, MOD 11-2. */
 
 import { existsSync, readFileSync } from 'node:fs';
 import { join } from 'node:path';
 import type { Person } from '../ledger/entry.ts';
+import { signingKeyFile } from '../ledger/signing-key.ts';
 import type { Io } from './command.ts';
 import { RunnerProblem } from './problem.ts';
 
@@ -20,6 +23,12 @@ export async function writer(io: Io, by: string | undefined): Promise<Person> {
   if (name !== undefined) return readPerson({ name }, place);
   const file = configurationFile(io);
   return file === null ? { name: 'unnamed' } : readConfiguration(file);
+}
+
+/** The file with the key that signs seals; it is made when it is first needed. @throws LedgerProblem 'bad-key' when the
+ *  environment names no place for it. */
+export function keyFile(io: Io): string {
+  return signingKeyFile(io.env);
 }
 
 function configurationFile(io: Io): string | null {

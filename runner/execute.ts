@@ -18,6 +18,7 @@ import type { Format } from '../stages/kind.ts';
 import { codeOfKind } from './code-digest.ts';
 import { isGood, type Job, type JobInput, madeOutputs, type Outcome, upstreamOf } from './job.ts';
 import { RunnerProblem } from './problem.ts';
+import { keepCode } from './recorded-code/keep.ts';
 import { makeScratch, removeScratch, runStage, StageFailure, type StageResult } from './stage-process.ts';
 
 export interface ExecutionReporter {
@@ -103,20 +104,25 @@ async function perform(
   options: ExecutionOptions,
 ): Promise<Outcome> {
   const inputs = resolveInputs(job, outcomes, options);
-  const code = codeOfKind(options.kindsFolder, job.kind.kind, job.kind.version);
-  const record = makeRecord(job, inputs, code);
-  const standing = options.carry ? options.book.findStage(record.key) : undefined;
+  const { kindsFolder, book } = options;
+  const code = job.program?.code ?? codeOfKind(kindsFolder, job.kind.kind, job.kind.version);
+  const known = makeRecord(job, inputs, code);
+  const standing = options.carry ? book.findStage(known.key) : undefined;
   if (standing !== undefined) return carriedForward(job, standing);
+  const record = options.enter
+    ? { ...known, code: keepCode(book.store, kindsFolder, job.kind.kind, code) }
+    : known;
   options.reporter.started(job);
   const scratch = makeScratch();
   try {
     const call = {
       kind: job.kind,
-      kindsFolder: options.kindsFolder,
+      kindsFolder,
+      program: job.program ?? null,
       parameters: job.parameters,
       inputs: mapLists(inputs, (input) => input.path),
       outputs: madeOutputs(job.kind, job.inputs),
-      engine: options.engine,
+      engine: job.program?.engine ?? options.engine,
       signal: options.signal,
       onProgress: (fraction: number) => options.reporter.progress(job, fraction),
     };

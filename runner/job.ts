@@ -1,7 +1,7 @@
 /** What the runner executes: a job is one stage with everything resolved. Jobs come from a recipe (`run`) or from the
  *  entries of an earlier run (`rerun`). */
 
-import type { Json, Origin, RecordedFinding, StageState, StoredFile } from '../ledger/entry.ts';
+import type { Json, Origin, RecordedCode, RecordedFinding, StageState, StoredFile } from '../ledger/entry.ts';
 import type { Format, StageKind } from '../stages/kind.ts';
 
 export type JobInput =
@@ -25,6 +25,19 @@ export interface Job {
   readonly parameters: Readonly<Record<string, unknown>>;
   /** What the entry records. */
   readonly recorded: Readonly<Record<string, Json>>;
+  /** The recorded program that computes it; the installed one when absent. */
+  readonly program?: RestoredProgram;
+}
+
+/** A program restored from recorded code; see recorded-code/restore.ts. */
+export interface RestoredProgram {
+  /** The module that declares the kind. */
+  readonly kindFile: string;
+  /** What the stage's process may read besides its inputs and our part of the program. */
+  readonly readable: readonly string[];
+  /** The Node executable of the recorded release. */
+  readonly engine: string;
+  readonly code: RecordedCode;
 }
 
 /** How a job ended. Outputs are in the store when it ended well. */

@@ -113,15 +113,40 @@ function addExecuting(add: Add, common: Common, io: Io, signal: AbortSignal, end
   add(
     'rerun',
     'execute again what an entry, plate or run records, and compare',
-    'platebook rerun run 1\nplatebook rerun plates/lantern-ring/ring-image.png',
+    'platebook rerun run 1\nplatebook rerun plates/lantern-ring/ring-image.png\nplatebook rerun lantern-bag',
   )
-    .argument('<what...>', 'an entry, a plate number, `run N`, a published number, a digest or a file')
+    .argument('<what...>', 'an entry, a plate number, `run N`, a published number, a digest, a file or a bag')
     .addOption(cores())
+    .option('--as-recorded', 'compute with the recorded code and runtime where the installed ones differ')
+    .option('--trust-code', 'let code that comes out of a bag compute')
     .option('--by <name>', 'who writes in the book; otherwise from the configuration')
     .action(async (what: string[], raw: Raw) => {
       const { rerunCommand } = await import('./commands/rerun.ts');
       const by = raw.by === undefined ? {} : { by: raw.by as string };
-      end(await rerunCommand(what, { ...common(raw), cores: raw.cores as number, ...by, signal }, io));
+      const code = { asRecorded: raw.asRecorded === true, trustCode: raw.trustCode === true };
+      end(
+        await rerunCommand(what, { ...common(raw), cores: raw.cores as number, ...code, ...by, signal }, io),
+      );
+    });
+  add(
+    'bag',
+    'a bag (RFC 8493) that anyone can check without Platebook, or the entries of one taken over',
+    'platebook bag run 1 --to lantern-bag\nplatebook bag lantern-bag --into other-book',
+  )
+    .argument(
+      '<what...>',
+      'an entry, a plate number, `run N`, a published number, a digest or a file; or a bag',
+    )
+    .option('--to <dir>', 'write the bag here')
+    .option('--into <book>', 'take the entries of a bag over into this book')
+    .option('--inputs <how>', 'files from outside: `kept` in the bag, or by `reference`', 'kept')
+    .option('--location <file=url>', 'where a file from outside can be fetched; may be repeated', list, [])
+    .option('--by <name>', 'who writes in the book; otherwise from the configuration')
+    .action(async (what: string[], raw: Raw) => {
+      const { bagCommand } = await import('./commands/bag.ts');
+      const { to, into, by } = raw as { to?: string; into?: string; by?: string };
+      const named = { inputs: raw.inputs as string, location: raw.location as string[] };
+      end(await bagCommand(what, { ...common(raw), ...named, ...{ to, into, by } }, io));
     });
 }
 
@@ -132,9 +157,11 @@ function addAsking(add: Add, common: Common, io: Io, end: End): void {
     'platebook trace plates/lantern-ring/ring-image.png\nplatebook trace ring-diameter',
   )
     .argument('<what...>', 'an entry, a plate number, `run N`, a published number, a digest or a file')
+    .option('--proof <file>', 'write a proof that this is under the latest seal, to be checked by anybody')
     .action(async (what: string[], raw: Raw) => {
       const { traceCommand } = await import('./commands/trace.ts');
-      end(await traceCommand(what, common(raw), io));
+      const proof = raw.proof === undefined ? {} : { proof: raw.proof as string };
+      end(await traceCommand(what, { ...common(raw), ...proof }, io));
     });
   add(
     'diff',
@@ -151,23 +178,62 @@ function addAsking(add: Add, common: Common, io: Io, end: End): void {
     .option('--recipe <name>', 'runs of this recipe')
     .option('--stage <name>', 'entries of this stage')
     .option('--kind <kind>', 'entries of this kind of stage')
-    .option('--type <type>', 'stage, failure, run, plate or rerun')
+    .option('--type <type>', 'stage, failure, run, plate, rerun, import, withdrawal or countersignature')
+    .option('--parameter <name=value>', 'entries with this value of a parameter, such as fit.components=30')
     .option('--since <date>', 'from this date on, such as 2026-03-01')
     .option('--until <date>', 'up to this date')
     .option('--digest <digest>', 'entries that name this digest')
     .option('--last <n>', 'so many of the latest', positiveInteger, 20)
     .action(async (raw: Raw) => {
       const { contentsCommand } = await import('./commands/contents.ts');
-      const { recipe, stage, kind, type, since, until, digest, last } = raw;
-      const filters = { recipe, stage, kind, type, since, until, digest, last };
+      const { recipe, stage, kind, type, since, until, digest, parameter, last } = raw;
+      const filters = { recipe, stage, kind, type, since, until, digest, parameter, last };
       end(await contentsCommand({ ...common(raw), ...(filters as object) }, io));
     });
-  add('audit', 'is every entry and every stored byte what the ledger says', 'platebook audit').action(
-    async (raw: Raw) => {
+  add('audit', 'is every entry and every stored byte what the ledger says', 'platebook audit')
+    .option('--quick', 'look at the ledger and at the sizes of stored files only')
+    .action(async (raw: Raw) => {
       const { auditCommand } = await import('./commands/audit.ts');
-      end(await auditCommand(common(raw), io));
-    },
-  );
+      end(await auditCommand({ ...common(raw), quick: raw.quick === true }, io));
+    });
+  addJudging(add, common, io, end);
+}
+
+/** What depends on an entry, and what is said of it afterwards. */
+function addJudging(add: Add, common: Common, io: Io, end: End): void {
+  const what = 'an entry, a plate number, `run N`, a published number, a digest or a file';
+  const by = (raw: Raw) => (raw.by === undefined ? {} : { by: raw.by as string });
+  add('reach', 'what depends on this: forward to every plate and published number', 'platebook reach 5')
+    .argument('<what...>', what)
+    .action(async (words: string[], raw: Raw) => {
+      const { reachCommand } = await import('./commands/reach.ts');
+      end(reachCommand(words, common(raw), io));
+    });
+  add(
+    'withdraw',
+    'mark an entry as withdrawn, with the reason; nothing is deleted',
+    'platebook withdraw 5 --reason "the gain table of station ONE was wrong"',
+  )
+    .argument('<what...>', what)
+    .requiredOption('--reason <text>', 'why it does not stand any more')
+    .option('--by <name>', 'who writes in the book; otherwise from the configuration')
+    .action(async (words: string[], raw: Raw) => {
+      const { withdrawCommand } = await import('./commands/withdraw.ts');
+      end(await withdrawCommand(words, { ...common(raw), reason: raw.reason as string, ...by(raw) }, io));
+    });
+  add(
+    'countersign',
+    'a second person’s signature under an entry or a seal',
+    'platebook countersign 57b-K3Q9M2\nplatebook countersign seal --key second.pem --by "B. Reader"',
+  )
+    .argument('<what...>', `${what}; \`seal\` for the latest seal, or a file that holds one`)
+    .option('--key <file>', 'the signer’s key; otherwise from the configuration')
+    .option('--by <name>', 'who signs and writes in the book; otherwise from the configuration')
+    .action(async (words: string[], raw: Raw) => {
+      const { countersignCommand } = await import('./commands/countersign.ts');
+      const key = raw.key === undefined ? {} : { key: raw.key as string };
+      end(await countersignCommand(words, { ...common(raw), ...key, ...by(raw) }, io));
+    });
 }
 
 function addReading(add: Add, common: Common, io: Io, end: End): void {

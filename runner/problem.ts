@@ -50,6 +50,15 @@ export const advice = {
   'nothing-to-rerun': 'Name the entry of a stage, a plate or a run.',
   'input-changed': 'Restore the recorded file, or run the recipe anew.',
   'missing-output': 'Report this as a fault of the stage kind.',
+  // Recorded code.
+  'code-not-kept': 'Leave out --as-recorded: the installed code computes, and what differs is said.',
+  'code-not-restored': 'Leave out --as-recorded: the installed code computes, and what differs is said.',
+  'untrusted-code': 'Read the code in the bag; if you trust whose it is, repeat with --trust-code.',
+  // Bags.
+  'bad-call': 'See `platebook bag --help`.',
+  'no-bag': 'Name the directory of a bag.',
+  'bad-bag': 'Do not use this bag; take it from whoever made it once more.',
+  'bag-not-written': 'Mend the cause and repeat; nothing was left behind.',
 } as const satisfies Readonly<Record<string, string>>;
 
 export type RunnerCode = keyof typeof advice;

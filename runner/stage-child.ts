@@ -75,7 +75,7 @@ async function loadKind(assignment: Assignment): Promise<StageKind> {
 
 function describeError(error: unknown): { code: string; message: string; detail: string } {
   const detail = error instanceof Error ? (error.stack ?? '') : '';
-  if (error instanceof InputProblem) return { code: error.code, message: error.message, detail };
+  if (isInputProblem(error)) return { code: error.code, message: error.message, detail };
   const denied = error as { code?: string; permission?: string; resource?: string };
   if (denied?.code === 'ERR_ACCESS_DENIED') {
     const message =
@@ -86,6 +86,13 @@ function describeError(error: unknown): { code: string; message: string; detail:
   }
   const text = error instanceof Error ? error.message : String(error);
   return { code: 'internal', message: `The stage stopped with an error of its own: ${text}`, detail };
+}
+
+/** By its name too: the problem of a restored program is made by a class of that program. */
+function isInputProblem(error: unknown): error is InputProblem {
+  if (error instanceof InputProblem) return true;
+  const like = error as Partial<InputProblem> | null;
+  return error instanceof Error && error.name === 'InputProblem' && typeof like?.code === 'string';
 }
 
 function writeReport(file: string, report: ProcessReport): void {

@@ -6,6 +6,7 @@ import { dirname, join } from 'node:path';
 import { createInterface } from 'node:readline';
 import type { execa } from 'execa';
 import type { StageKind, StageReport } from '../stages/kind.ts';
+import type { RestoredProgram } from './job.ts';
 import { modulesFolder, packageRoot, sourceExtension, sourceRoot } from './program.ts';
 import type { Assignment, ProcessReport } from './stage-assignment.ts';
 
@@ -13,6 +14,8 @@ export interface StageCall {
   readonly kind: StageKind;
   /** The folder that holds KIND/KIND.ts. */
   readonly kindsFolder: string;
+  /** A restored program that holds the kind instead. */
+  readonly program: RestoredProgram | null;
   readonly parameters: Readonly<Record<string, unknown>>;
   /** Absolute paths by input name. */
   readonly inputs: Readonly<Record<string, readonly string[]>>;
@@ -109,7 +112,8 @@ export async function runStage(call: StageCall, scratch: string): Promise<StageR
 function writeAssignment(call: StageCall, scratch: string): { path: string; content: Assignment } {
   mkdirSync(join(scratch, 'outputs'));
   const content: Assignment = {
-    kindFile: join(call.kindsFolder, call.kind.kind, `${call.kind.kind}${sourceExtension}`),
+    kindFile:
+      call.program?.kindFile ?? join(call.kindsFolder, call.kind.kind, `${call.kind.kind}${sourceExtension}`),
     kind: call.kind.kind,
     parameters: call.parameters,
     inputs: call.inputs,
@@ -126,13 +130,14 @@ function startChild(start: typeof execa, call: StageCall, assignment: string, sc
   const readable = [
     join(sourceRoot, 'runner'),
     join(sourceRoot, 'stages'),
-    call.kindsFolder,
+    ...(call.program?.readable ?? [call.kindsFolder]),
     modulesFolder(),
     join(packageRoot, 'package.json'),
     scratch,
     ...Object.values(call.inputs).flat(),
   ];
-  const permissions = [...new Set(readable.map((path) => realpathSync(path)))].map(
+  // A folder of packages may be a link: modules are looked up through it and read where it leads.
+  const permissions = [...new Set(readable.flatMap((path) => [path, realpathSync(path)]))].map(
     (path) => `--allow-fs-read=${path}`,
   );
   const words = [

@@ -9,6 +9,8 @@ import { plain } from './entry-text.ts';
 
 const LABELS = 11;
 const INDENT = LABELS + 4;
+/** Stands before a value that depends on something withdrawn. */
+const WITHDRAWN = '†';
 
 /** The whole text, ending in a line feed. @param columns  of the terminal; 80 to 100 are used */
 export function diffText(document: DiffDocument, columns: number): string {
@@ -17,6 +19,7 @@ export function diffText(document: DiffDocument, columns: number): string {
   const lines = [
     `From run ${a} to run ${b}`,
     '',
+    ...withdrawnPart(document, width),
     ...part('recipe', recipeSentence(document), [], width),
     ...stagePart(document, width),
     ...parameterPart(document, width),
@@ -36,6 +39,17 @@ function part(label: string, sentence: string, details: readonly string[], width
 
 function nothing(label: string, width: number): string[] {
   return part(label, 'nothing differs', [], width);
+}
+
+/** Nothing where nothing is withdrawn. */
+function withdrawnPart({ withdrawals, runs }: DiffDocument, width: number): string[] {
+  const each = new Map(withdrawals.map((withdrawal) => [withdrawal.entry, withdrawal]));
+  return [...each.values()].flatMap(({ entry, withdraws, reason }, i) => {
+    const of = new Set(withdrawals.filter((other) => other.entry === entry).map(({ run }) => run));
+    const who = of.size === 1 && runs[0] !== runs[1] ? `run ${[...of][0]} depends` : 'both runs depend';
+    const sentence = `${who} on entry ${withdraws}, WITHDRAWN in entry ${entry}: ${reason}`;
+    return part(i === 0 ? 'withdrawn' : '', sentence, [], width);
+  });
 }
 
 function recipeSentence({ recipe: { same, names } }: DiffDocument): string {
@@ -167,14 +181,16 @@ function numberPart({ numbers, runs }: DiffDocument, width: number): string[] {
   const note = numbers.some(({ sigmas }) => sigmas !== null)
     ? ['', '  sigmas: the shift over the quadrature sum of both half-widths of the 68 % intervals']
     : [];
+  if (numbers.some(({ withdrawn }) => withdrawn.flat().length > 0))
+    note.push('', `  ${WITHDRAWN} depends on something withdrawn: does not stand any more`);
   return [...part('numbers', sentence, [], width), '', ...table, ...note];
 }
 
-function side({ values, intervals }: DiffNumber, i: 0 | 1): string {
+function side({ values, intervals, withdrawn }: DiffNumber, i: 0 | 1): string {
   const value = values[i];
-  return value === null
-    ? '(none)'
-    : roundedNumber(value, intervals[i]?.[0] ?? null, intervals[i]?.[1] ?? null);
+  if (value === null) return '(none)';
+  const shown = roundedNumber(value, intervals[i]?.[0] ?? null, intervals[i]?.[1] ?? null);
+  return withdrawn[i].length > 0 ? `${WITHDRAWN}${shown}` : shown;
 }
 
 function unitsText({ units: [x, y] }: DiffNumber): string {

@@ -1,8 +1,11 @@
 /** An entry in full, as text: down to the digest, size and path of every file that it names. */
 
+import { isSigned } from '../../ledger/countersignature.ts';
 import type {
+  CountersignatureEntry,
   Entry,
   FailureEntry,
+  ImportEntry,
   Json,
   PlateEntry,
   RecordedFinding,
@@ -23,7 +26,7 @@ import {
   thousands,
   wrapText,
 } from '../text-table.ts';
-import { entryTitle } from './entry-title.ts';
+import { entryTitle, signedThing } from './entry-title.ts';
 
 /** Blanks before a name inside an entry, and the least width of the column of names. */
 const INDENT = 4;
@@ -51,6 +54,15 @@ function bodyLines(entry: Entry, lineage: readonly TracedEntry[], width: number)
       return plateLines(entry, width);
     case 'rerun':
       return rerunLines(entry, width);
+    case 'import':
+      return importLines(entry, width);
+    case 'withdrawal':
+      return [
+        ...field('withdraws', `entry ${entry.withdraws}`, width),
+        ...field('reason', entry.reason, width),
+      ];
+    case 'countersignature':
+      return signatureLines(entry, width);
     default:
       return [];
   }
@@ -238,6 +250,28 @@ function plateLines({ drawn, output, figure, stamped, mark }: PlateEntry, width:
   ];
 }
 
+/** Where an imported entry comes from, and what shows that it stands there. */
+function importLines(
+  { origin, imported, record, proof, files, entries }: ImportEntry,
+  width: number,
+): string[] {
+  const here = new Map(entries.map(({ number, entry }) => [number, entry]));
+  const needs = [...here].map(([number, entry]) => `${number} (here ${entry})`).join(', ');
+  const shown = files.filter(({ role }) => role !== 'code');
+  const code = files.length - shown.length;
+  return [
+    ...field('of', `entry ${origin.number} of the book ${origin.book}, by ${imported.by.name}`, width),
+    ...field('its digest', origin.digest, width),
+    ...(needs === '' ? [] : field('depends on', needs, width)),
+    ...section('kept', [
+      ...storedFile('record', 'json', record, width),
+      ...(proof === null ? item('no proof', width) : storedFile('proof', 'json', proof, width)),
+      ...shown.flatMap((file) => storedFile(file.name || file.role, file.role, file, width)),
+      ...(code === 0 ? [] : item(counted(code, 'file of code', 'files of code'), width)),
+    ]),
+  ];
+}
+
 function rerunLines({ of, verdict, outputs, differences }: RerunEntry, width: number): string[] {
   const rows = outputs.map(({ stage, output, verdict }) => [`${stage}.${output}`, verdict]);
   return [
@@ -248,6 +282,14 @@ function rerunLines({ of, verdict, outputs, differences }: RerunEntry, width: nu
       'differences from the record',
       differences.flatMap((text) => item(text, width)),
     ),
+  ];
+}
+
+function signatureLines(entry: CountersignatureEntry, width: number): string[] {
+  return [
+    ...field('signs', signedThing(entry), width),
+    ...field('', isSigned(entry, entry.book) ? 'the signature holds' : 'THE SIGNATURE DOES NOT HOLD', width),
+    ...field('key', entry.key, width),
   ];
 }
 

@@ -1,45 +1,50 @@
-/** `rerun WHAT`: executes again what an entry, a plate or a run records, and compares byte for byte. The comparison is
- *  an entry of its own. An entry is executed alone, from its recorded inputs; a plate with all that it depends on; a
- *  run whole. */
+/** `rerun WHAT`: executes again what an entry, a plate or a run records, or what a bag holds, and compares byte for byte.
+ *  In a book the comparison becomes an entry of its own; a bag is executed into a temporary book that goes afterwards.
+ *
+ *  The installed code computes, and what differs from the record is said. `--as-recorded` computes with the recorded code
+ *  from the store. Code that comes out of a bag runs only with `--trust-code`, after saying whose it is. */
 
 import { dirname, resolve } from 'node:path';
 import { type Book, openBook } from '../../ledger/book.ts';
-import type {
-  Entry,
-  PublishedNumber,
-  RecordedInput,
-  RerunDraft,
-  RunEntry,
-  StageEntry,
-  Verdict,
-} from '../../ledger/entry.ts';
+import type { PublishedNumber, RecordedInput, RerunDraft, StageEntry } from '../../ledger/entry.ts';
 import { findRunOfStage } from '../../ledger/find.ts';
-import { type Subject as Asked, findSubject } from '../../ledger/subject.ts';
+import { findSubject } from '../../ledger/subject.ts';
 import type { StageKind } from '../../stages/kind.ts';
 import { stageKinds } from '../../stages/kinds.ts';
+import { isBag, withBagBook } from '../bag/bag-book.ts';
+import { withdrawalsIn } from '../bag/gather.ts';
+import type { Bag } from '../bag/open-bag.ts';
+import { codeOfKind } from '../code-digest.ts';
 import type { CommonOptions, ExitStatus, Io } from '../command.ts';
 import { type ComparedOutput, compareStage, overallVerdict } from '../compare-outputs.ts';
 import { writer } from '../configuration.ts';
 import { execute } from '../execute.ts';
-import type { Job, JobInput, Outcome } from '../job.ts';
-import { advice, RunnerProblem } from '../problem.ts';
+import type { Job, JobInput, Outcome, RestoredProgram } from '../job.ts';
+import { RunnerProblem } from '../problem.ts';
 import { kindsFolder, stageEngine } from '../program.ts';
 import { makeProgress } from '../progress.ts';
+import { untrustedCode, writersOf } from '../recorded-code/problem.ts';
+import { plainRecorded, recordedKind } from '../recorded-code/recorded-kind.ts';
+import { restorePrograms } from '../recorded-code/restore.ts';
 import { plainParameters } from '../recorded-parameters.ts';
-import { wrapped } from '../wrapped.ts';
+import {
+  nearestEntry,
+  nothingToRerun,
+  type RerunSubject,
+  stageEntry,
+  stagesOfRun,
+  withUpstream,
+} from './rerun-subject.ts';
+import { rerunText } from './rerun-text.ts';
 
 export interface RerunOptions extends CommonOptions {
   readonly cores: number;
   readonly by?: string;
+  /** Compute with the recorded code and runtime where the installed ones differ. */
+  readonly asRecorded?: boolean;
+  /** Run code that comes out of a bag. */
+  readonly trustCode?: boolean;
   readonly signal: AbortSignal;
-}
-
-interface Subject {
-  /** The entry that is named in the comparison. */
-  readonly of: Entry;
-  readonly run: RunEntry | null;
-  /** In the order of computation. */
-  readonly stages: readonly StageEntry[];
 }
 
 export async function rerunCommand(
@@ -47,97 +52,148 @@ export async function rerunCommand(
   options: RerunOptions,
   io: Io,
 ): Promise<ExitStatus> {
+  const [directory] = words;
+  if (words.length === 1 && directory !== undefined && isBag(resolve(io.cwd, directory))) {
+    return rerunBag(directory, options, io);
+  }
+  if (options.trustCode === true) {
+    const message = `--trust-code: expected a bag, got ${words.join(' ')}. The code in a book is its keeper’s: use --as-recorded.`;
+    throw new RunnerProblem('bad-call', message, {}, 2);
+  }
+  return rerunInBook(words, options, io);
+}
+
+async function rerunInBook(words: readonly string[], options: RerunOptions, io: Io): Promise<ExitStatus> {
   const book = openBook(options.book, {
     by: await writer(io, options.by),
     announce: (text) => io.err(`${text}\n`),
   });
   try {
-    const subject = findStages(book, words, io);
-    const outcomes = await executeAgain(subject, book, options, io);
+    const subject = findInBook(book, words, io);
+    const recorded = options.asRecorded === true ? differing(subject.stages) : [];
+    const read = (digest: string) => book.store.read(digest);
+    const outcomes = await executeAgain({ subject, book, recorded, read }, options, io);
     const draft = compare(subject, outcomes, book);
     const { entry } = book.append(draft);
-    const document = { verdict: draft.verdict, run: subject.run?.run ?? null, outputs: draft.outputs };
-    if (options.json) io.out(`${JSON.stringify({ ...document, entry: entry.number }, null, 2)}\n`);
-    else if (!options.quiet) io.out(rerunText(subject, draft, entry.number, outcomes));
+    say({ subject, draft, outcomes, where: `entry ${entry.number}`, entry: entry.number }, options, io);
     return draft.verdict === 'different' ? 1 : 0;
   } finally {
     book.close();
   }
 }
 
-function findStages(book: Book, words: readonly string[], io: Io): Subject {
+function findInBook(book: Book, words: readonly string[], io: Io): RerunSubject {
   const asked = findSubject(book, words, io.cwd);
   const of = book.entry(nearestEntry(asked));
-  if (of.type === 'run') {
-    const stages = of.stages.flatMap(({ entry, state }) =>
-      entry === null || state === 'failed' ? [] : [stageEntry(book, entry)],
-    );
-    return { of, run: of, stages };
-  }
+  const entryOf = (number: number) => book.entry(number);
+  if (of.type === 'run') return { of, run: of, stages: stagesOfRun(of, entryOf) };
   if (of.type !== 'stage' && of.type !== 'plate') throw nothingToRerun(`entry ${of.number}`, `a ${of.type}`);
-  const stage = of.type === 'stage' ? of : stageEntry(book, of.drawn);
-  const stages = asked.type === 'entry' && of.type === 'stage' ? [stage] : withUpstream(book, stage);
+  const stage = of.type === 'stage' ? of : stageEntry(of.drawn, entryOf);
+  const alone = asked.type === 'entry' && of.type === 'stage';
+  const stages = alone ? [stage] : withUpstream(stage, entryOf);
   return { of, run: findRunOfStage(book, stage.number) ?? null, stages };
 }
 
-/** The entry that made what is asked for. */
-function nearestEntry(asked: Asked): number {
-  if (asked.type === 'number') return asked.number.entry;
-  if (asked.type === 'plate') return asked.drawn;
-  if (asked.type !== 'file') return asked.entry;
-  const made = asked.roles.find((role) => role.role !== 'input');
-  if (made === undefined) throw nothingToRerun(asked.asked, 'a file that came from outside');
-  return made.entry;
-}
-
-function nothingToRerun(place: string, found: string): RunnerProblem {
-  const message =
-    `${place}: expected something that a stage, a plate or a run made, got ${found}. ` +
-    advice['nothing-to-rerun'];
-  return new RunnerProblem('nothing-to-rerun', message, {}, 2);
-}
-
-/** A stage and all that it depends on, upstream first, in the order of their entries. */
-function withUpstream(book: Book, stage: StageEntry): StageEntry[] {
-  const found = new Map<number, StageEntry>();
-  const waiting = [stage];
-  for (let next = waiting.pop(); next !== undefined; next = waiting.pop()) {
-    if (found.has(next.number)) continue;
-    found.set(next.number, next);
-    for (const input of Object.values(next.inputs).flat()) {
-      if ('entry' in input.origin) waiting.push(stageEntry(book, input.origin.entry));
+/** Executes what a bag holds. The bag is checked whole before anything of it is used. */
+async function rerunBag(directory: string, options: RerunOptions, io: Io): Promise<ExitStatus> {
+  return withBagBook(resolve(io.cwd, directory), async ({ bag, book, subject, read }) => {
+    const others = differing(subject.stages);
+    if (!options.quiet && !options.json) io.err(`${sealText(bag)}\n`);
+    for (const { withdraws, reason } of withdrawalsIn(bag.entries.values())) {
+      io.err(`Withdrawn: entry ${withdraws}. ${reason}\n`);
     }
+    if (options.asRecorded === true && options.trustCode !== true && others.length > 0)
+      throw untrustedCode(others);
+    const recorded = options.trustCode === true ? others : [];
+    if (recorded.length > 0) io.err(`${trustText(recorded)}\n`);
+    const outcomes = await executeAgain({ subject, book, recorded, read }, options, io);
+    const draft = compare(subject, outcomes, book);
+    const hints = others.length > recorded.length ? [hintText(others)] : [];
+    const said = { ...draft, differences: [...draft.differences, ...hints] };
+    const where = `from the bag ${directory}, ${bag.size.files} files, of the book ${bag.book}`;
+    say({ subject, draft: said, outcomes, where, entry: null }, options, io);
+    return draft.verdict === 'different' ? 1 : 0;
+  });
+}
+
+/** What the proofs show. Whose key it is, only the reader can know. */
+function sealText({ proofs, entries, book }: Bag): string {
+  const [proof] = proofs.values();
+  if (proof === undefined)
+    return `The bag is whole; it has no proof that its entries stand in the book ${book}.`;
+  return `The bag is whole; its ${entries.size} entries are under a seal of ${proof.time} with the key ${proof.key}`;
+}
+
+function trustText(stages: readonly StageEntry[]): string {
+  const names = stages.map(({ name }) => name).join(', ');
+  return (
+    `The installed code is not the recorded one, so code out of the bag computes ${names}. ` +
+    `Its entries were written by ${writersOf(stages)}; it has no network and reads its inputs only.`
+  );
+}
+
+function hintText(stages: readonly StageEntry[]): string {
+  return `--trust-code computes with the code in the bag instead; its entries were written by ${writersOf(stages)}`;
+}
+
+/** Stages whose recorded code is not the installed one. */
+function differing(stages: readonly StageEntry[]): StageEntry[] {
+  return stages.filter((stage) => {
+    const kind = stageKinds.find((each) => each.kind === stage.kind);
+    return (
+      kind === undefined || codeOfKind(kindsFolder, kind.kind, kind.version).digest !== stage.code.digest
+    );
+  });
+}
+
+interface Again {
+  readonly subject: RerunSubject;
+  readonly book: Book;
+  /** Stages that recorded code computes. */
+  readonly recorded: readonly StageEntry[];
+  /** Bytes of recorded code. */
+  readonly read: (digest: string) => Uint8Array;
+}
+
+async function executeAgain(
+  { subject, book, recorded, read }: Again,
+  options: RerunOptions,
+  io: Io,
+): Promise<Outcome[]> {
+  const engine = stageEngine(io.env);
+  const restoration = await restorePrograms({ stages: recorded, read, engine });
+  try {
+    const folder = resolve(io.cwd, dirname(subject.run?.recipe.path ?? '.'));
+    const jobs = subject.stages.map((stage) =>
+      jobOf(stage, { all: subject.stages, folder, book, program: restoration.programs.get(stage.number) }),
+    );
+    const progress = await makeProgress(io, jobs, options.quiet || options.json);
+    return await execute(jobs, {
+      book,
+      cores: options.cores,
+      carry: false,
+      enter: false,
+      strict: true,
+      engine,
+      kindsFolder,
+      signal: options.signal,
+      reporter: progress,
+    }).finally(() => progress.close());
+  } finally {
+    restoration.remove();
   }
-  return [...found.values()].sort((a, b) => a.number - b.number);
 }
 
-function stageEntry(book: Book, number: number): StageEntry {
-  const entry = book.entry(number);
-  if (entry.type === 'stage') return entry;
-  throw nothingToRerun(`entry ${number}`, `a ${entry.type}`);
-}
-
-async function executeAgain(subject: Subject, book: Book, options: RerunOptions, io: Io): Promise<Outcome[]> {
-  const folder = resolve(io.cwd, dirname(subject.run?.recipe.path ?? '.'));
-  const jobs = subject.stages.map((stage) => jobOf(stage, subject.stages, folder, book));
-  const progress = await makeProgress(io, jobs, options.quiet || options.json);
-  return execute(jobs, {
-    book,
-    cores: options.cores,
-    carry: false,
-    enter: false,
-    strict: true,
-    engine: stageEngine(io.env),
-    kindsFolder,
-    signal: options.signal,
-    reporter: progress,
-  }).finally(() => progress.close());
+interface JobPlace {
+  readonly all: readonly StageEntry[];
+  readonly folder: string;
+  readonly book: Book;
+  readonly program: RestoredProgram | undefined;
 }
 
 /** The job of a recorded stage: from the rerun's own results where they are made again, else from the store, and for
  *  files that are not in it from where the recipe of the run named them. */
-function jobOf(stage: StageEntry, all: readonly StageEntry[], folder: string, book: Book): Job {
-  const kind = findKind(stage);
+function jobOf(stage: StageEntry, { all, folder, book, program }: JobPlace): Job {
   const input = (recorded: RecordedInput): JobInput => {
     const { digest, bytes, origin } = recorded;
     const stored: JobInput = { from: 'store', file: { digest, bytes }, origin };
@@ -149,13 +205,16 @@ function jobOf(stage: StageEntry, all: readonly StageEntry[], folder: string, bo
     const upstream = all.find((each) => each.number === origin.entry);
     return upstream === undefined ? stored : { from: 'stage', stage: upstream.name, output: origin.output };
   };
-  return {
-    name: stage.name,
-    kind,
-    inputs: Object.fromEntries(Object.entries(stage.inputs).map(([name, list]) => [name, list.map(input)])),
-    parameters: plainParameters(kind.parameters, stage.parameters),
-    recorded: stage.parameters,
-  };
+  const inputs = Object.fromEntries(
+    Object.entries(stage.inputs).map(([name, list]) => [name, list.map(input)]),
+  );
+  const named = { name: stage.name, inputs, recorded: stage.parameters };
+  if (program !== undefined) {
+    const parameters = plainRecorded(stage.parameters) as Job['parameters'];
+    return { ...named, kind: recordedKind(stage), parameters, program };
+  }
+  const kind = findKind(stage);
+  return { ...named, kind, parameters: plainParameters(kind.parameters, stage.parameters) };
 }
 
 function findKind(stage: StageEntry): StageKind {
@@ -165,7 +224,7 @@ function findKind(stage: StageEntry): StageKind {
   throw new RunnerProblem('unknown-kind', message, {}, 1);
 }
 
-function compare(subject: Subject, outcomes: readonly Outcome[], book: Book): RerunDraft {
+function compare(subject: RerunSubject, outcomes: readonly Outcome[], book: Book): RerunDraft {
   const published = publishedBy(subject);
   const outputs: ComparedOutput[] = [];
   const differences: string[] = [];
@@ -185,38 +244,23 @@ function compare(subject: Subject, outcomes: readonly Outcome[], book: Book): Re
 }
 
 /** The published numbers that the stages executed again hold. */
-function publishedBy(subject: Subject): PublishedNumber[] {
+function publishedBy(subject: RerunSubject): PublishedNumber[] {
   const numbers = new Set(subject.stages.map((stage) => stage.number));
   return (subject.run?.numbers ?? []).filter((number) => numbers.has(number.entry));
 }
 
-function rerunText(subject: Subject, draft: RerunDraft, entry: number, outcomes: readonly Outcome[]): string {
-  const name = (output: ComparedOutput) => `${output.stage}.${output.output}`;
-  const width = Math.max(...draft.outputs.map((output) => name(output).length));
-  const lines = draft.outputs.map((output) => {
-    const digests =
-      output.is === output.was
-        ? output.was.slice(0, 12)
-        : `${output.was.slice(0, 12)} → ${output.is?.slice(0, 12) ?? 'none'}`;
-    return `  ${name(output).padEnd(width)}   ${output.verdict.padEnd(16)}   ${digests}`;
-  });
-  const seconds = outcomes.reduce((sum, outcome) => sum + outcome.seconds, 0).toFixed(1);
-  const what =
-    subject.of.type === 'run' ? `run ${subject.of.run}` : `${subject.of.type} entry ${subject.of.number}`;
-  const differences = draft.differences.map((text) => wrapped(text, 100, 2, 2));
-  return [
-    '',
-    ...lines,
-    '',
-    ...(differences.length > 0 ? [...differences, ''] : []),
-    `${verdictSentence(draft.verdict)} (${what}, ${outcomes.length} stages, ${seconds} s; entry ${entry})`,
-    '',
-  ].join('\n');
+interface Result {
+  readonly subject: RerunSubject;
+  readonly draft: RerunDraft;
+  readonly outcomes: readonly Outcome[];
+  readonly where: string;
+  /** The comparison's own entry; null when there is none. */
+  readonly entry: number | null;
 }
 
-function verdictSentence(verdict: Verdict): string {
-  if (verdict === 'identical') return 'identical: every output has the recorded bytes';
-  if (verdict === 'within tolerance')
-    return 'within tolerance: every published number is inside its tolerance';
-  return 'different';
+function say({ subject, draft, outcomes, where, entry }: Result, options: RerunOptions, io: Io): void {
+  const { verdict, outputs, differences } = draft;
+  const document = { verdict, run: subject.run?.run ?? null, outputs, differences, entry };
+  if (options.json) io.out(`${JSON.stringify(document, null, 2)}\n`);
+  else if (!options.quiet) io.out(rerunText(subject, draft, where, outcomes));
 }

@@ -1,18 +1,22 @@
 /** The text of a trace: what was asked for, its lineage at a glance, each entry in full, and the files from outside
  *  with which everything began. */
 
-import type { Entry, RecordedInput } from '../../ledger/entry.ts';
+import { isSigned } from '../../ledger/countersignature.ts';
+import type { Entry, RecordedInput, WithdrawalEntry } from '../../ledger/entry.ts';
 import type { Subject } from '../../ledger/subject.ts';
 import type { TraceDocument, TracedEntry } from '../../ledger/trace.ts';
 import { roundedNumber } from '../../stages/formats/drawing/rounding.ts';
-import { alignRows, counted, readableTime, thousands, wrapText } from '../text-table.ts';
+import { alignRows, counted, labelled, readableTime, thousands, wrapText } from '../text-table.ts';
 import { entryLines } from './entry-text.ts';
-import { entryColumns } from './entry-title.ts';
+import { entryColumns, signedThing } from './entry-title.ts';
 
 /** The whole text, ending in a line feed. @param columns  of the terminal; 80 to 100 are used */
-export function traceText({ subject, lineage }: TraceDocument, book: string, columns: number): string {
+export function traceText(document: TraceDocument, book: string, columns: number): string {
+  const { subject, lineage, withdrawals, countersignatures } = document;
   const width = Math.min(100, Math.max(80, columns));
   const parts = [subjectLines(subject, book, width)];
+  if (withdrawals.length > 0) parts.push(withdrawalLines(document, width));
+  if (countersignatures.length > 0) parts.push(countersignatureLines(document, width));
   if (lineage.length > 0) parts.push(overview(lineage));
   for (const entry of lineage) parts.push(entryLines(entry, lineage, width));
   if (lineage.length > 0) parts.push(outsideLines(lineage));
@@ -67,6 +71,35 @@ function fileSentences(subject: Extract<Subject, { type: 'file' }>): string[] {
     `${subject.asked}: a file from outside; no entry made it. It went into ${readers.join(', ')}.`,
     size,
   ];
+}
+
+// What was said of it since
+
+function withdrawalLines({ subject, withdrawals }: TraceDocument, width: number): string[] {
+  const own = withdrawals.some(({ withdraws }) => subject.entries.includes(withdraws));
+  const head = own ? 'WITHDRAWN. It does not stand any more:' : 'DEPENDS ON SOMETHING WITHDRAWN:';
+  return [head, '', ...withdrawals.flatMap((withdrawal) => withdrawalText(withdrawal, width))];
+}
+
+/** One withdrawal, in lines set in by two. */
+export function withdrawalText(
+  { number, withdraws, reason, by, time }: WithdrawalEntry,
+  width: number,
+): string[] {
+  const said = `withdrawn by ${by.name}, ${readableTime(time)} UTC, in entry ${number}: ${reason}`;
+  return labelled(`entry ${withdraws}`, said, 12, 2, width);
+}
+
+function countersignatureLines({ countersignatures }: TraceDocument, width: number): string[] {
+  const lines = countersignatures.flatMap((entry) => {
+    const holds = isSigned(entry, entry.book) ? '' : '; THE SIGNATURE DOES NOT HOLD';
+    const said = `${entry.by.name}, ${readableTime(entry.time)} UTC, in entry ${entry.number}${holds}`;
+    return [
+      ...labelled(signedThing(entry), said, 12, 2, width),
+      ...labelled('', `key ${entry.key}`, 12, 2, width),
+    ];
+  });
+  return ['Countersigned by:', '', ...lines];
 }
 
 // The lineage at a glance

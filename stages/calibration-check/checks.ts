@@ -37,7 +37,10 @@ export interface Measured {
   readonly stationGains: readonly StationGain[];
 }
 
-export type Outcome = Finding | { readonly check: CheckName; readonly tooLittle: string };
+/** `on` names the part of a check that was not made; the whole when absent. */
+export type Outcome =
+  | Finding
+  | { readonly check: CheckName; readonly on?: string; readonly tooLittle: string };
 
 /** Measures what the checks and the error budget need. */
 export function measure(visibilities: Visibilities, parameters: CheckParameters): Measured {

@@ -6,30 +6,32 @@ import { readVisibilities, writeVisibilities } from '../formats/visibilities.ts'
 import type { Finding, StageReport, StageTask } from '../kind.ts';
 import { closureSets } from '../numerics/closures.ts';
 import { exp } from '../numerics/elementary.ts';
-import { agreement, budget, type Group } from './agreement.ts';
+import { agreement } from './agreement.ts';
 import { type Measured, measure, type Outcome, runChecks } from './checks.ts';
+import { type ErrorBudget, estimateBudget, withBudget } from './error-budget.ts';
 import { outOfLimitsText } from './findings.ts';
-import { type CheckParameters, readParameters } from './parameters.ts';
+import { checkOther, measureOther, type OtherMeasured, otherReport } from './other-agreement.ts';
+import { readParameters } from './parameters.ts';
 import { checkStatedNoise } from './stated-noise.ts';
-
-/** No estimate goes beyond: an amplitude error of 100 %, a phase error of half a turn. */
-const MOST = { amplitude: 1, phase: Math.PI } as const;
 
 export function compute(task: StageTask): StageReport {
   const parameters = readParameters(task.parameters);
   const visibilities = readVisibilities(task.inputs.visibilities[0]);
   const measured = measure(visibilities, parameters);
   task.note('measured', { pairs: measured.pairs.length, triangles: measured.triangles.length });
+  const otherSource = task.inputs.other?.[0];
+  const other = otherSource && measureOther(visibilities, readVisibilities(otherSource), parameters);
   task.progress(0.4);
   const outcomes = [
     ...runChecks(visibilities, measured, parameters),
     ...checkStatedNoise(task.inputs.report?.[0], parameters),
+    ...(other ? checkOther(other, parameters) : []),
   ];
-  const errorBudget = estimateBudget(measured, parameters);
+  const errorBudget = estimateBudget(measured, other, parameters);
   const findings = outcomes.filter((outcome): outcome is Finding => 'finding' in outcome);
   const warnings = [...outcomes.flatMap(tooLittleWarning), ...errorBudget.warnings];
   writeVisibilities(task.outputs.visibilities, withBudget(visibilities, errorBudget));
-  writeJson(task.outputs.report, reportOf(visibilities, measured, findings, errorBudget, warnings));
+  writeJson(task.outputs.report, reportOf(visibilities, measured, other, findings, errorBudget, warnings));
   const out = outOfLimitsText(findings);
   return {
     findings,
@@ -39,68 +41,15 @@ export function compute(task: StageTask): StageReport {
 }
 
 function tooLittleWarning(outcome: Outcome): string[] {
-  return 'tooLittle' in outcome ? [`Check ${outcome.check} was not made: ${outcome.tooLittle}.`] : [];
-}
-
-export interface ErrorBudget {
-  /** Fraction of the amplitude. */
-  readonly amplitude: number;
-  /** Radians. */
-  readonly phase: number;
-  /** On how many independent values each was estimated; null when the recipe gives it. */
-  readonly amplitudeFrom: number | null;
-  readonly phaseFrom: number | null;
-  readonly warnings: readonly string[];
-}
-
-function estimateBudget(measured: Measured, parameters: CheckParameters): ErrorBudget {
-  const { amplitudeBudget, phaseBudget, least } = parameters;
-  const amplitude = estimate(measured.amplitudeGroups, amplitudeBudget, MOST.amplitude, least);
-  const phase = estimate(measured.triangleGroups, phaseBudget, MOST.phase, least);
-  const warn = (what: string, { from }: Estimate) =>
-    from !== null && from < least
-      ? [`The ${what} of the error budget is 0: ${from} values are too few to estimate it.`]
-      : [];
-  return {
-    amplitude: amplitude.value,
-    phase: phase.value,
-    amplitudeFrom: amplitude.from,
-    phaseFrom: phase.from,
-    warnings: [...warn('amplitude', amplitude), ...warn('phase', phase)],
-  };
-}
-
-interface Estimate {
-  readonly value: number;
-  readonly from: number | null;
-}
-
-function estimate(
-  groups: readonly Group[],
-  given: number | 'estimate',
-  most: number,
-  least: number,
-): Estimate {
-  if (given !== 'estimate') return { value: given, from: null };
-  const { degrees } = agreement(groups);
-  return { value: degrees < least ? 0 : budget(groups, most), from: degrees };
-}
-
-/** The budget in quadrature: amplitude·|V| on sigma, phase on sigmaPhase. */
-function withBudget(visibilities: Visibilities, { amplitude, phase }: ErrorBudget): Visibilities {
-  const { re, im } = visibilities;
-  return {
-    ...visibilities,
-    sigma: visibilities.sigma.map((sigma, k) =>
-      Math.sqrt(sigma * sigma + amplitude * amplitude * (re[k] * re[k] + im[k] * im[k])),
-    ),
-    sigmaPhase: visibilities.sigmaPhase.map((sigma) => Math.sqrt(sigma * sigma + phase * phase)),
-  };
+  if (!('tooLittle' in outcome)) return [];
+  const on = outcome.on === undefined ? '' : ` on ${outcome.on}`;
+  return [`Check ${outcome.check} was not made${on}: ${outcome.tooLittle}.`];
 }
 
 function reportOf(
   visibilities: Visibilities,
   measured: Measured,
+  other: OtherMeasured | undefined,
   findings: readonly Finding[],
   errorBudget: ErrorBudget,
   warnings: readonly string[],
@@ -117,6 +66,7 @@ function reportOf(
       phaseDegrees: (errorBudget.phase * 180) / Math.PI,
       amplitudeEstimatedFrom: errorBudget.amplitudeFrom,
       phaseEstimatedFrom: errorBudget.phaseFrom,
+      ...(other ? { lowerBounds: errorBudget.lowerBounds } : {}),
     },
     closures: {
       scans: sets.length,
@@ -142,6 +92,7 @@ function reportOf(
       gain: exp(logGain),
       logGain,
     })),
+    ...(other ? { otherAgreement: otherReport(other) } : {}),
     warnings,
   };
 }

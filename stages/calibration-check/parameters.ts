@@ -15,6 +15,7 @@ export const CHECKS = [
   'gainOffset',
   'gainScatter',
   'statedNoise',
+  'otherAgreement',
 ] as const;
 
 export type CheckName = (typeof CHECKS)[number];
@@ -24,6 +25,8 @@ export interface CheckParameters {
   readonly colocated: number;
   readonly minimumSnr: number;
   readonly least: number;
+  /** Relative, of (u,v) to those of the input `other`. */
+  readonly uvDifference: number;
   readonly limits: Readonly<Record<CheckName, Limits>>;
   /** A fraction. */
   readonly amplitudeBudget: number | 'estimate';
@@ -40,11 +43,12 @@ export function readParameters(parameters: Readonly<Record<string, unknown>>): C
   const limits = Object.fromEntries(
     CHECKS.map((name) => [name, requireOrder(name, declared[name])]),
   ) as Record<CheckName, Limits>;
-  const { colocated, minimumSnr, least, amplitudeBudget, phaseBudget, outOfLimits } = declared;
+  const { colocated, minimumSnr, least, uvDifference, amplitudeBudget, phaseBudget, outOfLimits } = declared;
   return {
     colocated,
     minimumSnr,
     least,
+    uvDifference,
     limits,
     amplitudeBudget,
     phaseBudget: phaseBudget === 'estimate' ? phaseBudget : (phaseBudget * Math.PI) / 180,

@@ -10,7 +10,7 @@
 import type { Visibilities } from '../data.ts';
 import { exp } from '../numerics/elementary.ts';
 import { cholesky, invertCholesky, solveCholesky, solveLower } from '../numerics/linear.ts';
-import type { LinearModel, ModelVisibilities } from './linear-model.ts';
+import type { ModelVisibilities, Slopes } from './linear-model.ts';
 import { riceMean } from './rice.ts';
 import { addResidual, type Expansion, logDerivatives, type Term } from './term.ts';
 
@@ -99,10 +99,10 @@ function amplitudeTerm(
         const sd = Float64Array.from({ length: n }, (_, i) => Math.sqrt(inverse[i * n + i]));
         return { scan: scan.scan, stations: scan.stations, logGains: g, deviations: sd };
       }),
-    expand: (at, model, out) =>
+    expand: (at, slopes, out) =>
       sumOver((scan) => {
         const solved = solve(scan, at);
-        expandScan(scan, solved, at, model, out);
+        expandScan(scan, solved, at, slopes, out);
         return scanCost(scan, solved, deviations);
       }),
     only: (wanted) =>
@@ -166,19 +166,13 @@ function solveGains(
   return { g, residuals, slopes, L };
 }
 
-function expandScan(
-  scan: Scan,
-  solved: Solved,
-  at: ModelVisibilities,
-  model: LinearModel,
-  out: Expansion,
-): void {
+function expandScan(scan: Scan, solved: Solved, at: ModelVisibilities, slopes: Slopes, out: Expansion): void {
   const columns = out.gradient.length;
   const n = scan.stations.length;
   const J = new Float64Array(columns);
   const cross = new Float64Array(n * columns);
   for (let m = 0; m < scan.rows.length; m++) {
-    logDerivatives(J, null, at, model, scan.rows[m], columns);
+    logDerivatives(J, null, at, slopes, scan.rows[m], columns);
     const d = solved.slopes[m];
     const i = scan.first[m] * columns;
     const j = scan.second[m] * columns;

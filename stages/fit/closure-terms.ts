@@ -96,7 +96,7 @@ function closureTerm(
     chiSquare,
     nuisances: () => 0,
     cost: (at) => chiSquare(at) / 2,
-    expand(at, model, out) {
+    expand(at, slopes, out) {
       const columns = out.gradient.length;
       const slope = new Float64Array(columns);
       for (const block of blocks) {
@@ -107,7 +107,7 @@ function closureTerm(
             part === 'phase' ? null : slope,
             part === 'phase' ? slope : null,
             at,
-            model,
+            slopes,
             row,
             columns,
           );

@@ -1,4 +1,4 @@
-/** Complex visibilities as a data term: real and imaginary parts with one standard deviation, linear in x. */
+/** Complex visibilities as a data term: real and imaginary parts with one standard deviation. */
 
 import type { Visibilities } from '../data.ts';
 import { addResidual, type Term } from './term.ts';
@@ -30,14 +30,14 @@ export function makeComplexTerm(data: Visibilities, rows = allRows(data)): Term 
     chiSquare,
     nuisances: () => 0,
     cost: (at) => chiSquare(at) / 2,
-    expand(at, model, out) {
+    expand(at, slopes, out) {
       const columns = out.gradient.length;
       const J = new Float64Array(columns);
       for (const r of rows) {
-        const start = r * model.columns;
-        for (let k = 0; k < columns; k++) J[k] = model.re[start + k] / sigma[r];
+        const start = r * slopes.columns;
+        for (let k = 0; k < columns; k++) J[k] = slopes.re[start + k] / sigma[r];
         addResidual(out, (at.re[r] - data.re[r]) / sigma[r], J, 0);
-        for (let k = 0; k < columns; k++) J[k] = model.im[start + k] / sigma[r];
+        for (let k = 0; k < columns; k++) J[k] = slopes.im[start + k] / sigma[r];
         addResidual(out, (at.im[r] - data.im[r]) / sigma[r], J, 0);
       }
       return chiSquare(at) / 2;

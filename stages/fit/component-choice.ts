@@ -60,7 +60,7 @@ export function chooseComponents(
     let x = start;
     steps.forEach((components, step) => {
       const options = { scans: kept, tolerance: TOLERANCE, mostSteps: MOST_STEPS };
-      x = solveFrom(problem, [resized(x, 1 + components)], options).best.x;
+      x = solveFrom(problem, [resized(problem.model, x, 1 + components)], options).best.x;
       const at = predict(problem.model, x);
       scans.forEach((scan, place) => {
         if (!isHeldOut(place)) return;

@@ -4,6 +4,7 @@ import type { Basis, Visibilities } from '../data.ts';
 import { type ClosureSet, closureSets } from '../numerics/closures.ts';
 import { type GaussNewtonOptions, gaussNewton, type Minimum } from '../numerics/gauss-newton.ts';
 import { type AmplitudeTerm, makeAmplitudeTerm } from './amplitude-term.ts';
+import { linearPart, placeAt, withPlace } from './centroid.ts';
 import { makeClosurePhaseTerm, makeLogClosureAmplitudeTerm } from './closure-terms.ts';
 import { makeComplexTerm } from './complex-term.ts';
 import type { BasisVisibilities, LinearModel } from './linear-model.ts';
@@ -71,9 +72,10 @@ export function solveFrom(
   return { best, minima };
 }
 
-/** A start for more components, or fewer: zeros added, or the last ones cut. */
-export function resized(x: Float64Array, columns: number): Float64Array {
+/** A start for more components, or fewer: zeros added, or the last ones cut. @param columns  1 + components */
+export function resized(model: LinearModel, x: Float64Array, columns: number): Float64Array {
   const out = new Float64Array(columns);
-  out.set(x.subarray(0, columns));
-  return out;
+  out.set(linearPart(model, x).subarray(0, columns));
+  const place = placeAt(model, x);
+  return place ? withPlace(model, out, place) : out;
 }

@@ -4,12 +4,13 @@ import type { StageKind } from '../kind.ts';
 
 export const fit = {
   kind: 'fit',
-  version: 1,
+  version: 2,
   doc:
     'Fits flux and coefficients of a basis to visibilities in the Fourier plane: image = flux * mean + sum of ' +
     'coefficient * component, the source at the resolution of the basis; the transform of its Gaussian is taken out of ' +
     'the model. The optimum is searched by damped Gauss-Newton steps from several starts, the posterior ' +
-    'is the Gaussian of the curvature there; for complex visibilities without positivity that is exact.',
+    'is the Gaussian of the curvature there; for complex visibilities with a fixed centroid and without positivity that ' +
+    'is exact.',
   source:
     'Thompson, Moran & Swenson, 3rd ed., sections 9.3 (amplitudes under noise), 10.3 (closures) and 11.4; marginalised ' +
     'nuisances: Golub & Pereyra 1973, SIAM J. Numer. Anal. 10, 413; choice by held-out data: Hastie, Tibshirani & ' +
@@ -106,6 +107,16 @@ export const fit = {
       doc: 'Least signal-to-noise of visibilities in closure phases; at least 4 in log closure amplitudes.',
       why: 'Below it phase errors are no longer Gaussian, and log amplitudes are biased by the cut itself.',
     },
+    centroid: {
+      type: 'word',
+      words: ['free', 'fixed'],
+      default: 'free',
+      doc:
+        "Where the source stands, for complex visibilities. `free`: the centroid's offsets from the phase centre are two " +
+        'parameters more, each with a Gaussian prior as wide as the field of the basis, and are looked for so far. ' +
+        '`fixed`: at the phase centre. The other data do not see it, and nothing changes for them.',
+      why: 'A source off the phase centre by a small part of the beam spoils a fit that holds it there.',
+    },
     positivity: {
       type: 'number',
       from: 0,
@@ -135,12 +146,23 @@ export const fit = {
   outputs: {
     image: {
       format: 'fits-image',
-      doc: 'The image at the maximum of the posterior, at the resolution of the basis, Jy per pixel.',
+      doc:
+        'The image at the maximum of the posterior, at the resolution of the basis, Jy per pixel. It is shown with its ' +
+        'centroid moved to the origin, where the images of a library have theirs; output `flux` has the centroid.',
     },
-    samples: { format: 'fits-table', doc: 'Draws of flux and coefficients.' },
+    samples: {
+      format: 'fits-table',
+      doc: 'Draws of flux and coefficients, over all places of the centroid.',
+    },
     residuals: { format: 'json', doc: 'Data with model and error, row by row and closure by closure.' },
     report: { format: 'json', doc: 'Chi-squares, choice of components, gains, starts, what was assumed.' },
-    flux: { format: 'numbers', doc: 'Total compact flux with its credible intervals.', numbers: ['flux'] },
+    flux: {
+      format: 'numbers',
+      doc:
+        'Total compact flux with its credible intervals; where complex visibilities fit the centroid, its offsets from ' +
+        'the phase centre.',
+      numbers: ['flux', 'centroid-east', 'centroid-north'],
+    },
   },
   load: () => import('./compute.ts'),
 } as const satisfies StageKind;

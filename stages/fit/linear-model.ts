@@ -5,6 +5,8 @@
  *    image             = F mean + sum_k b_k component_k
  *    visibilities      = offset + D x                               linear, D computed once
  *
+ *  Where the centroid is a parameter, two more stand behind these and the visibilities are turned: centroid.ts.
+ *
  *  The image is the source at the resolution of the basis, whose images were convolved with a Gaussian of FWHM w. The
  *  data are not, so the transform of an image is divided by that of the Gaussian, exp(-(pi w)^2 (u^2 + v^2) / (4 ln 2)).
  *  Without it the library's blur stands against the data: of four invented rings one was lost, and reduced chi-squares
@@ -15,12 +17,20 @@
 import type { Basis } from '../data.ts';
 import { visibilitiesOfAll } from '../numerics/fourier.ts';
 import { gaussianTaper } from '../numerics/models.ts';
+import { linearPart, moved, placeAt, type Ramp } from './centroid.ts';
 
-export interface LinearModel {
+/** Derivatives of visibilities by parameters. */
+export interface Slopes {
+  readonly columns: number;
+  /** D[r*columns + k], Jy. */
+  readonly re: Float64Array;
+  readonly im: Float64Array;
+}
+
+/** Its `columns` are 1 + K. */
+export interface LinearModel extends Slopes {
   /** Number of visibilities. */
   readonly count: number;
-  /** 1 + K. */
-  readonly columns: number;
   /** Jy per unit of each parameter; scales[0] belongs to the flux. */
   readonly scales: Float64Array;
   /** F0, Jy. */
@@ -28,9 +38,8 @@ export interface LinearModel {
   /** Visibilities at x = 0, Jy. */
   readonly offsetRe: Float64Array;
   readonly offsetIm: Float64Array;
-  /** D[r*columns + k], Jy. */
-  readonly re: Float64Array;
-  readonly im: Float64Array;
+  /** Null where the centroid is no parameter. */
+  readonly ramp: Ramp | null;
 }
 
 /** Visibilities of a model at one place of the parameters. */
@@ -75,7 +84,7 @@ export interface PriorSettings {
   readonly priorWidth: number;
 }
 
-/** Returns the whitened model. @param eigenvalues K or more */
+/** Returns the whitened model, the centroid no parameter. @param eigenvalues K or more */
 export function makeLinearModel(
   visibilities: BasisVisibilities,
   eigenvalues: Float64Array,
@@ -98,11 +107,19 @@ export function makeLinearModel(
     offsetIm: offset(visibilities.im),
     re: scaled(visibilities.re),
     im: scaled(visibilities.im),
+    ramp: null,
   };
 }
 
-/** Returns the visibilities at x; columns beyond its length count as zero. */
+/** Returns the visibilities at x; components beyond its length count as zero. */
 export function predict(model: LinearModel, x: Float64Array): ModelVisibilities {
+  const place = placeAt(model, x);
+  const unmoved = predictUnmoved(model, linearPart(model, x));
+  return model.ramp && place ? moved(unmoved, model.ramp, place) : unmoved;
+}
+
+/** Returns the visibilities of the image with its centroid at the phase centre. @param x  flux and coefficients */
+export function predictUnmoved(model: LinearModel, x: Float64Array): ModelVisibilities {
   const re = Float64Array.from(model.offsetRe);
   const im = Float64Array.from(model.offsetIm);
   for (let r = 0; r < model.count; r++) {
@@ -119,18 +136,24 @@ export function predict(model: LinearModel, x: Float64Array): ModelVisibilities 
   return { re, im };
 }
 
+/** Number of components that parameters hold. */
+export function componentsOf(model: LinearModel, x: Float64Array): number {
+  return linearPart(model, x).length - 1;
+}
+
 /** Returns flux and coefficients, Jy, of whitened parameters. */
 export function fluxAndCoefficients(
   model: LinearModel,
   x: Float64Array,
 ): { flux: number; coefficients: Float64Array } {
+  const length = componentsOf(model, x);
   return {
     flux: model.flux + model.scales[0] * x[0],
-    coefficients: Float64Array.from({ length: x.length - 1 }, (_, k) => model.scales[k + 1] * x[k + 1]),
+    coefficients: Float64Array.from({ length }, (_, k) => model.scales[k + 1] * x[k + 1]),
   };
 }
 
-/** Returns the image of whitened parameters, Jy per pixel. */
+/** Returns the image of whitened parameters, Jy per pixel; the centroid stands at the origin. */
 export function imageAt(model: LinearModel, basis: Basis, x: Float64Array): Float64Array {
   const { flux, coefficients } = fluxAndCoefficients(model, x);
   const pixels = basis.mean.map((value) => flux * value);

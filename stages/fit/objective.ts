@@ -1,6 +1,7 @@
 /** The cost of a fit as a function of the whitened parameters: half the squares of prior, data terms, positivity. */
 
 import type { CostFunction } from '../numerics/gauss-newton.ts';
+import { expandLinear, linearPart, slopesAt } from './centroid.ts';
 import { type LinearModel, type ModelVisibilities, predict } from './linear-model.ts';
 import type { PositivityTerm } from './positivity-term.ts';
 import { makeExpansion, mirror, type Term } from './term.ts';
@@ -20,14 +21,15 @@ export function makeObjective(
     cost(x) {
       const at = predicted(x);
       const data = terms.reduce((sum, term) => sum + term.cost(at), 0);
-      return data + priorCost(x) + (positivity ? positivity.cost(x) : 0);
+      return data + priorCost(x) + (positivity ? positivity.cost(linearPart(model, x)) : 0);
     },
     expand(x) {
       const at = predicted(x);
       const out = makeExpansion(x.length);
       let cost = priorCost(x);
-      for (const term of terms) cost += term.expand(at, model, out);
-      if (positivity) cost += positivity.expand(x, out);
+      const slopes = slopesAt(model, x, at);
+      for (const term of terms) cost += term.expand(at, slopes, out);
+      if (positivity) cost += expandLinear(positivity.expand, linearPart(model, x), out);
       for (let k = 0; k < x.length; k++) {
         out.gradient[k] += x[k];
         out.curvature[k * x.length + k] += 1;

@@ -10,6 +10,7 @@ import type { Basis } from '../data.ts';
 import type { LinearModel } from './linear-model.ts';
 import { addResidual, type Expansion } from './term.ts';
 
+/** Sees flux and coefficients only. */
 export interface PositivityTerm {
   cost(x: Float64Array): number;
   expand(x: Float64Array, out: Expansion): number;

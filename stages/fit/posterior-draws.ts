@@ -5,7 +5,13 @@ import type { Posterior } from '../data.ts';
 import { cholesky, solveLowerTransposed } from '../numerics/linear.ts';
 import { randomStream } from '../numerics/random.ts';
 import { InternalError } from '../problem.ts';
-import { fluxAndCoefficients, type LinearModel } from './linear-model.ts';
+import { type Place, placeAt } from './centroid.ts';
+import { componentsOf, fluxAndCoefficients, type LinearModel } from './linear-model.ts';
+
+/** Draws of flux and coefficients, with the place of each where the centroid is a parameter. */
+export interface PlacedPosterior extends Posterior {
+  readonly places: readonly Place[] | null;
+}
 
 export function drawPosterior(
   model: LinearModel,
@@ -13,22 +19,24 @@ export function drawPosterior(
   curvature: Float64Array,
   count: number,
   seed: number,
-): Posterior {
+): PlacedPosterior {
   const columns = x.length;
   const L = cholesky(curvature, columns);
   if (!L) throw new InternalError('drawPosterior', 'the curvature is not positive definite');
   const random = randomStream(seed, 'posterior');
   const flux = new Float64Array(count);
-  const coefficients = new Float64Array(count * (columns - 1));
+  const components = componentsOf(model, x);
+  const coefficients = new Float64Array(count * components);
+  const places: Place[] = [];
   for (let s = 0; s < count; s++) {
     const z = Float64Array.from({ length: columns }, () => random.normal());
     const step = solveLowerTransposed(L, z);
-    const draw = fluxAndCoefficients(
-      model,
-      x.map((value, k) => value + step[k]),
-    );
+    const at = x.map((value, k) => value + step[k]);
+    const draw = fluxAndCoefficients(model, at);
     flux[s] = draw.flux;
-    coefficients.set(draw.coefficients, s * (columns - 1));
+    coefficients.set(draw.coefficients, s * components);
+    const place = placeAt(model, at);
+    if (place) places.push(place);
   }
-  return { count, components: columns - 1, flux, coefficients };
+  return { count, components, flux, coefficients, places: model.ramp ? places : null };
 }

@@ -4,10 +4,12 @@
 import type { Posterior } from '../data.ts';
 import { cholesky, invertCholesky } from '../numerics/linear.ts';
 import { normalQuantile, quantiles } from '../numerics/statistics.ts';
-import { imageAt } from './linear-model.ts';
+import { placeAt, slopesAt } from './centroid.ts';
+import { UAS_PER_RADIAN } from './flux-numbers.ts';
+import { componentsOf, imageAt, type Slopes } from './linear-model.ts';
 import type { FitResiduals } from './residuals.ts';
 import type { FitResult } from './run-fit.ts';
-import type { FitSettings } from './settings.ts';
+import { type FitSettings, fitsCentroid } from './settings.ts';
 import { makeExpansion, mirror, type Term } from './term.ts';
 
 export interface TermReport {
@@ -43,7 +45,7 @@ export function makeReport(
     remark: problem.data.remark,
     rows: { fitted: selection.data.count, tooShort: selection.tooShort, tooLong: selection.tooLong },
     resolutionRadians: problem.basis.resolutionRadians,
-    components: best.x.length - 1,
+    components: componentsOf(problem.model, best.x),
     choice,
     terms,
     optimum: { cost: best.cost, converged: best.converged, negativeFraction: negative },
@@ -54,6 +56,7 @@ export function makeReport(
       source: result.fluxSource,
       totalMeasured: selection.totalFlux,
     },
+    ...centroidReport(result),
     posterior: posteriorMethod(settings),
     gains: {
       stations: result.stationGains,
@@ -70,22 +73,28 @@ export function makeReport(
   };
 }
 
+/** Microarcseconds; nothing where the centroid is no parameter. */
+function centroidReport({ problem, best }: FitResult) {
+  const place = placeAt(problem.model, best.x);
+  if (!(place && problem.model.ramp)) return {};
+  const [east, north, prior] = [place.east, place.north, problem.model.ramp.scale].map(
+    (radians) => radians * UAS_PER_RADIAN,
+  );
+  return { centroid: { east, north, priorDeviation: prior } };
+}
+
 function termReports({ problem, best, at }: FitResult): TermReport[] {
   const n = best.x.length;
   const L = cholesky(best.curvature, n);
   const covariance = L ? invertCholesky(L, n) : new Float64Array(n * n);
-  return problem.terms.map((term) => termReport(term, problem.model, at, covariance));
+  const slopes = slopesAt(problem.model, best.x, at);
+  return problem.terms.map((term) => termReport(term, slopes, at, covariance));
 }
 
-function termReport(
-  term: Term,
-  model: FitResult['problem']['model'],
-  at: FitResult['at'],
-  covariance: Float64Array,
-): TermReport {
+function termReport(term: Term, slopes: Slopes, at: FitResult['at'], covariance: Float64Array): TermReport {
   const n = Math.sqrt(covariance.length);
   const own = makeExpansion(n);
-  term.expand(at, model, own);
+  term.expand(at, slopes, own);
   mirror(own);
   let parameters = term.nuisances(at);
   for (let k = 0; k < n * n; k++) parameters += own.curvature[k] * covariance[k];
@@ -101,8 +110,9 @@ function termReport(
   };
 }
 
-function posteriorMethod({ data, positivity }: FitSettings): string {
-  return data === 'complex-visibilities' && positivity === 0
+function posteriorMethod(settings: FitSettings): string {
+  const isLinear = settings.data === 'complex-visibilities' && !fitsCentroid(settings);
+  return isLinear && settings.positivity === 0
     ? 'exact: the model is linear and errors and prior are Gaussian; the image is mean and maximum of the posterior'
     : 'Gaussian of the Gauss-Newton curvature at the maximum (Laplace); the image is the maximum of the posterior';
 }
@@ -148,10 +158,12 @@ function findWarnings(
   }
   const flux = fluxAboveTotal(result, settings, posterior);
   if (flux !== null) warnings.push(flux);
+  const isFixed = settings.data === 'complex-visibilities' && !fitsCentroid(settings);
+  const offCentre = isFixed ? ', or one off the phase centre, where `centroid: fixed` holds it' : '';
   for (const { term, reducedChiSquare } of terms) {
     if (reducedChiSquare > LARGEST_CHI_SQUARE) {
       warnings.push(
-        `reduced chi-square of the ${term} is ${reducedChiSquare.toFixed(2)}: too few components, errors stated too small, or a source that the library does not hold`,
+        `reduced chi-square of the ${term} is ${reducedChiSquare.toFixed(2)}: too few components, errors stated too small, or a source that the library does not hold${offCentre}`,
       );
     }
   }

@@ -32,7 +32,7 @@ export interface FitResiduals {
     readonly modelAmplitude: Float64Array;
     readonly re: Float64Array;
     readonly im: Float64Array;
-    /** Visibility of the image alone. */
+    /** Visibility of the image, at the place of the fit where the centroid is a parameter, without gains. */
     readonly modelRe: Float64Array;
     readonly modelIm: Float64Array;
   };

@@ -5,6 +5,8 @@ import type { ClosureSet } from '../numerics/closures.ts';
 import type { Minimum } from '../numerics/gauss-newton.ts';
 import { median } from '../numerics/statistics.ts';
 import { InputProblem } from '../problem.ts';
+import { withPlace } from './centroid.ts';
+import { findPlace } from './centroid-start.ts';
 import { type ComponentChoice, chooseComponents } from './component-choice.ts';
 import {
   type FitProblem,
@@ -21,10 +23,11 @@ import {
   type ModelVisibilities,
   makeLinearModel,
   predict,
+  predictUnmoved,
 } from './linear-model.ts';
 import { makePositivityTerm } from './positivity-term.ts';
 import { longestBaseline, type Selection, selectRows } from './select-rows.ts';
-import type { FitSettings } from './settings.ts';
+import { type FitSettings, fitsCentroid } from './settings.ts';
 import { type Settled, settleGains } from './settle-gains.ts';
 
 export interface StartOutcome {
@@ -71,7 +74,10 @@ export function runFit(
       ? chooseComponents(settled.problem, settled.best.x, (fraction) => progress(0.2 + 0.6 * fraction))
       : null;
   const columns = choice ? 1 + choice.components : first;
-  const before = { start: 'fit before the choice', x: resized(settled.best.x, columns) };
+  const before = {
+    start: 'fit before the choice',
+    x: resized(settled.problem.model, settled.best.x, columns),
+  };
   const starts = [...makeStarts(settled.problem, picked, columns), before];
   const { best: bestStart, minima } = solveFrom(settled.problem, placesOf(starts));
   const last = settleGains(settled.problem, [bestStart.x], settings, settled.widenings);
@@ -95,12 +101,19 @@ function firstColumns({ components }: FitSettings, basis: Basis): number {
   return 1 + (components === 'by-data' ? Math.min(FIRST_COMPONENTS, basis.components.length) : components);
 }
 
+/** Starts, each at the place where it agrees best when the centroid is a parameter. */
 function makeStarts(problem: FitProblem, picked: readonly LibraryMatch[], columns: number): Start[] {
+  const { model, data } = problem;
+  const placed = (start: Start): Start => {
+    if (!model.ramp) return start;
+    const place = findPlace(data, predictUnmoved(model, start.x), model.ramp.scale);
+    return { ...start, x: withPlace(model, start.x, place) };
+  };
   const fromLibrary = picked.map((match) => ({
     start: `library image ${match.image}, family ${match.family}`,
     x: startOf(match, problem.basis, problem.model, columns),
   }));
-  return [{ start: 'mean of the prior', x: new Float64Array(columns) }, ...fromLibrary];
+  return [{ start: 'mean of the prior', x: new Float64Array(columns) }, ...fromLibrary].map(placed);
 }
 
 function placesOf(starts: readonly Start[]): Float64Array[] {
@@ -134,7 +147,9 @@ function makeProblem(
   settings: FitSettings,
 ): FitProblem {
   const prior = { flux, fluxWidth: settings.fluxPrior, priorWidth: settings.priorWidth };
-  const model = makeLinearModel(B, basis.eigenvalues, prior);
+  const linear = makeLinearModel(B, basis.eigenvalues, prior);
+  const ramp = { scale: basis.nx * basis.pixelRadians, u: data.u, v: data.v };
+  const model = fitsCentroid(settings) ? { ...linear, ramp } : linear;
   const deviations = gainDeviations(data, settings.gainPriors);
   return {
     data,

@@ -19,6 +19,8 @@ export interface FitSettings {
   readonly shortest: number;
   readonly gainPriors: { readonly usual: number; readonly stations: Readonly<Record<string, number>> };
   readonly minimumSnr: number;
+  /** Whether complex visibilities fit the centroid; absent is `fixed`. */
+  readonly centroid?: 'free' | 'fixed';
   readonly positivity: number;
   readonly starts: number;
   readonly samples: number;
@@ -27,6 +29,11 @@ export interface FitSettings {
 
 /** Least signal-to-noise of log closure amplitudes: a cut at 3 selects +0.20 in ln(A^2 - sigma^2) at a true 3 (common practice). */
 export const LEAST_AMPLITUDE_SNR = 4;
+
+/** Whether the centroid is a parameter of the fit: closures and amplitudes do not see it. */
+export function fitsCentroid({ data, centroid }: FitSettings): boolean {
+  return data === 'complex-visibilities' && centroid === 'free';
+}
 
 export function readSettings(
   parameters: Readonly<Record<string, unknown>>,

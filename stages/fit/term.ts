@@ -1,7 +1,7 @@
 /** What a data term is: half a sum of squares of whitened residuals, with its expansion to second order (curvature by
  *  Gauss and Newton). */
 
-import type { LinearModel, ModelVisibilities } from './linear-model.ts';
+import type { ModelVisibilities, Slopes } from './linear-model.ts';
 
 export interface Expansion {
   /** length columns */
@@ -17,8 +17,8 @@ export interface Term {
   /** Numbers of the scans that it holds, rising. */
   readonly scans: readonly number[];
   cost(at: ModelVisibilities): number;
-  /** Adds gradient and curvature by x; returns the cost. */
-  expand(at: ModelVisibilities, model: LinearModel, out: Expansion): number;
+  /** Adds gradient and curvature by x; returns the cost. @param slopes  derivatives of `at` */
+  expand(at: ModelVisibilities, slopes: Slopes, out: Expansion): number;
   /** The term on some of its scans. */
   only(scans: ReadonlySet<number>): Term;
   /** Chi-square of the measurements alone, without penalties of nuisances. */
@@ -56,7 +56,7 @@ export function logDerivatives(
   outRe: Float64Array | null,
   outIm: Float64Array | null,
   at: ModelVisibilities,
-  model: LinearModel,
+  slopes: Slopes,
   r: number,
   columns: number,
 ): void {
@@ -64,10 +64,10 @@ export function logDerivatives(
   const b = at.im[r];
   const square = a * a + b * b;
   const scale = square > 0 ? 1 / square : 0;
-  const start = r * model.columns;
+  const start = r * slopes.columns;
   for (let k = 0; k < columns; k++) {
-    const p = model.re[start + k];
-    const q = model.im[start + k];
+    const p = slopes.re[start + k];
+    const q = slopes.im[start + k];
     if (outRe) outRe[k] = (a * p + b * q) * scale;
     if (outIm) outIm[k] = (a * q - b * p) * scale;
   }

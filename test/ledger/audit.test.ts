@@ -8,9 +8,11 @@ import { audit } from '../../ledger/audit.ts';
 import type { Book } from '../../ledger/book.ts';
 import { canonicalJson } from '../../ledger/canonical.ts';
 import { sha256 } from '../../ledger/digest.ts';
-import { formatSeal } from '../../ledger/seal.ts';
+import { growPeaks, leafHash, rootOfPeaks } from '../../ledger/merkle.ts';
+import { signSeal } from '../../ledger/seal.ts';
+import { readSigningKey } from '../../ledger/signing-key.ts';
 import { fillBook } from './lantern-book.ts';
-import { makeBook, temporary } from './make-book.ts';
+import { keyFile, makeBook, temporary } from './make-book.ts';
 
 let book: Book;
 let directory: string;
@@ -54,11 +56,23 @@ function forge(number: number, change: (entry: Record<string, unknown>) => objec
     });
   const ledger = Buffer.from(lines.join(''));
   writeFileSync(join(copy, 'ledger.jsonl'), ledger);
-  writeFileSync(
-    join(copy, 'seals/latest.json'),
-    formatSeal({ book: 'lantern', bytes: ledger.length, entries: lines.length, last: before }),
+  // A forger who has the key.
+  const { root } = rebuiltRoot(lines);
+  const facts = { book: 'lantern', bytes: ledger.length, entries: lines.length, last: before, root };
+  const { note } = signSeal(
+    { ...facts, time: '2026-01-02T03:04:05.678Z' },
+    readSigningKey(keyFile(directory)),
   );
-  rmSync(join(copy, 'index.sqlite'));
+  writeFileSync(join(copy, 'seals/latest'), note ?? '');
+  rmSync(join(copy, 'seals/kept'));
+  for (const derived of ['index.sqlite', 'tree']) rmSync(join(copy, derived));
+}
+
+function rebuiltRoot(lines: readonly string[]): { root: string } {
+  const peaks: Buffer[] = [];
+  for (const [size, line] of lines.entries())
+    growPeaks(peaks, size, leafHash(Buffer.from(line.slice(0, -1))));
+  return { root: rootOfPeaks(peaks).toString('base64') };
 }
 
 test('a book as it was written is sound, wherever it lies', () => {
@@ -74,7 +88,7 @@ describe('the index', () => {
     ['UPDATE entries SET position = position + 1 WHERE number = 5', 5],
     ['DELETE FROM links WHERE source = 7', 7],
     ["UPDATE files SET role = 'output' WHERE entry = 1", 1],
-    ["INSERT INTO plates VALUES ('1-ABCDEF', NULL, 4, 'basis')", 4],
+    ["INSERT INTO plates VALUES ('1-ABCDEF', NULL, 4, 'basis', NULL)", 4],
     ["UPDATE numbers SET name = 'x' WHERE run = 1", 10],
   ])('that says something else is blamed: %s', (sql, entry) => {
     tamper(sql);
@@ -120,7 +134,7 @@ describe('the store', () => {
   test('with a file of other bytes is damaged', () => {
     rmSync(path());
     writeFileSync(path(), 'forged image');
-    expect(audit({ directory: copy }).problems).toEqual([
+    expect(audit({ directory: copy }).problems).toMatchObject([
       {
         entry: 5,
         what: `output image: store/${digest().slice(0, 3)}/${digest()} has bytes of digest ${sha256('forged image')}`,

@@ -8,6 +8,7 @@ import type { Draft } from '../../ledger/entry.ts';
 import {
   entryInput,
   fixedClock,
+  keyFile,
   makeBook,
   plateDraft,
   published,
@@ -33,7 +34,8 @@ afterEach(() => {
 describe('the format', () => {
   test('is what the header of book.ts shows', () => {
     const source = readFileSync(new URL('../../ledger/book.ts', import.meta.url), 'utf8');
-    const [line, seal] = [...source.matchAll(/^ \* {6}(\{.*\})$/gm)].map(([, shown]) => shown);
+    const [, line, seal] =
+      /^ \* {6}(\{.*\})\n(?: \*.*\n)*? \* {2}and its seal.*\n \*\n((?: \* {6}.*\n)+)/m.exec(source) ?? [];
     const shown = makeBook(join(directory, 'shown'), { now: () => new Date('2026-01-02T03:04:05.678Z') });
     shown.append({
       type: 'run',
@@ -46,8 +48,11 @@ describe('the format', () => {
     });
     shown.close();
     expect(readFileSync(join(directory, 'shown/ledger.jsonl'), 'utf8')).toBe(`${line}\n`);
-    // The digests in the example come from coreutils' sha256sum.
-    expect(readFileSync(join(directory, 'shown/seals/latest.json'), 'utf8')).toBe(`${seal}\n`);
+    // The digests in the example come from coreutils' sha256sum: the root is that of a zero byte and the line.
+    const text = seal?.replaceAll(/^ \* {6}/gm, '');
+    expect(readFileSync(join(directory, 'shown/seals/latest'), 'utf8').split('\n\n')[0]).toBe(
+      text?.trimEnd(),
+    );
   });
 
   test('has nothing but the files that the header of book.ts names', () => {
@@ -59,16 +64,17 @@ describe('the format', () => {
       'logs',
       'seals',
       'store',
+      'tree',
       'turns.sqlite',
     ]);
-    expect(readdirSync(join(book.directory, 'seals'))).toEqual(['latest.json']);
+    expect(readdirSync(join(book.directory, 'seals')).sort()).toEqual(['keys', 'latest']);
     expect(readdirSync(join(book.directory, 'store/new'))).toEqual([]);
   });
 });
 
 describe('opening', () => {
   const open = (name: string, create = false) =>
-    openBook(join(directory, name), { create, by: { name: 'A. Keeper' } });
+    openBook(join(directory, name), { create, by: { name: 'A. Keeper' }, key: keyFile(directory) });
 
   test('asks for a book', () => {
     mkdirSync(join(directory, 'empty'));
@@ -125,7 +131,7 @@ describe('opening', () => {
   });
 
   test.each(['', 'a\nb', 'x'.repeat(101)])('refuses the name %j', (name) => {
-    expect(() => openBook(join(directory, 'named'), { create: true, name })).toThrow(
+    expect(() => openBook(join(directory, 'named'), { create: true, name, key: keyFile(directory) })).toThrow(
       "The book's name: expected 1 to 100 characters without control characters",
     );
   });
@@ -341,7 +347,7 @@ describe('the index', () => {
     book.append(runDraft(book, [1]));
     book.close();
     spoil();
-    const again = openBook(book.directory, { by: { name: 'A. Keeper' } });
+    const again = openBook(book.directory, { by: { name: 'A. Keeper' }, key: keyFile(directory) });
     expect(again.count()).toBe(6);
     expect(again.lastRun()?.number).toBe(6);
     expect(again.append(stageDraft(again)).entry.number).toBe(7);
@@ -356,7 +362,7 @@ describe('the index', () => {
     book.append(stageDraft(book));
     book.close();
     const behind = readFileSync(index());
-    const writer = openBook(book.directory, { by: { name: 'A. Keeper' } });
+    const writer = openBook(book.directory, { by: { name: 'A. Keeper' }, key: keyFile(directory) });
     writer.append(stageDraft(writer, { name: 'second' }));
     writer.close();
     for (const content of [behind, readFileSync(join(other.directory, 'index.sqlite'))]) {
@@ -373,7 +379,7 @@ describe('the index', () => {
     book.close();
     rmSync(index());
     mkdirSync(index());
-    const again = openBook(book.directory, { by: { name: 'A. Keeper' } });
+    const again = openBook(book.directory, { by: { name: 'A. Keeper' }, key: keyFile(directory) });
     expect(again.findStage('ab12'.repeat(16))?.number).toBe(3);
     expect(again.append(stageDraft(again)).entry.number).toBe(4);
     expect(again.entry(4).number).toBe(4);

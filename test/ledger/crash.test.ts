@@ -3,12 +3,12 @@
 import { spawn } from 'node:child_process';
 import { once } from 'node:events';
 import { appendFileSync, readdirSync, readFileSync, writeFileSync } from 'node:fs';
-import { join } from 'node:path';
+import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { afterEach, beforeEach, describe, expect, test } from 'vitest';
 import { audit } from '../../ledger/audit.ts';
 import { type Book, openBook } from '../../ledger/book.ts';
-import { makeBook, runDraft, stageDraft, temporary } from './make-book.ts';
+import { keyFile, makeBook, runDraft, stageDraft, temporary } from './make-book.ts';
 
 const APPEND_MANY = fileURLToPath(new URL('./append-many.ts', import.meta.url));
 
@@ -32,7 +32,11 @@ afterEach(() => {
 function reopen(): { opened: Book; said: string[] } {
   const said: string[] = [];
   return {
-    opened: openBook(directory, { by: { name: 'A. Keeper' }, announce: (text) => said.push(text) }),
+    opened: openBook(directory, {
+      by: { name: 'A. Keeper' },
+      key: keyFile(dirname(directory)),
+      announce: (text) => said.push(text),
+    }),
     said,
   };
 }
@@ -43,9 +47,9 @@ const torn = () => readdirSync(directory).filter((name) => name.startsWith('torn
 describe('a crash between line and seal', () => {
   test('leaves an entry that is sealed when the book is opened', () => {
     book.append(stageDraft(book));
-    const seal = read('seals/latest.json');
+    const seal = read('seals/latest');
     book.append(stageDraft(book, { name: 'late' }));
-    writeFileSync(join(directory, 'seals/latest.json'), seal);
+    writeFileSync(join(directory, 'seals/latest'), seal);
     const { opened, said } = reopen();
     expect(said).toEqual([
       'Entry 2 was written whole when its writer was interrupted: it stands, and is now sealed.',
@@ -58,11 +62,11 @@ describe('a crash between line and seal', () => {
 
   test('does not matter to a reader that had the book open, nor to a writer', () => {
     book.append(stageDraft(book));
-    const seal = read('seals/latest.json');
+    const seal = read('seals/latest');
     const other = makeBook(directory);
     other.append(stageDraft(other, { name: 'late' }));
     other.close();
-    writeFileSync(join(directory, 'seals/latest.json'), seal);
+    writeFileSync(join(directory, 'seals/latest'), seal);
     expect(book.append(runDraft(book, [1])).entry.number).toBe(3);
     expect(audit(book).verdict).toBe('sound');
   });
@@ -108,6 +112,7 @@ describe('a crash while a line is written', () => {
     let inside: string[] = [];
     const writer = openBook(directory, {
       by: { name: 'A. Keeper' },
+      key: keyFile(dirname(directory)),
       // Within the turn, after what was left has been moved away: a second opening finds nothing to do.
       announce: (text) => {
         said.push(text);

@@ -1,20 +1,20 @@
 /** Every flipped byte and every cut of a ledger is found, and the entry is named. */
 
 import { closeSync, ftruncateSync, openSync, readFileSync, rmSync, writeFileSync, writeSync } from 'node:fs';
-import { join } from 'node:path';
+import { dirname, join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
 import { audit } from '../../ledger/audit.ts';
 import { auditLedger } from '../../ledger/audit-ledger.ts';
 import { type Book, openBook } from '../../ledger/book.ts';
 import { canonicalJson } from '../../ledger/canonical.ts';
-import { makeBook, runDraft, stageDraft, temporary } from './make-book.ts';
+import { keyFile, makeBook, runDraft, stageDraft, temporary } from './make-book.ts';
 
 const ENTRIES = 40;
 let remove: () => void;
 let directory: string;
 let book: Book;
-/** Ledger and seal at every size. */
-const states: { ledger: Buffer; seal: Buffer }[] = [];
+/** Ledger and seals at every size. */
+const states: { ledger: Buffer; seal: Buffer; kept: Buffer }[] = [];
 
 beforeAll(() => {
   const made = temporary();
@@ -30,7 +30,8 @@ beforeAll(() => {
     );
     states.push({
       ledger: readFileSync(join(directory, 'ledger.jsonl')),
-      seal: readFileSync(join(directory, 'seals/latest.json')),
+      seal: readFileSync(join(directory, 'seals/latest')),
+      kept: number === 1 ? Buffer.alloc(0) : readFileSync(join(directory, 'seals/kept')),
     });
   }
 });
@@ -40,11 +41,12 @@ afterAll(() => {
   remove();
 });
 
-function restore(size: number): { ledger: Buffer; seal: Buffer } {
+function restore(size: number): { ledger: Buffer; seal: Buffer; kept: Buffer } {
   const state = states[size - 1];
   if (state === undefined) throw new Error('no such size');
   writeFileSync(join(directory, 'ledger.jsonl'), state.ledger);
-  writeFileSync(join(directory, 'seals/latest.json'), state.seal);
+  writeFileSync(join(directory, 'seals/latest'), state.seal);
+  writeFileSync(join(directory, 'seals/kept'), state.kept);
   return state;
 }
 
@@ -95,7 +97,7 @@ describe('a flipped bit', () => {
   test('is found at every size, sampled', () => {
     for (let size = 1; size <= ENTRIES; size += 1) {
       const { ledger } = restore(size);
-      const step = Math.ceil(ledger.length / 12);
+      const step = Math.ceil(ledger.length / 8);
       flipEach('ledger.jsonl', ledger, every(ledger.length, step, size % step), (at, entries) => {
         expect(entries, `byte ${at} of ${size} entries`).toContain(entryAt(ledger, at));
       });
@@ -109,7 +111,7 @@ describe('a flipped bit', () => {
   test('anywhere in the seal is found', () => {
     for (const size of [1, 9, 10, ENTRIES]) {
       const { seal } = restore(size);
-      flipEach('seals/latest.json', seal, every(seal.length), (at, entries) => {
+      flipEach('seals/latest', seal, every(seal.length), (at, entries) => {
         expect(entries, `byte ${at} of the seal of ${size} entries`).not.toEqual([]);
       });
     }
@@ -123,7 +125,11 @@ describe('a flipped bit', () => {
       flipped[place] = (flipped[place] as number) ^ 1;
       writeFileSync(join(directory, 'ledger.jsonl'), flipped);
       const said: string[] = [];
-      const opened = openBook(directory, { by: { name: 'A. Keeper' }, announce: (text) => said.push(text) });
+      const opened = openBook(directory, {
+        by: { name: 'A. Keeper' },
+        key: keyFile(dirname(directory)),
+        announce: (text) => said.push(text),
+      });
       expect(() => opened.entry(entryAt(ledger, place))).toThrow('ledger.jsonl');
       if (at < 0) {
         expect(said.join()).toContain('is damaged');
@@ -153,7 +159,11 @@ describe('a cut', () => {
     const { ledger } = restore(6);
     writeFileSync(join(directory, 'ledger.jsonl'), ledger.subarray(0, -10));
     const said: string[] = [];
-    openBook(directory, { by: { name: 'A. Keeper' }, announce: (text) => said.push(text) }).close();
+    openBook(directory, {
+      by: { name: 'A. Keeper' },
+      key: keyFile(dirname(directory)),
+      announce: (text) => said.push(text),
+    }).close();
     expect(said).toEqual([expect.stringContaining('the seal says 6 entries')]);
     expect(readFileSync(join(directory, 'ledger.jsonl'))).toEqual(ledger.subarray(0, -10));
   });
@@ -192,8 +202,10 @@ describe('a rewritten ledger', () => {
 
   test('without a seal is damaged', () => {
     restore(6);
-    rmSync(join(directory, 'seals/latest.json'));
-    expect(auditLedger(directory).problems).toEqual([{ entry: 6, what: 'seals/latest.json is missing' }]);
+    rmSync(join(directory, 'seals/latest'));
+    expect(auditLedger(directory).problems).toEqual([
+      { entry: 6, what: 'seals/latest is missing', beside: true },
+    ]);
     restore(6);
   });
 });

@@ -41,7 +41,20 @@ test('names the damaged entry, and ends with status 1', () => {
   expect(auditCommand(optionsFor(filled.book), shown)).toBe(1);
   expect(shown.printed()).toContain('Book lantern: damaged\n');
   expect(shown.printed()).toContain('1 problem:\n\n  entry 11  its line was changed: the digest is\n');
+  // Entry 11 is the basis of run 2: its plate and its numbers, and none of run 1.
+  const said = shown.printed().replace(/\s+/g, ' ');
+  expect(said).toMatch(
+    /reaches plate 14b-\w{6} \(ring-image\) and numbers ring-diameter of run 2, ring-width of run 2/,
+  );
+  expect(said).not.toContain('of run 1');
   expect(longLines(shown.printed())).toEqual([]);
+});
+
+test('that is quick says what it did not read', () => {
+  const io = keepingIo(filled.directory);
+  expect(auditCommand({ ...optionsFor(filled.book), quick: true }, io)).toBe(0);
+  expect(io.printed()).toMatch(/sizes of \d+ files in the store/);
+  expect(io.printed()).toContain('Its bytes were not read.');
 });
 
 test('says what a crash left, and judges the book after it', () => {

@@ -33,7 +33,7 @@ export function keepingIo(cwd: string): Io & { printed(): string; said(): string
     },
     errorStream: process.stderr,
     cwd,
-    env: {},
+    env: { PLATEBOOK_BY: 'B. Reader', PLATEBOOK_KEY: join(cwd, 'reader.pem') },
     terminal: false,
     columns: 100,
     printed: () => out,

@@ -16,7 +16,8 @@ test('prints one JSON document with the entries', () => {
   const io = keepingIo(filled.directory);
   expect(contentsCommand({ ...optionsFor(filled.book, true), type: 'run' }, io)).toBe(0);
   const document = JSON.parse(io.printed());
-  expect(Object.keys(document)).toEqual(['entries']);
+  expect(Object.keys(document)).toEqual(['entries', 'withdrawn']);
+  expect(document.withdrawn).toEqual([]);
   expect(document.entries.map(({ number, run }: { number: number; run: number }) => [number, run])).toEqual([
     [10, 1],
     [16, 2],

@@ -35,7 +35,9 @@ test.each([[['1', '2']], [['run 1', 'run 2']], [['run', '1', 'run', '2']], [['la
       'environment',
       'outputs',
       'numbers',
+      'withdrawals',
     ]);
+    expect(document.withdrawals).toEqual([]);
     expect(document.parameters).toEqual([{ stage: 'basis', parameter: 'components', values: [20, 30] }]);
     expect(document.outputs[0]).toMatchObject({ stage: 'observation', output: 'data', same: true });
     expect(document.numbers[0]).toMatchObject({ name: 'ring-diameter', values: [42.1, 42.9] });

@@ -1,10 +1,11 @@
 /** `trace`: document and text. The lineage itself: test/ledger/questions.test.ts. */
 
-import { writeFileSync } from 'node:fs';
+import { existsSync, readFileSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { afterAll, beforeAll, expect, test } from 'vitest';
 import { openBook } from '../../../ledger/book.ts';
 import type { PlateEntry, StageEntry } from '../../../ledger/entry.ts';
+import { checkProof } from '../../../ledger/proof.ts';
 import { traceCommand } from '../../../runner/commands/trace.ts';
 import { type Filled, filledBook, keepingIo, longLines, optionsFor } from './book-io.ts';
 
@@ -34,7 +35,8 @@ test('prints one JSON document with subject and lineage', () => {
   const io = keepingIo(filled.directory);
   expect(traceCommand(['figure.svg'], optionsFor(filled.book, true), io)).toBe(0);
   const document = JSON.parse(io.printed());
-  expect(Object.keys(document)).toEqual(['subject', 'lineage']);
+  expect(Object.keys(document)).toEqual(['subject', 'lineage', 'withdrawals', 'countersignatures']);
+  expect([document.withdrawals, document.countersignatures]).toEqual([[], []]);
   expect(document.subject).toMatchObject({ asked: 'figure.svg', type: 'plate', plate: plate.plate });
   expect(document.lineage.map(({ number }: { number: number }) => number)).toEqual([9, 7, 6, 5, 4, 2, 3, 1]);
   expect(document.lineage[0]).toMatchObject({
@@ -93,6 +95,37 @@ test('says of a file from outside which entries read it', () => {
   expect(textOf('da7ada7a')).toContain(
     'a file from outside; no entry made it. It went into entry 1 (image).',
   );
+});
+
+test('writes a proof that checks, and says where', () => {
+  const io = keepingIo(filled.directory);
+  expect(traceCommand([plate.plate], { ...optionsFor(filled.book), proof: 'proof.json' }, io)).toBe(0);
+  const file = join(filled.directory, 'proof.json');
+  expect(io.said()).toBe(`Proof of entry 9 under the seal of 16 entries: ${file}\n`);
+  const proof = JSON.parse(readFileSync(file, 'utf8'));
+  expect(checkProof(proof)).toMatchObject({ book: 'lantern', number: 9 });
+  expect(JSON.parse(proof.entry)).toMatchObject({ type: 'plate', plate: plate.plate });
+  // The plate's trace is printed all the same.
+  expect(io.printed()).toContain('Lineage, nearest first: 8 entries');
+});
+
+test('proves a published number by the run that published it', () => {
+  const io = keepingIo(filled.directory);
+  const proof = join(filled.directory, 'number.json');
+  traceCommand(['ring-diameter', 'in', 'run', '1'], { ...optionsFor(filled.book, true), proof }, io);
+  expect(JSON.parse(JSON.parse(readFileSync(proof, 'utf8')).entry)).toMatchObject({ type: 'run', run: 1 });
+  expect(JSON.parse(io.printed()).lineage).toHaveLength(6);
+});
+
+test('proves nothing of a file that no entry made, and says where a proof cannot be written', () => {
+  const io = keepingIo(filled.directory);
+  const prove = (words: string[], proof: string) =>
+    traceCommand(words, { ...optionsFor(filled.book), proof }, io);
+  expect(() => prove(['da7ada7a'], 'none.json')).toThrow(
+    'da7ada7a: a file from outside, which no entry made. Prove an entry that read it.',
+  );
+  expect(existsSync(join(filled.directory, 'none.json'))).toBe(false);
+  expect(() => prove(['9'], 'no/where.json')).toThrow('cannot be written (no such file)');
 });
 
 test('throws what the command line prints', () => {
