@@ -139,7 +139,7 @@ function inOrder(index: Index, rows: Row[]): Reached[] {
       a.distance - b.distance || a.entry - b.entry || (a.run ?? 0) - (b.run ?? 0) || a.place - b.place,
   );
   const seen = new Set<string>();
-  return rows.flatMap(({ entry, type, name, run, plate }) => {
+  return rows.flatMap(({ entry, type, name, run, plate }): Reached[] => {
     const key = type === 'number' ? `${name} ${run}` : entry;
     if (seen.has(`${key}`)) return [];
     seen.add(`${key}`);
