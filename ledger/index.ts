@@ -5,6 +5,7 @@
  *  not derived; losing it costs one reading of each file. `settings` holds the values of parameters by the number that
  *  settingsOf gives a whole set of them: sets repeat from run to run, so it grows much slower than the ledger. */
 
+import { existsSync, linkSync, rmSync } from 'node:fs';
 import { DatabaseSync, type StatementSync } from 'node:sqlite';
 import { DIGEST_OF_NOTHING } from './digest.ts';
 import type { Entry } from './entry.ts';
@@ -116,6 +117,8 @@ export interface Index {
   /** Rows of a question in SQL; statements are prepared once. */
   all<T>(sql: string, ...values: Value[]): T[];
   get<T>(sql: string, ...values: Value[]): T | undefined;
+  /** The same as `all`, each row a list of its columns: for many rows, in less time. */
+  lists(sql: string, ...values: Value[]): Value[][];
   remember(path: string, stamp: string, digest: string, bytes: number): void;
   close(): void;
 }
@@ -124,12 +127,7 @@ export interface Index {
  *  @throws SQLite's error when the file is no database or cannot be written. */
 export function openIndex(path: string, book: string): Index {
   const database = new DatabaseSync(path, { timeout: PATIENCE_MILLISECONDS });
-  const statements = new Map<string, StatementSync>();
-  const prepare = (sql: string) => {
-    const statement = statements.get(sql) ?? database.prepare(sql);
-    statements.set(sql, statement);
-    return statement;
-  };
+  const prepare = preparing(database);
 
   const index: Index = {
     extent: () => prepare('SELECT book, entries, bytes, last FROM extent').get() as unknown as Extent,
@@ -147,6 +145,12 @@ export function openIndex(path: string, book: string): Index {
     },
     all: (sql, ...values) => prepare(sql).all(...values) as never,
     get: (sql, ...values) => prepare(sql).get(...values) as never,
+    lists(sql, ...values) {
+      // A statement of its own: the other form of rows belongs to `all`.
+      const statement = prepare(`${sql} `);
+      statement.setReturnArrays(true);
+      return statement.all(...values) as unknown as Value[][];
+    },
     remember(at, stamp, digest, bytes) {
       prepare('INSERT OR REPLACE INTO remembered VALUES (?, ?, ?, ?)').run(at, stamp, digest, bytes);
     },
@@ -162,6 +166,39 @@ export function openIndex(path: string, book: string): Index {
   }
 }
 
+/** Makes the index of a book in a new file, where there is none, and gives it its name when it is whole: nobody sees it
+ *  before, so it needs no journal. Half the time of rebuilding in place.
+ *  @returns false when there was one, or somebody else was faster. @throws SQLite's error, the file system's error */
+export function makeIndexFile(path: string, book: string, lines: Iterable<IndexedLine>): boolean {
+  if (existsSync(path)) return false;
+  const made = `${path}.new-${process.pid}`;
+  rmSync(made, { force: true });
+  try {
+    const database = new DatabaseSync(made);
+    try {
+      database.exec(`PRAGMA journal_mode = OFF; PRAGMA synchronous = OFF; PRAGMA threads = 2;
+        PRAGMA cache_size = ${-CACHE_WHILE_MAKING}`);
+      const prepare = preparing(database);
+      transact(database, () => {
+        makeTables(database, book);
+        addLines(prepare, { book, entries: 0, bytes: 0, last: DIGEST_OF_NOTHING }, lines);
+        database.exec(INDEXES);
+      });
+    } finally {
+      database.close();
+    }
+    // What a deleted index has left beside it would be taken for this one's.
+    for (const suffix of ['-wal', '-shm', '-journal']) rmSync(`${path}${suffix}`, { force: true });
+    linkSync(made, path);
+    return true;
+  } catch (error) {
+    if ((error as NodeJS.ErrnoException).code === 'EEXIST') return false;
+    throw error;
+  } finally {
+    rmSync(made, { force: true });
+  }
+}
+
 /** Opens an index that exists, for reading only; for audits. @throws SQLite's error */
 export function openForAudit(path: string): DatabaseSync {
   return new DatabaseSync(path, { readOnly: true, timeout: PATIENCE_MILLISECONDS });
@@ -170,6 +207,16 @@ export function openForAudit(path: string): DatabaseSync {
 /** Whether a database has the tables of this version. */
 export function isCurrent(database: DatabaseSync): boolean {
   return (database.prepare('PRAGMA user_version').get() as { user_version: number }).user_version === VERSION;
+}
+
+/** Prepares each statement once. */
+function preparing(database: DatabaseSync): Prepare {
+  const statements = new Map<string, StatementSync>();
+  return (sql) => {
+    const statement = statements.get(sql) ?? database.prepare(sql);
+    statements.set(sql, statement);
+    return statement;
+  };
 }
 
 function makeTables(database: DatabaseSync, book: string): void {

@@ -16,6 +16,9 @@ export function formatTime(date: Date): string {
 
 /** Whether a text is a time in exactly the form that entries have. Leap seconds have no such form. */
 export function isTime(text: string): boolean {
+  // Every month has these days; the calendar is asked for the others only.
+  if (/^\d{4}-(0[1-9]|1[0-2])-([01][1-9]|[12]0|2[1-8])T([01]\d|2[0-3]):[0-5]\d:[0-5]\d\.\d{3}Z$/.test(text))
+    return true;
   if (!/^\d{4}-\d\d-\d\dT\d\d:\d\d:\d\d\.\d{3}Z$/.test(text)) return false;
   const milliseconds = Date.parse(text);
   return !Number.isNaN(milliseconds) && new Date(milliseconds).toISOString() === text;

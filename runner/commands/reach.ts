@@ -26,16 +26,23 @@ function reachText({ subject, reached }: ReachDocument, book: string, columns: n
   return `${[...head, ...(reached.length === 0 ? [] : ['', ...reachedRows(reached)])].join('\n')}\n`;
 }
 
-/** A table of what is reached. */
+/** Rows that a person looks at; the JSON document has all. */
+const MOST_SHOWN = 200;
+
+/** A table of what is reached, as far as it is nearest. */
 export function reachedRows(reached: readonly Reached[]): string[] {
-  const rows = reached.map(({ entry, type, name, run, plate }) => [
-    String(entry),
-    type,
-    type === 'run' ? `run ${run}` : (plate ?? name),
-    type === 'plate' ? name : type === 'run' ? `recipe ${name}` : '',
-    type === 'run' || run === null ? '' : `run ${run}`,
-  ]);
-  return alignRows([['entry', 'type', 'name', '', ''], ...rows], [{ right: true }]);
+  const rows = reached
+    .slice(0, MOST_SHOWN)
+    .map(({ entry, type, name, run, plate }) => [
+      String(entry),
+      type,
+      type === 'run' ? `run ${run}` : (plate ?? name),
+      type === 'plate' ? name : type === 'run' ? `recipe ${name}` : '',
+      type === 'run' || run === null ? '' : `run ${run}`,
+    ]);
+  const table = alignRows([['entry', 'type', 'name', '', ''], ...rows], [{ right: true }]);
+  const more = reached.length - rows.length;
+  return more === 0 ? table : [...table, '', `  and ${counted(more, 'more', 'more')}; --json prints all`];
 }
 
 /** `2 runs, 1 plate and no published number`. */

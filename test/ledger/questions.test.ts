@@ -437,6 +437,16 @@ describe('contents', () => {
     ['a later day', { since: '2026-01-03' }, []],
     ['a file', { digest: 'da7ada7a' }, [1]],
     ['several', { kind: 'fit', last: 1 }, [12]],
+    ['a recipe, a kind and a day', { recipe: 'lantern-ring', kind: 'fit', since: '2026-01-02' }, [5, 12]],
+    ['a parameter of any stage', { parameter: 'components=30' }, [11]],
+    ['a parameter of one stage', { parameter: 'basis.components=20' }, [4]],
+    ['a parameter of another stage', { parameter: 'fit.components=20' }, []],
+    ['a quantity', { parameter: 'taper=15 uas' }, [4, 11]],
+    ['a field of a group', { parameter: 'observation.band.frequency=227 GHz' }, [1]],
+    ['a place in a list', { parameter: 'stations.1.name=TWO' }, [1]],
+    ['a seed', { parameter: 'library.seed=11' }, [3]],
+    ['a part of a value', { parameter: 'components=3' }, []],
+    ['a parameter and a stage', { parameter: 'terms.0=amplitudes', stage: 'fit', last: 1 }, [12]],
   ])('are filtered by %s', (_, filter, expected) => {
     expect(numbers(filter)).toEqual(expected);
   });
@@ -450,6 +460,10 @@ describe('contents', () => {
     [{ last: 0 }, '--last: expected a whole number from 1, got 0.'],
     [{ last: Number.NaN }, '--last: expected a whole number from 1, got NaN.'],
     [{ digest: 'xyz' }, '--digest: expected 6 to 64 hexadecimal digits, got xyz.'],
+    [
+      { parameter: 'components' },
+      '--parameter: expected a parameter and its value, such as components=30, got components.',
+    ],
     [{ since: 'yesterday' }, '"yesterday": expected a time such as 2026-03-01T12:00:00Z (RFC 3339).'],
   ])('refuse %o', (filter, message) => {
     expect(() => contents(book, filter)).toThrow(message);

@@ -274,3 +274,19 @@ describe('the call of bag', () => {
 function platePng(bag: string): string {
   return readdirSync(join(bag, 'data', 'plates')).find((name) => name.endsWith('.png')) ?? '';
 }
+
+describe('a bag of something withdrawn', () => {
+  it('holds the withdrawal, says so on its page, and when it is computed again', async () => {
+    const book = openBook(join(folder, 'book'), { by: { name: 'A. Tester' } });
+    book.append({ type: 'withdrawal', withdraws: 1, reason: 'Made from the wrong image.' });
+    book.close();
+    await document(folder, ['bag', '1', '--to', 'withdrawn']);
+    const bag = join(folder, 'withdrawn');
+    expect(readFileSync(join(bag, 'README.txt'), 'utf8')).toContain(
+      'WITHDRAWN\n---------\n\nDo not rely on what depends on these:\n\n  entry 1, by A. Tester: Made from the wrong image.\n',
+    );
+    expect([...openBag(bag).entries.values()].map(({ entry }) => entry.type)).toContain('withdrawal');
+    const { err } = await platebook(temporaryFolder(), ['rerun', bag]);
+    expect(err).toContain('Withdrawn: entry 1. Made from the wrong image.\n');
+  });
+});
