@@ -147,6 +147,8 @@ function noteMakers(
   if ((entry.type !== 'stage' && entry.type !== 'failure') || codes.has(entry.code.digest)) return;
   codes.add(entry.code.digest);
   for (const [path, digest] of Object.entries(entry.code.files ?? {})) note(digest, `code ${path}`);
+  if (entry.code.package !== undefined) note(entry.code.package.digest, 'code package.json');
+  if (entry.code.lock !== undefined) note(entry.code.lock.digest, 'code lock file');
 }
 
 /** Whether a file stands with its size. Bytes that are not their name are reported with the store. */
