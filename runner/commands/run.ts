@@ -1,6 +1,7 @@
 /** `run RECIPE`: executes a recipe and enters it in the book. */
 
-import { basename, isAbsolute, relative, resolve } from 'node:path';
+import { realpathSync } from 'node:fs';
+import { basename, dirname, isAbsolute, join, normalize, relative, resolve } from 'node:path';
 import { type Book, openBook } from '../../ledger/book.ts';
 import type { RunEntry, StoredFile } from '../../ledger/entry.ts';
 import { stageKinds } from '../../stages/kinds.ts';
@@ -62,7 +63,7 @@ async function runRecipe(
   io: Io,
 ): Promise<RunSummary> {
   const recipeFile = book.store.keepBytes(recipe.bytes);
-  const jobs = recipe.stages.map(jobOf);
+  const jobs = recipe.stages.map((stage) => jobOf(stage, dirname(resolve(io.cwd, recipePath))));
   const progress = await makeProgress(io, jobs, options.quiet || options.json);
   const outcomes = await execute(jobs, {
     book,
@@ -80,15 +81,15 @@ async function runRecipe(
   const plates = await publishFigures(request);
   const numbers = publishNumbers(request);
   const run = enterRun(
-    { recipe, recipePath: recordedPath(recipePath, io), recipeFile, outcomes, plates, numbers },
+    { recipe, recipePath: recordedPath(recipePath, io.cwd), recipeFile, outcomes, plates, numbers },
     book,
   );
   const files = numbers.numbers.length === 0 ? [] : layNumbers(request, run.run, numbers.numbers);
   return { run, recipe, outcomes, plates, numbers, files };
 }
 
-/** A stage of a recipe as the executor takes it. */
-function jobOf(stage: DeclaredStage): Job {
+/** A stage of a recipe as the executor takes it. @param folder  the recipe's own */
+function jobOf(stage: DeclaredStage, folder: string): Job {
   const inputs = Object.fromEntries(
     Object.entries(stage.inputs).map(([name, references]) => [
       name,
@@ -96,7 +97,7 @@ function jobOf(stage: DeclaredStage): Job {
         'file' in reference
           ? {
               from: 'file' as const,
-              given: reference.file,
+              given: recordedPath(reference.file, folder),
               path: reference.path,
               keep: reference.keep,
               expected: null,
@@ -137,12 +138,13 @@ function enterRun(facts: RunFacts, book: Book): RunEntry {
   return entry as RunEntry;
 }
 
-/** The recipe's path as given; an absolute one relative to the working directory, or its name alone when it lies
- *  outside: a home directory is nobody's business. */
-function recordedPath(given: string, io: Io): string {
-  if (!isAbsolute(given)) return given;
-  const inside = relative(io.cwd, given);
-  return inside.startsWith('..') ? basename(given) : inside;
+/** A path as given, where it says nothing about a home: an absolute one becomes relative to the folder from which it
+ *  counts, or its name alone when it lies outside of that folder; so does one that climbs out of more than its
+ *  neighbourhood. */
+function recordedPath(given: string, folder: string): string {
+  const inside = isAbsolute(given) ? relative(realpathSync(folder), realpathSync(given)) : normalize(given);
+  const climbs = inside.startsWith('..');
+  return climbs && (isAbsolute(given) || inside.startsWith(join('..', '..'))) ? basename(given) : inside;
 }
 
 /** The document of design section 7. */

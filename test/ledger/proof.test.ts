@@ -5,7 +5,10 @@ import { readFileSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { afterAll, beforeAll, describe, expect, test } from 'vitest';
+import { leafHash } from '../../ledger/merkle.ts';
 import { checkProof, type ProofDocument, prove } from '../../ledger/proof.ts';
+import { signNote } from '../../ledger/signed-note.ts';
+import { readSigningKey } from '../../ledger/signing-key.ts';
 import { fillBook } from './lantern-book.ts';
 import { keyFile, makeBook, temporary } from './make-book.ts';
 
@@ -75,6 +78,15 @@ const spoiled: [string, (proof: ProofDocument) => object][] = [
     ({ inclusion }) => ({ inclusion: inclusion.map((each) => each.replace(/.=$/, '/=')) }),
   ],
 ];
+
+/** A seal that its own signer has given a wrong root: of sixteen entries, and the hash of one. */
+function sealOverOne({ entry, checkpoint }: ProofDocument): Partial<ProofDocument> {
+  const root = leafHash(Buffer.from(entry)).toString('base64');
+  const text = checkpoint.slice(0, checkpoint.indexOf('\n\n') + 1).replace(/\n.{43}=\n/, `\n${root}\n`);
+  const key = readSigningKey(keyFile(directory));
+  return { inclusion: [], checkpoint: signNote(text, text.split('\n')[0] ?? '', key) };
+}
+spoiled.push(['a seal over more entries than the path goes through', sealOverOne]);
 
 describe.each<[string, (file: string, key?: string) => { holds: boolean; said: string }]>([
   [

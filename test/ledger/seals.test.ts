@@ -12,7 +12,7 @@ import type { Json } from '../../ledger/entry.ts';
 import { keptNotes } from '../../ledger/kept-seals.ts';
 import { growPeaks, leafHash, rootOfPeaks } from '../../ledger/merkle.ts';
 import { prove } from '../../ledger/proof.ts';
-import { parseSeal, signSeal } from '../../ledger/seal.ts';
+import { parseSeal, type Seal, signSeal } from '../../ledger/seal.ts';
 import { readKeys } from '../../ledger/seal-keys.ts';
 import { readOrMakeSigningKey, readSigningKey, signingKeyFile } from '../../ledger/signing-key.ts';
 import { keyFile, makeBook, runDraft, stageDraft, temporary } from './make-book.ts';
@@ -349,6 +349,40 @@ describe('a book of the first version', () => {
     writeFileSync(at('seals/latest.json'), `${canonicalJson(seal)}\n`);
     expect(problems()).toEqual([{ entry: 2, what: 'seals/latest is missing', beside: true }]);
   });
+});
+
+test('a seal that is signed and has another root than the ledger is damage', () => {
+  book.append(stageDraft(book));
+  const { note, ...facts } = parseSeal(readFileSync(at('seals/latest'))) as Seal;
+  const root = sha256(note ?? '');
+  const wrong = signSeal(
+    { ...facts, root: Buffer.from(root, 'hex').toString('base64') },
+    readSigningKey(keyFile(directory)),
+  );
+  writeFileSync(at('seals/latest'), wrong.note ?? '');
+  for (const quick of [false, true])
+    expect(auditLedger(book.directory, { quick }).problems).toEqual([
+      { entry: 1, what: `seals/latest says the root ${wrong.root}, the tree has ${facts.root}` },
+    ]);
+  const writer = open();
+  expect(() => writer.append(stageDraft(writer))).toThrow('the tree over its 1 lines has the root');
+  writer.close();
+});
+
+test('a reader leaves what was torn too, where an entry before it was not sealed', () => {
+  book.append(stageDraft(book));
+  const seal = readFileSync(at('seals/latest'));
+  book.append(stageDraft(book, { name: 'late' }));
+  writeFileSync(at('seals/latest'), seal);
+  writeFileSync(at('ledger.jsonl'), '{"half', { flag: 'a' });
+  const ledger = readFileSync(at('ledger.jsonl'));
+  openBook(book.directory, { announce: (text) => said.push(text) }).close();
+  expect(said).toEqual([]);
+  expect(readFileSync(at('ledger.jsonl'))).toEqual(ledger);
+  const writer = open();
+  expect(said).toHaveLength(2);
+  expect(audit(writer)).toMatchObject({ verdict: 'sound', entries: 2, remarks: [] });
+  writer.close();
 });
 
 test('a reader leaves an entry that was not sealed to the next writer', () => {

@@ -126,7 +126,7 @@ describe('the file of hashes', () => {
     const enter = (opened: Book) => opened.append(runDraft(opened, []));
     const path = join(small.directory, 'tree');
     for (let i = 0; i < 5; i += 1) enter(small);
-    for (const content of [null, 'text', Buffer.alloc(32 * 8)]) {
+    for (const content of [null, 'text', Buffer.alloc(32 * 100)]) {
       if (content === null) rmSync(path);
       else writeFileSync(path, content);
       const another = openBook(small.directory, { by: { name: 'A. Keeper' }, key: keyFile(made.directory) });

@@ -241,6 +241,7 @@ describe('a proof', () => {
       expect(checkInclusion(leaf, a, b, path, root(b))).toBe(true);
       for (const wrong of spoiled(path)) expect(checkInclusion(leaf, a, b, wrong, root(b))).toBe(false);
       expect(checkInclusion(leaf, a, b, path, root(b === 8 ? 7 : b + 1))).toBe(false);
+      expect(checkInclusion(leaf, a, 16 * b, path, root(b)), 'a size that needs a longer path').toBe(false);
       expect(checkInclusion(leafHash(Buffer.from('other')), a, b, path, root(b))).toBe(false);
       for (const index of [b, b + 1, -1, 0.5, Number.NaN])
         expect(checkInclusion(leaf, index, b, path, root(b))).toBe(false);
@@ -254,6 +255,11 @@ describe('a proof', () => {
       for (const wrong of spoiled(path)) expect(checkConsistency(a, b, root(a), root(b), wrong)).toBe(false);
       if (a === b) continue;
       expect(checkConsistency(a, b, root(b), root(a), path), 'roots exchanged').toBe(false);
+      expect(checkConsistency(a, b, root(b), root(b), path), 'another first root').toBe(false);
+      expect(checkConsistency(a, b, root(a), root(a), path), 'another second root').toBe(false);
+      expect(checkConsistency(a, 16 * b, root(a), root(b), path), 'a size that needs a longer path').toBe(
+        false,
+      );
       expect(checkConsistency(b, a, root(b), root(a), path), 'second below first').toBe(false);
       expect(checkConsistency(a, b, root(a), root(b), []), 'an empty path').toBe(false);
     }

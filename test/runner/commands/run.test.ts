@@ -159,6 +159,20 @@ describe('run, trace, diff, rerun and audit on the small recipe', () => {
   });
 });
 
+describe('what a run records of paths', () => {
+  it('names no folder above the recipe, whether paths are absolute or climb', async () => {
+    const folder = temporaryFolder();
+    writeFileSync(join(folder, 'data.csv'), 'a,b\n1,2\n');
+    const text = `recipe: paths\nstages:\n  a: { kind: ingest, inputs: { data: { file: ${join(folder, 'data.csv')} } } }\n`;
+    writeFileSync(join(folder, 'paths.yaml'), text);
+    await document(temporaryFolder(), ['run', join(folder, 'paths.yaml'), '--book', join(folder, 'book')]);
+    const ledger = readFileSync(join(folder, 'book', 'ledger.jsonl'), 'utf8');
+    expect(ledger).toContain('"origin":{"file":"data.csv"}');
+    expect(ledger).toContain('"path":"paths.yaml"');
+    expect(ledger).not.toContain(folder);
+  });
+});
+
 describe('run on a recipe that is wrong', () => {
   it('refuses a published number that the output cannot hold, with the near miss', async () => {
     const folder = temporaryFolder();
