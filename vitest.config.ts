@@ -5,6 +5,7 @@ export default defineConfig({
     include: ['test/**/*.test.ts'],
     exclude: ['test/bench/**'],
     globalSetup: ['test/temporary-folder.ts'],
+    setupFiles: ['test/property-seed.ts'],
     testTimeout: 60_000,
     hookTimeout: 120_000,
     maxWorkers: 2,

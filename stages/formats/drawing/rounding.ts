@@ -60,8 +60,9 @@ function placeOf(uncertainty: number): number {
   return Number(uncertainty.toExponential(1).split('e')[1]) - 1;
 }
 
+/** The power of ten of the first digit, of the value as it stands: a decade found after rounding would round twice. */
 function decade(value: number): number {
-  return value === 0 ? 0 : Number(value.toExponential(6).split('e')[1]);
+  return value === 0 ? 0 : Number(value.toExponential().split('e')[1]);
 }
 
 /** A number to the place of 10^place, in units of 10^exponent. */

@@ -87,6 +87,11 @@ describe('rounding', () => {
     expect(roundedNumber(Number.NaN, 1, 2)).toBe('NaN');
   });
 
+  it('rounds once, also just below a power of ten', () => {
+    // 999999.98406945 to six decimals by hand.
+    expect(roundNumber(999999.9840694501, 999999.9840594501, 1000000.9840694501).value).toBe('999999.984069');
+  });
+
   it('stays within half a unit of the last place', () => {
     fc.assert(
       fc.property(
