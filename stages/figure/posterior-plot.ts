@@ -106,16 +106,20 @@ interface Bins {
   readonly counts: readonly number[];
 }
 
-/** Returns counts in equal bins over all values, at least 8 and at most 60. */
+/** Steps below this are no steps: they would underflow. */
+const LEAST_STEP = 1e-300;
+
+/** Returns counts in equal bins over all values, at least 8 and at most 60; one bin when all are the same. */
 export function histogram(values: Float64Array): Bins {
   const [first, lower, upper, last] = quantiles(values, [0, 0.25, 0.75, 1]);
+  const spread = (last - first) / 60 > LEAST_STEP;
   const width = (2 * (upper - lower)) / pow(values.length, 1 / 3);
   const wanted = width > 0 ? Math.ceil((last - first) / width) : 8;
-  const count = last > first ? Math.min(60, Math.max(8, wanted)) : 1;
+  const count = spread ? Math.min(60, Math.max(8, wanted)) : 1;
   const counts = new Array<number>(count).fill(0);
-  const step = last > first ? (last - first) / count : 1;
+  const step = spread ? (last - first) / count : 1;
   for (const value of values) counts[Math.min(count - 1, Math.floor((value - first) / step))] += 1;
-  return { from: last > first ? first : first - step / 2, width: step, counts };
+  return { from: spread ? first : first - step / 2, width: step, counts };
 }
 
 /** The part of the bars between two values, as one path. */
