@@ -15,7 +15,7 @@ import { badDraft, cannotWrite, ledgerDamaged, nobodyWrites } from './problem.ts
 import { digestOfEntry, readEntry } from './reading.ts';
 import { recover, type Sealed, standingOf, takeUp } from './recovery.ts';
 import { readSeal, type Seal, type SealFacts, sealPath } from './seal.ts';
-import { replaceSeal } from './sealing.ts';
+import { replaceSeal, settle } from './sealing.ts';
 import type { Store } from './store.ts';
 import { formatTime } from './time.ts';
 import { askTree, type GrowingTree, growTree, rootOf, treeUnder } from './tree.ts';
@@ -55,6 +55,7 @@ export function appendEntry(writer: Writer, draft: Draft): { entry: Entry; diges
 function sealedState({ directory, announce, own, key, now }: Writer): Sealed {
   const standing = standingOf(directory, own?.note ?? null);
   if (standing.state === 'damaged') throw ledgerDamaged(ledgerPath(directory), undefined, standing.what);
+  if (own === null) settle(directory);
   if (standing.state === 'sealed' && standing.seal.note !== null) return standing;
   const sealing = { key: key(), time: formatTime(now()) };
   const sealed = standing.state === 'sealed' ? standing : recover(directory, standing, announce, sealing);

@@ -5,9 +5,9 @@ import { existsSync } from 'node:fs';
 import { join } from 'node:path';
 import type { DatabaseSync } from 'node:sqlite';
 import type { LedgerLine, Problem } from './audit-ledger.ts';
-import { isCurrent, LONGEST_VALUE, openForAudit } from './index.ts';
-import { rowsOf, settingsOf, TABLES, type Table, valuesOf } from './index-rows.ts';
-import { knownLinks } from './known-links.ts';
+import { isCurrent, openForAudit } from './index.ts';
+import { LONGEST_VALUE, rowsOf, settingsOf, TABLES, type Table, valuesOf } from './index-rows.ts';
+import { bundleWriter, IN_BUNDLE } from './link-bundles.ts';
 
 const LIES = 'index.sqlite says something else of it than the ledger; remove index.sqlite, it is made again';
 
@@ -46,7 +46,7 @@ function auditing(database: DatabaseSync): IndexAudit {
   const cursors = TABLES.map((table) => cursorOf(database, table, reach, blamed));
   const hasSetting = database.prepare('SELECT 1 FROM settings WHERE name = ? AND value = ? AND settings = ?');
   const known = new Set<number>();
-  const links = knownLinks(1, () => []);
+  const bundles = bundlesOf(database, blamed);
   let count = 0;
   let broken: string | null = null;
 
@@ -55,8 +55,9 @@ function auditing(database: DatabaseSync): IndexAudit {
     // Where a line was left out, the ledger is damaged, and what is found here does not count.
     if (number !== count + 1) return;
     count = number;
-    const expected = rowsOf(entry, { position: offset, length, digest }, links);
-    for (const [i, rows] of expected.entries()) cursors[i]?.compare(number, rows);
+    const { rows, links } = rowsOf(entry, { position: offset, length, digest });
+    for (const [i, expected] of rows.entries()) cursors[i]?.compare(number, expected);
+    bundles.compare(links);
     const settings = settingsOf(entry);
     if (settings === null || known.has(settings)) return;
     known.add(settings);
@@ -79,6 +80,7 @@ function auditing(database: DatabaseSync): IndexAudit {
     finish() {
       guarded(() => {
         for (const cursor of cursors) cursor.rest(Math.min(count, reach));
+        bundles.rest(count);
       });
       database.close();
       if (broken !== null) return remarking(`cannot be read (${broken})`).finish();
@@ -91,11 +93,11 @@ function auditing(database: DatabaseSync): IndexAudit {
 /** Goes through a table in the order in which an honest one was written. */
 function cursorOf(
   database: DatabaseSync,
-  { name, columns, entry }: Table,
+  { name, columns, entry, order }: Table,
   reach: number,
   blamed: Set<number>,
 ) {
-  const sql = `SELECT ${entry} AS of_entry, ${columns.join(', ')} FROM ${name} ORDER BY rowid`;
+  const sql = `SELECT ${entry} AS of_entry, ${columns.join(', ')} FROM ${name} ORDER BY ${order}`;
   const statement = database.prepare(sql);
   statement.setReturnArrays(true);
   const rows = statement.iterate() as unknown as Iterator<unknown[]>;
@@ -124,6 +126,29 @@ function cursorOf(
     /** Takes what is left, which nothing in the ledger stands behind. */
     rest(last: number): void {
       for (; row !== null; advance()) if (numberOf(row) <= last) blamed.add(numberOf(row));
+    },
+  };
+}
+
+/** Holds each bundle against the links of its entries, when all of them have come. */
+function bundlesOf(database: DatabaseSync, blamed: Set<number>) {
+  const statement = database.prepare('SELECT links FROM bundles WHERE bundle = ?');
+  const compare = (bundle: number, links: Uint8Array) => {
+    const row = statement.get(bundle) as { links: Uint8Array } | undefined;
+    // Entries that were appended meanwhile stand behind those in question.
+    if (row === undefined || !Buffer.from(links).equals(row.links.subarray(0, links.length)))
+      blamed.add(bundle * IN_BUNDLE + 1);
+  };
+  const writer = bundleWriter(0, null, compare);
+  return {
+    compare: (links: readonly number[]) => writer.add(links),
+    /** Takes the last bundle, and what is left. */
+    rest(count: number): void {
+      if (count % IN_BUNDLE !== 0) writer.end();
+      const { entries } = database.prepare('SELECT entries FROM extent').get() as { entries: number };
+      const beyond = 'SELECT count(*) AS count FROM bundles WHERE bundle * ? >= ?';
+      const { count: extra } = database.prepare(beyond).get(IN_BUNDLE, count) as { count: number };
+      if (entries === count && extra > 0) blamed.add(count);
     },
   };
 }

@@ -47,7 +47,8 @@ import { formatTime } from './time.ts';
 import { openTurns, type Turns } from './turns.ts';
 import { withdrawalsUpstream } from './withdrawal.ts';
 
-const STAGES_OF_KEY = 'SELECT number FROM entries WHERE key = ? ORDER BY number DESC';
+const STAGES_OF_KEY =
+  'SELECT number FROM entries WHERE substr(key, 1, 16) = substr(?1, 1, 16) AND key = ?1 ORDER BY number DESC';
 const RUN = 'SELECT number FROM entries WHERE run = ?';
 const LAST_RUN = 'SELECT max(run) AS run FROM entries';
 

@@ -1,8 +1,8 @@
 /** The book's table of contents: entries, filtered, the latest page. */
 
 import type { Book } from './book.ts';
-import { type Index, LONGEST_VALUE } from './index.ts';
-import { type Value, valuesOf } from './index-rows.ts';
+import type { Index } from './index.ts';
+import { beginsWith, LONGEST_VALUE, type Value, valuesOf } from './index-rows.ts';
 import { badCall } from './problem.ts';
 import { timeBound } from './time.ts';
 import type { TracedEntry } from './trace.ts';
@@ -150,16 +150,16 @@ function conditionsOf(filter: ContentsFilter): Condition[] {
   // Whatever continues the bound counts: a day has all its hours.
   if (until !== undefined) add('time < ?', `${timeBound(until)}\u007f`);
   if (digest !== undefined) {
-    const [from, to] = [digest.toLowerCase(), `${digest.toLowerCase()}g`];
-    if (!/^[0-9a-f]{6,64}$/.test(from))
+    const digits = digest.toLowerCase();
+    if (!/^[0-9a-f]{6,64}$/.test(digits))
       throw badCall(`--digest: expected 6 to 64 hexadecimal digits, got ${digest}.`);
+    const named = beginsWith(digits);
     add(
-      `number IN (SELECT entry FROM files WHERE digest >= ? AND digest < ?
-         UNION SELECT number FROM entries WHERE digest >= ? AND digest < ?)`,
-      from,
-      to,
-      from,
-      to,
+      `number IN (SELECT entry FROM files WHERE ${named.sql}
+         UNION SELECT number FROM entries WHERE substr(digest, 1, 16) BETWEEN ? AND ?)`,
+      ...named.values,
+      digits.slice(0, 16),
+      digits.slice(0, 16).padEnd(16, 'f'),
     );
   }
   const wanted = parameterOf(filter);

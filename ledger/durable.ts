@@ -6,6 +6,7 @@ import {
   copyFileSync,
   fchmodSync,
   fsyncSync,
+  mkdirSync,
   openSync,
   renameSync,
   rmSync,
@@ -45,6 +46,30 @@ export function writeAll(descriptor: number, bytes: Uint8Array): void {
 /** Copies a file, by reference where the file system can. */
 export function copyFile(from: string, to: string): void {
   copyFileSync(from, to, constants.COPYFILE_FICLONE);
+}
+
+/** Makes a directory and those above it that are missing, so that their names last, whoever made them. */
+export function makeDirectoryDurably(directory: string, mode = 0o777): void {
+  mkdirSync(directory, { recursive: true, mode });
+  syncDirectory(dirname(directory));
+  for (let at = dirname(directory); at !== dirname(at); at = dirname(at)) {
+    try {
+      syncDirectory(dirname(at));
+    } catch {
+      // A directory that is closed to us: what lies in it, we did not make.
+      return;
+    }
+  }
+}
+
+/** Makes a file's bytes last, whoever wrote them. */
+export function syncFile(path: string): void {
+  const descriptor = openSync(path, 'r+');
+  try {
+    fsyncSync(descriptor);
+  } finally {
+    closeSync(descriptor);
+  }
 }
 
 /** Makes the names in a directory last. */

@@ -4,7 +4,7 @@ import type { Book } from './book.ts';
 import type { PlateEntry, RunEntry } from './entry.ts';
 import { withdrawalsOf } from './withdrawal.ts';
 
-const PLATES = 'SELECT entry FROM plates WHERE plate = ? AND entry IS NOT NULL ORDER BY entry DESC';
+const PLATES = 'SELECT entry FROM plates WHERE plate = ? ORDER BY entry DESC';
 const RUNS =
   "SELECT source FROM links JOIN entries ON number = source WHERE target = ? AND type = 'run' ORDER BY source DESC";
 

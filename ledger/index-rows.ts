@@ -3,11 +3,13 @@
 
 import { sha256 } from './digest.ts';
 import type { Entry, Json } from './entry.ts';
-import { type KnownLinks, lineageDistances } from './known-links.ts';
-import { plateNumbersOf } from './plate-number.ts';
+import { linksOf } from './link-bundles.ts';
 import { referencesOf } from './references.ts';
 
 export type Value = string | number | null;
+
+/** Longer values of parameters are known by their beginning. */
+export const LONGEST_VALUE = 200;
 
 /** Where an entry's line lies. */
 export interface Place {
@@ -23,9 +25,11 @@ export interface Table {
   readonly name: string;
   readonly columns: readonly string[];
   readonly entry: string;
+  /** By what rows come in the order of their entries. */
+  readonly order: string;
 }
 
-/** In the order in which rowsOf gives them. Rows lie in the order of their entries. */
+/** In the order in which rowsOf gives them. */
 export const TABLES = [
   {
     name: 'entries',
@@ -43,55 +47,66 @@ export const TABLES = [
       'settings',
     ],
     entry: 'number',
+    order: 'number',
   },
-  { name: 'files', columns: ['digest', 'bytes', 'role', 'name', 'entry'], entry: 'entry' },
-  { name: 'links', columns: ['source', 'target'], entry: 'source' },
-  { name: 'plates', columns: ['plate', 'entry', 'drawn', 'output', 'name'], entry: 'coalesce(entry, drawn)' },
-  { name: 'numbers', columns: ['name', 'run', 'place', 'entry', 'output', 'publisher'], entry: 'publisher' },
+  { name: 'files', columns: ['mark', 'rest', 'role', 'name', 'entry'], entry: 'entry', order: 'rowid' },
+  { name: 'links', columns: ['source', 'target'], entry: 'source', order: 'source, target' },
+  { name: 'plates', columns: ['plate', 'entry', 'drawn', 'output', 'name'], entry: 'entry', order: 'rowid' },
   {
-    name: 'lineages',
-    columns: ['ancestor', 'dependant', 'distance', 'numbers'],
-    entry: 'dependant',
+    name: 'numbers',
+    columns: ['name', 'run', 'place', 'entry', 'output', 'publisher'],
+    entry: 'publisher',
+    order: 'rowid',
   },
-  { name: 'withdrawals', columns: ['withdraws', 'entry'], entry: 'entry' },
-  { name: 'countersignatures', columns: ['signs', 'entry'], entry: 'entry' },
+  { name: 'withdrawals', columns: ['withdraws', 'entry'], entry: 'entry', order: 'rowid' },
+  { name: 'countersignatures', columns: ['signs', 'entry'], entry: 'entry', order: 'rowid' },
 ] as const satisfies readonly Table[];
 
-/** The rows of an entry in each of TABLES, each with its columns in order.
- *  @param links  of every entry before; the entry's own are added */
-export function rowsOf(entry: Entry, place: Place, links: KnownLinks): Value[][][] {
-  const { number } = entry;
-  const { files, entries } = referencesOf(entry);
-  const targets = [...new Set(entries.map((named) => named.number))].sort((a, b) => a - b);
-  links.add(targets);
-  return [
-    [entryRow(entry, place)],
-    files.map(({ digest, bytes, role, name }) => [digest, bytes, role, name, number]),
-    targets.map((target) => [number, target]),
-    plateRows(entry, place.digest),
-    entry.type !== 'run'
-      ? []
-      : entry.numbers.map(({ name, ...of }, i) => [name, entry.run, i, of.entry, of.output, number]),
-    lineageRows(entry, targets, links),
-    entry.type === 'withdrawal' ? [[entry.withdraws, number]] : [],
-    entry.type === 'countersignature' ? [[entry.signs, number]] : [],
-  ];
+/** Digits of a digest in one number: 52 bits are exact. */
+const DIGITS = 13;
+
+/** What the index has of a file's digest, two numbers: the first 13 digits, by which it is found, and the next 13. Of
+ *  files that have both in common there are none but by intent, and what is found is held against the entry. */
+export function markOf(digest: string): number {
+  return Number.parseInt(digest.slice(0, DIGITS), 16);
 }
 
-/** Of a run or a plate, everything that it depends on, with the length of the shortest way, and of a run the same for
- *  each published number, `3,,2`: empty where the number does not depend on it. So what something reaches is found
- *  without going from entry to entry. */
-function lineageRows(entry: Entry, targets: readonly number[], links: KnownLinks): Value[][] {
-  if (entry.type !== 'run' && entry.type !== 'plate') return [];
-  const distances = lineageDistances(targets, 1, links);
-  const holders = entry.type === 'run' ? entry.numbers.map((published) => published.entry) : [];
-  const fromHolder = new Map(
-    [...new Set(holders)].map((holder) => [holder, lineageDistances([holder], 1, links)]),
-  );
-  return [...distances].map(([ancestor, distance]) => {
-    const each = holders.map((holder) => fromHolder.get(holder)?.get(ancestor) ?? '');
-    return [ancestor, entry.number, distance, each.some((far) => far !== '') ? each.join() : null];
-  });
+export function restOf(digest: string): number {
+  return Number.parseInt(digest.slice(DIGITS, 2 * DIGITS), 16);
+}
+
+/** The condition on `files` that a digest begins with some digits, and its values. */
+export function beginsWith(digits: string): { sql: string; values: Value[] } {
+  const [from, to] = [digits.padEnd(2 * DIGITS, '0'), digits.padEnd(2 * DIGITS, 'f')];
+  return {
+    sql: 'mark BETWEEN ? AND ? AND rest BETWEEN ? AND ?',
+    values: [markOf(from), markOf(to), restOf(from), restOf(to)],
+  };
+}
+
+/** The rows of an entry in each of TABLES, each with its columns in order; and what its bundle holds of it. */
+export function rowsOf(entry: Entry, place: Place): { rows: Value[][][]; links: number[] } {
+  const { files, entries } = referencesOf(entry);
+  const targets = [...new Set(entries.map(({ number }) => number))].sort((a, b) => a - b);
+  const rows: Value[][][] = [
+    [entryRow(entry, place)],
+    files.map(({ digest, role, name }) => [markOf(digest), restOf(digest), role, name, entry.number]),
+    targets.map((target) => [entry.number, target]),
+    entry.type === 'plate' ? [[entry.plate, entry.number, entry.drawn, entry.output, entry.name]] : [],
+    entry.type !== 'run'
+      ? []
+      : entry.numbers.map((number, i) => [
+          number.name,
+          entry.run,
+          i,
+          number.entry,
+          number.output,
+          entry.number,
+        ]),
+    entry.type === 'withdrawal' ? [[entry.withdraws, entry.number]] : [],
+    entry.type === 'countersignature' ? [[entry.signs, entry.number]] : [],
+  ];
+  return { rows, links: linksOf(entry, targets) };
 }
 
 /** A number for a stage's parameters, the same for the same parameters: the first 52 bits of their digest. Two sets may
@@ -100,7 +115,7 @@ export function settingsOf(entry: Entry): number | null {
   if (entry.type !== 'stage' && entry.type !== 'failure') return null;
   // Read from a line, the keys are in canonical order.
   const text = `${entry.seed} ${JSON.stringify(entry.parameters)}`;
-  return Number.parseInt(sha256(text).slice(0, 13), 16);
+  return markOf(sha256(text));
 }
 
 /** Every value among a stage's parameters, by dotted path: `terms.0`, `field`, a quantity in one piece. */
@@ -123,14 +138,6 @@ function entryRow(entry: Entry, { position, length, digest }: Place): Value[] {
   const { name, kind, key, run } = columnsOf(entry);
   const { number, type, time } = entry;
   return [number, position, length, digest, type, time, name, kind, key, run, settingsOf(entry)];
-}
-
-/** The plate of a plate entry, or the numbers that the figures of a stage would have. */
-function plateRows(entry: Entry, digest: string): Value[][] {
-  if (entry.type === 'plate') return [[entry.plate, entry.number, entry.drawn, entry.output, entry.name]];
-  if (entry.type !== 'stage') return [];
-  const plates = plateNumbersOf(entry.number, digest, entry.outputs);
-  return [...plates].map(([output, plate]) => [plate, null, entry.number, output, null]);
 }
 
 function columnsOf(entry: Entry): {

@@ -6,31 +6,29 @@
  *  settingsOf gives a whole set of them: sets repeat from run to run, so it grows much slower than the ledger. */
 
 import { existsSync, linkSync, rmSync } from 'node:fs';
+import { endianness } from 'node:os';
 import { DatabaseSync, type StatementSync } from 'node:sqlite';
 import { DIGEST_OF_NOTHING } from './digest.ts';
-import type { Entry } from './entry.ts';
-import { rowsOf, settingsOf, TABLES, type Value, valuesOf } from './index-rows.ts';
-import { knownLinks } from './known-links.ts';
+import { addLines, type IndexedLine, type Prepare } from './index-filling.ts';
+import { TABLES, type Value } from './index-rows.ts';
 
-/** Changes when the tables do; an index of another version is made again. */
-const VERSION = 2;
+/** Changes when the tables do; an index of another version, or of a machine with another order of bytes, is made again. */
+const VERSION = endianness() === 'LE' ? 3 : 0x10003;
 /** How long a write may wait for another process's; both last a millisecond. */
 const PATIENCE_MILLISECONDS = 500;
 /** Pages held in memory, kB: SQLite's own default, and what sorting millions of rows asks for. */
 const CACHE = 2_000;
 const CACHE_WHILE_MAKING = 64_000;
-/** Longer values of parameters are known by their beginning. */
-export const LONGEST_VALUE = 200;
 
 const SCHEMA = `
   CREATE TABLE entries(number INTEGER PRIMARY KEY, position INTEGER, length INTEGER, digest TEXT, type TEXT, time TEXT,
     name TEXT, kind TEXT, key TEXT, run INTEGER, settings INTEGER);
-  CREATE TABLE files(digest TEXT, bytes INTEGER, role TEXT, name TEXT, entry INTEGER);
-  CREATE TABLE links(source INTEGER, target INTEGER);
+  CREATE TABLE files(mark INTEGER, rest INTEGER, role TEXT, name TEXT, entry INTEGER);
+  CREATE TABLE links(source INTEGER, target INTEGER, PRIMARY KEY(source, target)) WITHOUT ROWID;
+  CREATE TABLE bundles(bundle INTEGER PRIMARY KEY, links BLOB);
   CREATE TABLE plates(plate TEXT, entry INTEGER, drawn INTEGER, output TEXT, name TEXT);
   CREATE TABLE numbers(name TEXT, run INTEGER, place INTEGER, entry INTEGER, output TEXT,
     publisher INTEGER);
-  CREATE TABLE lineages(ancestor INTEGER, dependant INTEGER, distance INTEGER, numbers TEXT);
   CREATE TABLE withdrawals(withdraws INTEGER, entry INTEGER);
   CREATE TABLE countersignatures(signs INTEGER, entry INTEGER);
   CREATE TABLE settings(name TEXT, value TEXT, settings INTEGER, PRIMARY KEY(name, value, settings)) WITHOUT ROWID;
@@ -42,25 +40,23 @@ const SCHEMA = `
 /** Made after a new index has been filled: sorting once is faster than keeping them sorted. Those of entries end with
  *  the number, by which the latest are found first; those of links hold both columns. */
 const INDEXES = `
-  CREATE INDEX entries_key ON entries(key, number) WHERE key IS NOT NULL;
+  CREATE INDEX entries_key ON entries(substr(key, 1, 16), number) WHERE key IS NOT NULL;
   CREATE INDEX entries_run ON entries(run) WHERE run IS NOT NULL;
-  CREATE INDEX entries_digest ON entries(digest);
+  CREATE INDEX entries_digest ON entries(substr(digest, 1, 16));
   CREATE INDEX entries_type ON entries(type, number);
   CREATE INDEX entries_time ON entries(time, number);
   CREATE INDEX entries_kind ON entries(kind, number) WHERE kind IS NOT NULL;
   CREATE INDEX entries_stage ON entries(name, number) WHERE kind IS NOT NULL;
   CREATE INDEX entries_recipe ON entries(name, number) WHERE run IS NOT NULL;
   CREATE INDEX entries_settings ON entries(settings, number) WHERE settings IS NOT NULL;
-  CREATE INDEX files_digest ON files(digest, entry);
-  CREATE INDEX links_source ON links(source, target);
+  CREATE INDEX files_mark ON files(mark, entry);
   CREATE INDEX links_target ON links(target, source);
   CREATE INDEX plates_plate ON plates(plate);
-  CREATE INDEX plates_entry ON plates(entry) WHERE entry IS NOT NULL;
+  CREATE INDEX plates_entry ON plates(entry);
   CREATE INDEX plates_drawn ON plates(drawn);
   CREATE INDEX numbers_name ON numbers(name, run);
   CREATE INDEX numbers_entry ON numbers(entry);
   CREATE INDEX numbers_publisher ON numbers(publisher);
-  CREATE INDEX lineages_ancestor ON lineages(ancestor, dependant, distance, numbers);
   CREATE INDEX withdrawals_withdraws ON withdrawals(withdraws, entry);
   CREATE INDEX countersignatures_signs ON countersignatures(signs, entry);
 `;
@@ -84,8 +80,6 @@ export interface Row {
 }
 
 export interface FileRow {
-  readonly digest: string;
-  readonly bytes: number;
   readonly role: string;
   readonly name: string;
   readonly entry: number;
@@ -93,19 +87,11 @@ export interface FileRow {
 
 export interface PlateRow {
   readonly plate: string;
-  /** The plate entry; null for a figure that no run has published. */
-  readonly entry: number | null;
+  readonly entry: number;
   readonly drawn: number;
   readonly output: string;
-  /** As published; null with `entry`. */
-  readonly name: string | null;
-}
-
-export interface IndexedLine {
-  readonly entry: Entry;
-  readonly digest: string;
-  /** Bytes, without the line feed. */
-  readonly length: number;
+  /** As published. */
+  readonly name: string;
 }
 
 export interface Index {
@@ -117,8 +103,6 @@ export interface Index {
   /** Rows of a question in SQL; statements are prepared once. */
   all<T>(sql: string, ...values: Value[]): T[];
   get<T>(sql: string, ...values: Value[]): T | undefined;
-  /** The same as `all`, each row a list of its columns: for many rows, in less time. */
-  lists(sql: string, ...values: Value[]): Value[][];
   remember(path: string, stamp: string, digest: string, bytes: number): void;
   close(): void;
 }
@@ -145,12 +129,6 @@ export function openIndex(path: string, book: string): Index {
     },
     all: (sql, ...values) => prepare(sql).all(...values) as never,
     get: (sql, ...values) => prepare(sql).get(...values) as never,
-    lists(sql, ...values) {
-      // A statement of its own: the other form of rows belongs to `all`.
-      const statement = prepare(`${sql} `);
-      statement.setReturnArrays(true);
-      return statement.all(...values) as unknown as Value[][];
-    },
     remember(at, stamp, digest, bytes) {
       prepare('INSERT OR REPLACE INTO remembered VALUES (?, ?, ?, ?)').run(at, stamp, digest, bytes);
     },
@@ -220,7 +198,7 @@ function preparing(database: DatabaseSync): Prepare {
 }
 
 function makeTables(database: DatabaseSync, book: string): void {
-  for (const table of [...TABLES.map(({ name }) => name), 'settings', 'extent'])
+  for (const table of [...TABLES.map(({ name }) => name), 'bundles', 'settings', 'extent'])
     database.exec(`DROP TABLE IF EXISTS ${table}`);
   database.exec(SCHEMA);
   database.prepare('INSERT INTO extent VALUES (?, 0, 0, ?)').run(book, DIGEST_OF_NOTHING);
@@ -235,74 +213,4 @@ function transact(database: DatabaseSync, work: () => void): void {
     database.exec('ROLLBACK');
     throw error;
   }
-}
-
-type Prepare = (sql: string) => StatementSync;
-
-function addLines(prepare: Prepare, extent: Extent, lines: Iterable<IndexedLine>): void {
-  let { entries, bytes, last } = extent;
-  const links = knownLinks(entries + 1, (number) =>
-    (prepare(TARGETS).all(number) as { target: number }[]).map(({ target }) => target),
-  );
-  const tables = TABLES.map((table) => rowWriter(prepare, `INSERT INTO ${table.name}`, table.columns.length));
-  const settings = settingsWriter(prepare);
-  for (const { entry, digest, length } of lines) {
-    if (entry.number !== entries + 1 || entry.before !== last) {
-      // Another process added it in the meantime.
-      if (entry.number <= entries) continue;
-      throw new Error(`the index was offered entry ${entry.number} after ${entries}`);
-    }
-    for (const [i, rows] of rowsOf(entry, { position: bytes, length, digest }, links).entries()) {
-      for (const row of rows) tables[i]?.add(row);
-    }
-    settings.add(entry);
-    entries += 1;
-    bytes += length + 1;
-    last = digest;
-  }
-  for (const table of [...tables, settings]) table.end();
-  prepare('UPDATE extent SET entries = ?, bytes = ?, last = ?').run(entries, bytes, last);
-}
-
-/** Rows that one statement writes where there are many: most of the time of a statement is in calling it. */
-const ROWS_AT_ONCE = 40;
-const TARGETS = 'SELECT target FROM links WHERE source = ?';
-const HAS_SETTING = 'SELECT 1 FROM settings WHERE name = ? AND value = ? AND settings = ?';
-
-function rowWriter(prepare: Prepare, insert: string, width: number) {
-  const marks = `(${Array.from({ length: width }, () => '?').join()})`;
-  const many = `${insert} VALUES ${Array.from({ length: ROWS_AT_ONCE }, () => marks).join()}`;
-  let values: Value[] = [];
-  return {
-    add(row: readonly Value[]): void {
-      for (const value of row) values.push(value);
-      if (values.length < ROWS_AT_ONCE * width) return;
-      prepare(many).run(...values);
-      values = [];
-    },
-    end(): void {
-      for (let at = 0; at < values.length; at += width)
-        prepare(`${insert} VALUES ${marks}`).run(...values.slice(at, at + width));
-      values = [];
-    },
-  };
-}
-
-function settingsWriter(prepare: Prepare) {
-  const writer = rowWriter(prepare, 'INSERT OR IGNORE INTO settings', 3);
-  const known = new Set<number>();
-  return {
-    add(entry: Entry): void {
-      const settings = settingsOf(entry);
-      if (settings === null || known.has(settings)) return;
-      known.add(settings);
-      for (const [i, [name, value]] of valuesOf(entry).entries()) {
-        const row = [name, value.slice(0, LONGEST_VALUE), settings] as const;
-        // All values of a set come at once: where the first stands, so do the others.
-        if (i === 0 && prepare(HAS_SETTING).get(...row) !== undefined) return;
-        writer.add(row);
-      }
-    },
-    end: writer.end,
-  };
 }

@@ -39,8 +39,9 @@ export function keepSeal(directory: string, { note }: Seal, announce: Announce):
         'put right',
       );
     }
-    if (tail.subarray(0, whole).subarray(-bytes.length).equals(bytes)) return;
-    writeAll(descriptor, bytes);
+    const stands = tail.subarray(0, whole).subarray(-bytes.length).equals(bytes);
+    if (!stands) writeAll(descriptor, bytes);
+    // Also where it stands: whoever wrote it may have died before this.
     fsyncSync(descriptor);
   } finally {
     closeSync(descriptor);

@@ -2,9 +2,9 @@
 
 import type { KeyObject } from 'node:crypto';
 import { closeSync, existsSync, fsyncSync, mkdirSync, openSync, readdirSync, statSync } from 'node:fs';
-import { basename, dirname, join } from 'node:path';
+import { basename, join } from 'node:path';
 import type { Announce } from './book.ts';
-import { syncDirectory } from './durable.ts';
+import { makeDirectoryDurably, syncDirectory } from './durable.ts';
 import { ledgerPath, linesOf, parseEntry, withFile } from './ledger-file.ts';
 import { badBookName, cannotWrite, ledgerDamaged, noBook, notADirectory, otherDirectory } from './problem.ts';
 import { emptySeal, hasSeal, readSeal } from './seal.ts';
@@ -13,6 +13,9 @@ import type { Turns } from './turns.ts';
 
 /** What a directory may hold in which starting a book was interrupted. */
 const OURS = new Set([
+  'index.sqlite',
+  'index.sqlite-shm',
+  'index.sqlite-wal',
   'ledger.jsonl',
   'logs',
   'seals',
@@ -56,7 +59,7 @@ export function startBook(directory: string, start: Start, turns: Turns): void {
   if (!isBookName(start.name)) throw badBookName(start.name);
   start.key();
   try {
-    mkdirSync(directory, { recursive: true });
+    makeDirectoryDurably(directory);
   } catch (cause) {
     throw cannotWrite(directory, cause);
   }
@@ -101,7 +104,6 @@ function makeLayout(directory: string, { name, key, time, announce }: Start): vo
   fsyncSync(descriptor);
   closeSync(descriptor);
   syncDirectory(directory);
-  syncDirectory(dirname(directory));
   replaceSeal(directory, emptySeal(name, time), key(), announce, null);
 }
 

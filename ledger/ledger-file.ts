@@ -5,7 +5,7 @@ import { join } from 'node:path';
 import { parseCanonical } from './canonical.ts';
 import type { Entry } from './entry.ts';
 import { lackOf } from './entry-shape.ts';
-import { LedgerProblem } from './problem.ts';
+import { LedgerProblem, notJson } from './problem.ts';
 
 const LINE_FEED = 0x0a;
 const BLOCK = 1 << 20;
@@ -40,32 +40,41 @@ export function sizeOf(descriptor: number): number {
 
 /** Up to `length` bytes from `offset`; fewer where the file ends. */
 export function readRange(descriptor: number, offset: number, length: number): Buffer {
-  const bytes = Buffer.alloc(length);
-  let done = 0;
-  while (done < length) {
-    const count = readSync(descriptor, bytes, done, length - done, offset + done);
-    if (count === 0) break;
-    done += count;
-  }
-  return bytes.subarray(0, done);
+  const bytes = Buffer.allocUnsafe(length);
+  return bytes.subarray(0, readInto(descriptor, bytes, 0, offset));
 }
 
-/** The lines between two bytes, in order. Memory: the longest line and one block. */
+/** Fills a buffer from `start` on with what stands from `offset` on. @returns how many bytes there were */
+function readInto(descriptor: number, buffer: Buffer, start: number, offset: number): number {
+  let end = start;
+  while (end < buffer.length) {
+    const count = readSync(descriptor, buffer, end, buffer.length - end, offset + end - start);
+    if (count === 0) break;
+    end += count;
+  }
+  return end - start;
+}
+
+/** The lines between two bytes, in order. Memory: the longest line and one block. The bytes of a line stay as they are
+ *  when the next is read. */
 export function* linesOf(descriptor: number, from: number, to: number): Generator<Line> {
   let offset = from;
   let rest: Buffer = Buffer.alloc(0);
   for (let at = from; at < to; ) {
-    const block = readRange(descriptor, at, Math.min(BLOCK, to - at));
-    if (block.length === 0) break;
-    at += block.length;
-    rest = rest.length === 0 ? block : Buffer.concat([rest, block]);
+    // What a line has left over from the block before goes to the beginning of the next.
+    const block = Buffer.allocUnsafeSlow(rest.length + Math.min(BLOCK, to - at));
+    rest.copy(block);
+    const count = readInto(descriptor, block, rest.length, at);
+    if (count === 0) break;
+    at += count;
+    const bytes = block.subarray(0, rest.length + count);
     let start = 0;
-    for (let end = rest.indexOf(LINE_FEED); end >= 0; end = rest.indexOf(LINE_FEED, start)) {
-      yield { offset, bytes: rest.subarray(start, end), whole: true };
+    for (let end = bytes.indexOf(LINE_FEED, rest.length); end >= 0; end = bytes.indexOf(LINE_FEED, start)) {
+      yield { offset, bytes: bytes.subarray(start, end), whole: true };
       offset += end + 1 - start;
       start = end + 1;
     }
-    rest = rest.subarray(start);
+    rest = bytes.subarray(start);
   }
   if (rest.length > 0) yield { offset, bytes: rest, whole: false };
 }
@@ -87,17 +96,23 @@ export function lineBefore(descriptor: number, end: number): Line | null {
 /** The entry in a line.
  *  @throws LedgerProblem 'not-canonical' when it is no canonical JSON or lacks what its type must have. */
 export function parseEntry(bytes: Uint8Array): Entry {
-  const entry: unknown = parseCanonical(bytes, 'entry');
-  const lacks = lackOf(entry);
-  if (lacks !== null) throw new LedgerProblem('not-canonical', `entry: ${lacks}.`);
-  return entry as Entry;
+  return requireEntry(parseCanonical(bytes, 'entry'));
 }
 
 /** The entry in a line whose digest something else vouches for, so that its spelling need not be looked at: it was, when
- *  the line was written. A third of the time. @throws SyntaxError, LedgerProblem 'not-canonical'. */
+ *  the line was written. A third of the time. @throws LedgerProblem 'not-canonical'. */
 export function parseTrusted(bytes: Buffer): Entry {
-  const entry: unknown = JSON.parse(bytes.toString('utf8'));
-  const lacks = lackOf(entry);
+  let entry: unknown;
+  try {
+    entry = JSON.parse(bytes.toString('utf8'));
+  } catch (cause) {
+    throw notJson('entry', cause);
+  }
+  return requireEntry(entry);
+}
+
+function requireEntry(value: unknown): Entry {
+  const lacks = lackOf(value);
   if (lacks !== null) throw new LedgerProblem('not-canonical', `entry: ${lacks}.`);
-  return entry as Entry;
+  return value as Entry;
 }

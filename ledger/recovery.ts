@@ -20,7 +20,7 @@ import { ledgerPath, lineBefore, linesOf, parseEntry, readRange, sizeOf, withFil
 import { ledgerDamaged } from './problem.ts';
 import { readSeal, type Seal, type SealFacts } from './seal.ts';
 import { readKeys, signatureFault } from './seal-keys.ts';
-import { firstVersionIsPast, replaceSeal } from './sealing.ts';
+import { replaceFirstSeal, replaceSeal, settle } from './sealing.ts';
 import { growTree, rootOf, treeUnder } from './tree.ts';
 
 export interface Sealed {
@@ -79,6 +79,7 @@ export function recover(
   if (sealing === null && grown.entries > seal.entries) return { state: 'sealed', seal, lastType };
   if (torn.length > 0) moveAway(directory, grown, torn, announce);
   if (sealing === null || grown.entries === seal.entries) return { state: 'sealed', seal, lastType };
+  settle(directory);
   let tree = treeUnder(directory, seal);
   for (const { bytes } of grown.lines) tree = growTree(directory, tree, bytes);
   const facts = { ...grown, root: rootOf(tree), time: sealing.time };
@@ -102,8 +103,8 @@ export function takeUp(
 ): Sealed {
   followChain(directory, seal);
   const facts = { ...seal, root: rootOf(treeUnder(directory, seal)), time };
-  const renewed = replaceSeal(directory, facts, key, announce, null);
-  firstVersionIsPast(directory);
+  settle(directory);
+  const renewed = replaceFirstSeal(directory, facts, key, announce);
   announce(
     `The book was not signed so far. Its ${seal.entries} entries hold together and are now under a signed seal, which ` +
       'cannot speak for the time before.',

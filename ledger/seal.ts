@@ -111,12 +111,13 @@ export function hasSeal(directory: string): boolean {
 
 /** The latest seal; 'missing' or 'unreadable' when there is none. Never waits: a seal is replaced in one step. */
 export function readSeal(directory: string): Seal | 'missing' | 'unreadable' {
+  // A book that has keys has left the first version: what stands there then is no seal of it any more.
+  if (existsSync(firstVersionPath(directory)) && !existsSync(join(directory, 'seals', 'keys'))) {
+    const first = readIfThere(firstVersionPath(directory));
+    if (first !== null) return parseFirstVersion(first) ?? 'unreadable';
+  }
   const note = readIfThere(sealPath(directory));
-  if (note !== null) return parseSeal(note) ?? 'unreadable';
-  const first = readIfThere(firstVersionPath(directory));
-  // A book that has keys has left the first version: what stands there now is no seal of it.
-  if (first === null || existsSync(join(directory, 'seals', 'keys'))) return 'missing';
-  return parseFirstVersion(first) ?? 'unreadable';
+  return note === null ? 'missing' : (parseSeal(note) ?? 'unreadable');
 }
 
 /** Replaces the latest seal. Only within a turn. Two syncs. */

@@ -6,9 +6,9 @@
  *  the readers. A copy of it belongs with the passwords, never into a book. */
 
 import { createPrivateKey, generateKeyPairSync, type KeyObject } from 'node:crypto';
-import { linkSync, mkdirSync, readFileSync, rmSync, statSync } from 'node:fs';
+import { linkSync, readFileSync, rmSync, statSync } from 'node:fs';
 import { dirname, join } from 'node:path';
-import { syncDirectory, writeDurably } from './durable.ts';
+import { makeDirectoryDurably, syncDirectory, writeDurably } from './durable.ts';
 import { badKey, cannotWrite, noPlaceForKey } from './problem.ts';
 
 const OWNER_ONLY = 0o600;
@@ -49,7 +49,7 @@ export function readOrMakeSigningKey(file: string): { key: KeyObject; made: bool
     return { key: readSigningKey(file), made: false };
   const temporary = `${file}.${process.pid}`;
   try {
-    mkdirSync(dirname(file), { recursive: true, mode: 0o700 });
+    makeDirectoryDurably(dirname(file), 0o700);
     const { privateKey } = generateKeyPairSync('ed25519');
     const pem = Buffer.from(privateKey.export({ format: 'pem', type: 'pkcs8' }));
     writeDurably(temporary, `${temporary}.new`, pem, OWNER_ONLY);

@@ -56,16 +56,29 @@ export function openStore(directory: string): Store {
     const found = statSync(path(digest), { throwIfNoEntry: false });
     return found?.isFile() === true && found.size === bytes;
   };
+  /** Digests and shelves whose names are known to be on the disk. */
+  const settled = new Set<string>();
+  /** Makes the names of a file and its shelf last. Who gave them may have died before they were synced. */
+  const settle = (digest: string, isNew: boolean) => {
+    if (settled.has(digest)) return;
+    const shelf = digest.slice(0, 3);
+    if (!isNew) syncDirectory(join(directory, shelf));
+    if (!settled.has(shelf)) syncDirectory(directory);
+    settled.add(shelf).add(digest);
+  };
   return {
     path,
     has,
     keepBytes(content) {
       const bytes = typeof content === 'string' ? Buffer.from(content) : content;
       const file = { digest: sha256(bytes), bytes: bytes.length };
-      if (has(file)) return file;
       return guardWriting(directory, () => {
-        makeShelf(directory, file.digest);
-        writeDurably(path(file.digest), newName(directory), bytes, READ_ONLY);
+        const isNew = !has(file);
+        if (isNew) {
+          makeShelf(directory, file.digest);
+          writeDurably(path(file.digest), newName(directory), bytes, READ_ONLY);
+        }
+        settle(file.digest, isNew);
         return file;
       });
     },
@@ -73,7 +86,9 @@ export function openStore(directory: string): Store {
       return guardWriting(directory, () => {
         const temporary = newName(directory);
         bringIn(source, temporary, move);
-        return shelve(directory, temporary, has);
+        const { file, isNew } = shelve(directory, temporary, has);
+        settle(file.digest, isNew);
+        return file;
       });
     },
     read: (digest) => readStored(path(digest), digest),
@@ -120,10 +135,7 @@ function newName(directory: string): string {
 }
 
 function makeShelf(directory: string, digest: string): void {
-  const shelf = join(directory, digest.slice(0, 3));
-  if (existsSync(shelf)) return;
-  mkdirSync(shelf, { recursive: true });
-  syncDirectory(directory);
+  mkdirSync(join(directory, digest.slice(0, 3)), { recursive: true });
 }
 
 function bringIn(source: string, temporary: string, move: boolean): void {
@@ -149,7 +161,11 @@ function bringIn(source: string, temporary: string, move: boolean): void {
 
 /** Gives a file in store/new its name. What is digested are the bytes already inside, so that nobody can change the
  *  file between the digest and the name. */
-function shelve(directory: string, temporary: string, has: (file: StoredFile) => boolean): StoredFile {
+function shelve(
+  directory: string,
+  temporary: string,
+  has: (file: StoredFile) => boolean,
+): { file: StoredFile; isNew: boolean } {
   chmodSync(temporary, READ_ONLY);
   const descriptor = openSync(temporary, 'r');
   let file: StoredFile;
@@ -159,12 +175,12 @@ function shelve(directory: string, temporary: string, has: (file: StoredFile) =>
   } finally {
     closeSync(descriptor);
   }
-  if (has(file)) rmSync(temporary, { force: true });
-  else {
+  const isNew = !has(file);
+  if (isNew) {
     makeShelf(directory, file.digest);
     renameDurably(temporary, pathInStore(directory, file.digest));
-  }
-  return file;
+  } else rmSync(temporary, { force: true });
+  return { file, isNew };
 }
 
 function readStored(path: string, digest: string): Buffer {

@@ -9,6 +9,7 @@ import { isDigest } from './digest.ts';
 import { embeddedTexts } from './embedded-text.ts';
 import type { PublishedNumber, RunEntry } from './entry.ts';
 import type { FileRow, PlateRow } from './index.ts';
+import { beginsWith, markOf, restOf } from './index-rows.ts';
 import { nearMisses } from './near-miss.ts';
 import {
   checkSymbols,
@@ -16,12 +17,16 @@ import {
   formatPlateNumber,
   type PlateNumber,
   parsePlateNumber,
+  plateNumbersOf,
 } from './plate-number.ts';
 import { ambiguous, badCall, notFound } from './problem.ts';
+import { referencesOf } from './references.ts';
 
 /** Larger files are known by their digest only. */
 const LARGEST_SEARCHED = 1 << 28;
 const PREFIX_LEAST = 6;
+/** Digests that are told apart when a beginning is not enough. */
+const MOST_NAMED = 6;
 
 /** `entries` are those with which a lineage begins: nearest to the subject. */
 export type Subject = { readonly asked: string; readonly entries: readonly number[] } & (
@@ -128,19 +133,28 @@ function plateSubject(book: Book, asked: string): Subject | null {
 function plateInBook(book: Book, plate: PlateNumber, asked: string): Subject | null {
   const text = formatPlateNumber(plate);
   const row = book.ask((index) =>
-    index.get<PlateRow>('SELECT * FROM plates WHERE plate = ? ORDER BY entry DESC NULLS LAST', text),
+    index.get<PlateRow>('SELECT * FROM plates WHERE plate = ? ORDER BY entry DESC', text),
   );
-  if (row === undefined) return null;
-  const { entry, drawn, output } = row;
-  return { asked, type: 'plate', plate: text, drawn, output, entries: [entry ?? drawn] };
+  if (row !== undefined) {
+    const { entry, drawn, output } = row;
+    return { asked, type: 'plate', plate: text, drawn, output, entries: [entry] };
+  }
+  const [output] = figuresOf(book, plate.entry).find(([, number]) => number === text) ?? [];
+  if (output === undefined) return null;
+  return { asked, type: 'plate', plate: text, drawn: plate.entry, output, entries: [plate.entry] };
+}
+
+/** The figures of an entry and the plate numbers that they have, published or not. */
+function figuresOf(book: Book, number: number): [output: string, plate: string][] {
+  if (number > book.count()) return [];
+  const entry = book.entry(number);
+  return entry.type === 'stage' ? [...plateNumbersOf(number, book.digestOf(number), entry.outputs)] : [];
 }
 
 function whyNoPlate(book: Book, { entry }: PlateNumber): string {
   if (entry > book.count()) return `Its entries end at ${book.count()}: it may be a plate of another book.`;
-  const plates = book.ask((index) =>
-    index.all<PlateRow>('SELECT DISTINCT plate FROM plates WHERE drawn = ? ORDER BY plate', entry),
-  );
-  if (plates.length > 0) return `Entry ${entry} drew ${plates.map(({ plate }) => plate).join(', ')}.`;
+  const plates = figuresOf(book, entry).map(([, plate]) => plate);
+  if (plates.length > 0) return `Entry ${entry} drew ${plates.sort().join(', ')}.`;
   return `Entry ${entry} drew no figure; its six symbols would be ${checkSymbols(book.digestOf(entry))}.`;
 }
 
@@ -155,33 +169,63 @@ function digestSubject(book: Book, digest: string, asked: string): Subject {
 function prefixSubject(book: Book, asked: string): Subject | null {
   const prefix = asked.toLowerCase();
   if (!(prefix.length >= PREFIX_LEAST && /^[0-9a-f]{1,64}$/.test(prefix))) return null;
-  // "g" follows every hexadecimal digit.
-  const digests = book.ask((index) =>
-    index.all<{ digest: string }>(
-      'SELECT digest FROM files WHERE digest >= ?1 AND digest < ?2 UNION SELECT digest FROM entries WHERE digest >= ?1 AND digest < ?2 LIMIT 6',
-      prefix,
-      `${prefix}g`,
-    ),
-  );
+  const digests = digestsFrom(book, prefix);
   if (digests.length > 1)
     throw ambiguous(
       `The beginning ${asked}`,
-      digests.map(({ digest }) => digest.slice(0, 16)),
+      digests.map((digest) => digest.slice(0, 16)),
     );
-  return digests[0] === undefined ? null : withDigest(book, digests[0].digest, asked);
+  return digests[0] === undefined ? null : withDigest(book, digests[0], asked);
+}
+
+/** Some digests, of entries and of files, that begin with some digits, sorted. */
+function digestsFrom(book: Book, digits: string): string[] {
+  const { sql, values } = beginsWith(digits);
+  // "g" follows every hexadecimal digit.
+  const entries = book.ask((index) =>
+    index.all<{ digest: string }>(
+      'SELECT digest FROM entries WHERE substr(digest, 1, 16) >= ? AND substr(digest, 1, 16) < ? LIMIT ?',
+      digits.slice(0, 16),
+      `${digits.slice(0, 16)}g`,
+      MOST_NAMED,
+    ),
+  );
+  const files = book.ask((index) =>
+    index.all<FileRow>(
+      `SELECT role, name, max(entry) AS entry FROM files WHERE ${sql} GROUP BY mark, rest LIMIT ?`,
+      ...values,
+      MOST_NAMED,
+    ),
+  );
+  const named = files.flatMap(({ entry }) => referencesOf(book.entry(entry)).files);
+  const found = [...entries, ...named]
+    .map(({ digest }) => digest)
+    .filter((digest) => digest.startsWith(digits));
+  return [...new Set(found)].sort().slice(0, MOST_NAMED);
 }
 
 /** The subject of a whole digest: an entry's, or a file's. */
 function withDigest(book: Book, digest: string, asked: string): Subject | null {
   const entry = book.ask((index) =>
-    index.get<{ number: number }>('SELECT number FROM entries WHERE digest = ?', digest),
+    index.get<{ number: number }>(
+      'SELECT number FROM entries WHERE substr(digest, 1, 16) = substr(?1, 1, 16) AND digest = ?1',
+      digest,
+    ),
   );
   if (entry !== undefined) return { asked, type: 'entry', entry: entry.number, entries: [entry.number] };
   const rows = book.ask((index) =>
-    index.all<FileRow>('SELECT * FROM files WHERE digest = ? ORDER BY entry DESC', digest),
+    index.all<FileRow>(
+      'SELECT role, name, entry FROM files WHERE mark = ? AND rest = ? ORDER BY entry DESC',
+      markOf(digest),
+      restOf(digest),
+    ),
   );
   const [first] = rows;
-  if (first === undefined) return null;
+  const file =
+    first === undefined
+      ? undefined
+      : referencesOf(book.entry(first.entry)).files.find((named) => named.digest === digest);
+  if (file === undefined) return null;
   const makers = rows.filter(({ role }) => role !== 'input');
   // An output that is also an input of later stages comes from the stage that made it.
   const roles = [...makers, ...rows.filter(({ role }) => role === 'input')].map(({ entry, role, name }) => ({
@@ -190,7 +234,7 @@ function withDigest(book: Book, digest: string, asked: string): Subject | null {
     name,
   }));
   const entries = makers[0] === undefined ? [] : [makers[0].entry];
-  return { asked, type: 'file', digest, bytes: first.bytes, roles, entries };
+  return { asked, type: 'file', digest, bytes: file.bytes, roles, entries };
 }
 
 // Files

@@ -8,7 +8,7 @@ import type { CommonOptions, ExitStatus, Io } from '../command.ts';
 import { keyFile, writer } from '../configuration.ts';
 import { wrapText } from '../text-table.ts';
 import { entryTitle } from './entry-title.ts';
-import { countsOf, reachedRows } from './reach.ts';
+import { countsOf, MOST_SHOWN, reachedLines } from './reach.ts';
 
 export interface WithdrawOptions extends CommonOptions {
   readonly reason: string;
@@ -34,16 +34,17 @@ export async function withdrawCommand(
       entry: withdraws,
       entries: [withdraws],
     } as const;
-    const { reached } = reach(book, subject);
+    const most = options.json ? Number.POSITIVE_INFINITY : MOST_SHOWN;
+    const { reached, counts } = reach(book, subject, most);
     const document = { entry: entry.number, withdraws, reached };
     if (options.json) io.out(`${JSON.stringify(document, null, 2)}\n`);
     else if (!options.quiet) {
       const title = `Entry ${withdraws}, ${entryTitle(book.entry(withdraws))}, is withdrawn, in entry ${entry.number}.`;
       const said = wrapText(
-        `${title} It reaches ${countsOf(reached)}.`,
+        `${title} It reaches ${countsOf(counts)}.`,
         Math.min(100, Math.max(80, io.columns)),
       );
-      io.out(`${[...said, ...(reached.length === 0 ? [] : ['', ...reachedRows(reached)])].join('\n')}\n`);
+      io.out(`${[...said, ...reachedLines(reached, counts)].join('\n')}\n`);
     }
     return 0;
   } finally {

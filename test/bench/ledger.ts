@@ -1,14 +1,15 @@
-/** How long the book takes: node test/bench/ledger.ts. Entries of about 900 bytes; times in milliseconds. */
+/** How long the book takes: node test/bench/ledger.ts. Times in milliseconds; entries of the larger book
+ *  as a pipeline writes them, some 10 kB each. A million entries: million.ts. */
 
-import { closeSync, fsyncSync, openSync, rmSync, writeFileSync, writeSync } from 'node:fs';
+import { closeSync, fsyncSync, openSync, writeSync } from 'node:fs';
 import { join } from 'node:path';
 import { audit } from '../../ledger/audit.ts';
 import { openBook } from '../../ledger/book.ts';
 import { canonicalJson } from '../../ledger/canonical.ts';
 import { sha256 } from '../../ledger/digest.ts';
 import type { Json } from '../../ledger/entry.ts';
-import { firstVersionPath, sealPath } from '../../ledger/seal.ts';
-import { makeBook, stageDraft, temporary } from '../ledger/make-book.ts';
+import { keyFile, makeBook, stageDraft, temporary } from '../ledger/make-book.ts';
+import { writeManyRuns } from './many-runs.ts';
 
 const ENTRIES = 10_000;
 const { directory, remove } = temporary();
@@ -27,34 +28,6 @@ function measure(what: string, count: number, work: (i: number) => unknown): voi
   );
 }
 
-/** A book of many entries, written without its index. */
-function writeLargeBook(at: string): string {
-  const book = makeBook(at);
-  const draft = stageDraft(book);
-  book.close();
-  let before = sha256('');
-  const lines: string[] = [];
-  for (let number = 1; number <= ENTRIES; number += 1) {
-    const common = {
-      book: 'lantern',
-      number,
-      before,
-      time: '2026-01-02T03:04:05.678Z',
-      by: { name: 'A. Keeper' },
-    };
-    const line = canonicalJson({ ...draft, ...common, key: sha256(String(number)) } as unknown as Json);
-    before = sha256(line);
-    lines.push(`${line}\n`);
-  }
-  const ledger = Buffer.from(lines.join(''));
-  writeFileSync(join(at, 'ledger.jsonl'), ledger);
-  const seal = { book: 'lantern', bytes: ledger.length, entries: ENTRIES, last: before };
-  // A seal of the first version, without root and signature: the book is taken up and sealed anew when it is opened.
-  rmSync(sealPath(at));
-  writeFileSync(firstVersionPath(at), canonicalJson(seal));
-  return at;
-}
-
 console.log(`node ${process.version}, ${process.arch}`);
 
 const small = makeBook(join(directory, 'small'));
@@ -70,8 +43,9 @@ measure('bare append of the same line and fsync', 200, () => {
 closeSync(bare);
 small.close();
 
-const large = writeLargeBook(join(directory, 'large'));
-const key = (i: number) => sha256(String(1 + ((i * 7919) % ENTRIES)));
+const large = join(directory, 'large');
+writeManyRuns(large, ENTRIES, keyFile(directory));
+const key = (i: number) => sha256(`key ${1 + ((i * 7919) % ENTRIES)}`);
 measure(`first question, index made anew, ${ENTRIES} entries`, 1, () => {
   const book = openBook(large);
   book.count();
@@ -83,11 +57,12 @@ measure('open, findStage, close', 100, (i) => {
   book.findStage(key(i));
   book.close();
 });
-const book = openBook(large, { by: { name: 'A. Keeper' } });
+const book = openBook(large, { by: { name: 'A. Keeper' }, key: keyFile(directory) });
+const another = stageDraft(book);
 measure('findStage', 1000, (i) => book.findStage(key(i)));
 measure('entry', 1000, (i) => book.entry(1 + ((i * 7919) % ENTRIES)));
 measure('all entries', 3, () => [...book.entries()].length);
-measure('append', 50, () => book.append(draft));
+measure('append', 50, () => book.append(another));
 measure('audit', 3, () => audit(book));
 book.close();
 remove();

@@ -88,7 +88,7 @@ describe('the index', () => {
     ['UPDATE entries SET position = position + 1 WHERE number = 5', 5],
     ['DELETE FROM links WHERE source = 7', 7],
     ["UPDATE files SET role = 'output' WHERE entry = 1", 1],
-    ["INSERT INTO plates VALUES ('1-ABCDEF', NULL, 4, 'basis', NULL)", 4],
+    ["INSERT INTO plates VALUES ('1-ABCDEF', 4, 4, 'basis', 'basis')", 4],
     ["UPDATE numbers SET name = 'x' WHERE run = 1", 10],
   ])('that says something else is blamed: %s', (sql, entry) => {
     tamper(sql);

@@ -1,0 +1,158 @@
+/** Bundles: what each entry names, in one piece for 256 entries, so that all that depends on something is found in one
+ *  pass over memory instead of a look at the index for each step. Part of the index, derived like the rest of it.
+ *
+ *  An entry names earlier entries only. So going through the entries in order, everything that one names is settled
+ *  before the entry itself is: one pass finds what depends on the starts, and the length of the shortest way.
+ *
+ *  A bundle is a list of numbers of 32 bits in this machine's order of bytes. Of each entry: 4 n + what it is, the n
+ *  entries that it names; of a run then the count of its published numbers and the entry that holds each. */
+
+import type { Entry } from './entry.ts';
+import type { Index } from './index.ts';
+
+/** Entries in a bundle. Each append writes the last bundle anew: some 4 kB. */
+export const IN_BUNDLE = 256;
+/** Bundles in memory at a time while they are gone through. */
+const AT_ONCE = 500;
+
+const OTHER = 0;
+const RUN = 1;
+const PLATE = 2;
+
+/** Something that depends on the starts. */
+export interface Dependant {
+  readonly type: 'run' | 'plate' | 'number';
+  /** Steps on the shortest way. */
+  readonly distance: number;
+  /** The run, the plate, or the entry that holds the number. */
+  readonly entry: number;
+  /** The entry of the run that published the number, or was the first to publish the plate; of a run itself. Null for a
+   *  plate without. */
+  publisher: number | null;
+  /** Of a number, its place among those of the run, from 0. */
+  readonly place: number;
+}
+
+/** What a bundle holds of an entry. @param targets  the entries that it names, each once */
+export function linksOf(entry: Entry, targets: readonly number[]): number[] {
+  const what = entry.type === 'run' ? RUN : entry.type === 'plate' ? PLATE : OTHER;
+  const links = [4 * targets.length + what, ...targets];
+  if (entry.type === 'run') links.push(entry.numbers.length, ...entry.numbers.map((number) => number.entry));
+  return links;
+}
+
+/** Gathers the links of consecutive entries.
+ *  @param entries  how many entries came before
+ *  @param begun  the bundle that these have begun, if it is not whole
+ *  @param write  takes a bundle that is whole, or the last */
+export function bundleWriter(
+  entries: number,
+  begun: Uint8Array | null,
+  write: (bundle: number, links: Uint8Array) => void,
+) {
+  let count = entries;
+  let links: number[] = begun === null ? [] : [...wordsOf(begun)];
+  const end = () => {
+    if (links.length > 0)
+      write(Math.floor((count - 1) / IN_BUNDLE), new Uint8Array(Uint32Array.from(links).buffer));
+  };
+  return {
+    add(more: readonly number[]): void {
+      for (const link of more) links.push(link);
+      count += 1;
+      if (count % IN_BUNDLE !== 0) return;
+      end();
+      links = [];
+    },
+    /** Writes what is not whole yet. */
+    end,
+  };
+}
+
+/** Everything that depends on some entries, those among them included that are runs or plates and at least one step away.
+ *  @param starts  by number of the entry, how far it is from the subject
+ *  @param near    published numbers that are one step away: by run's entry their places, or all of that run's
+ *  @returns nearest first; equally far, the older entry first, then the older run
+ *  Cost: reads the bundles from the first start to the end; 10 ms and 6 MB for a million entries, and 4 bytes for each. */
+export function dependantsOf(
+  index: Index,
+  starts: ReadonlyMap<number, number>,
+  near: ReadonlyMap<number, ReadonlySet<number> | 'all'>,
+): Dependant[] {
+  const count = index.extent().entries;
+  // One more than the distance; 0 where there is no way.
+  const steps = new Uint32Array(count + 1);
+  for (const [number, distance] of starts) steps[number] = distance + 1;
+  const first = Math.min(count, ...starts.keys(), ...near.keys());
+  const found: Dependant[] = [];
+  const plates = new Map<number, Dependant>();
+
+  const settle = (number: number, words: Uint32Array, at: number, end: number): number => {
+    let least = steps[number] as number;
+    for (let i = at; i < end; i += 1) {
+      const step = steps[words[i] as number] as number;
+      if (step !== 0 && (least === 0 || step + 1 < least)) least = step + 1;
+    }
+    steps[number] = least;
+    return least;
+  };
+  const takeRun = (number: number, step: number, words: Uint32Array, at: number, end: number) => {
+    if (step > 1) found.push({ type: 'run', distance: step - 1, entry: number, publisher: number, place: 0 });
+    for (let i = at; i < end && plates.size > 0; i += 1) {
+      const plate = plates.get(words[i] as number);
+      if (plate !== undefined) plate.publisher ??= number;
+    }
+    const close = near.get(number);
+    const numbers = words[end] as number;
+    for (let place = 0; place < numbers; place += 1) {
+      const holder = words[end + 1 + place] as number;
+      const isNear = close === 'all' || close?.has(place) === true;
+      const distance = isNear ? 1 : (steps[holder] as number);
+      if (distance > 0) found.push({ type: 'number', distance, entry: holder, publisher: number, place });
+    }
+  };
+
+  for (const { bundle, links } of bundlesFrom(index, Math.floor((first - 1) / IN_BUNDLE))) {
+    const words = wordsOf(links);
+    let number = bundle * IN_BUNDLE + 1;
+    for (let at = 0; at < words.length; number += 1) {
+      const head = words[at] as number;
+      const end = at + 1 + (head >>> 2);
+      const step = settle(number, words, at + 1, end);
+      const what = head & 3;
+      if (what === RUN && (step > 0 || near.size > 0)) takeRun(number, step, words, at + 1, end);
+      if (what === PLATE && step > 1) {
+        const plate: Dependant = {
+          type: 'plate',
+          distance: step - 1,
+          entry: number,
+          publisher: null,
+          place: 0,
+        };
+        plates.set(number, plate);
+        found.push(plate);
+      }
+      at = what === RUN ? end + 1 + (words[end] as number) : end;
+    }
+  }
+  // What was found first is the older run, and stays before what is otherwise equal.
+  return found.sort((a, b) => a.distance - b.distance || a.entry - b.entry);
+}
+
+function* bundlesFrom(index: Index, from: number): Generator<{ bundle: number; links: Uint8Array }> {
+  for (let next = Math.max(0, from); ; next += AT_ONCE) {
+    const bundles = index.all<{ bundle: number; links: Uint8Array }>(
+      'SELECT bundle, links FROM bundles WHERE bundle >= ? AND bundle < ? ORDER BY bundle',
+      next,
+      next + AT_ONCE,
+    );
+    if (bundles.length === 0) return;
+    yield* bundles;
+  }
+}
+
+function wordsOf(bytes: Uint8Array): Uint32Array {
+  const isAligned = bytes.byteOffset % 4 === 0;
+  const whole = isAligned ? bytes : bytes.slice();
+  return new Uint32Array(whole.buffer, whole.byteOffset, whole.length / 4);
+}
