@@ -4,9 +4,7 @@ import { readBasis } from '../formats/basis.ts';
 import { writeJson, writeNumbers } from '../formats/json.ts';
 import { readPosterior } from '../formats/posterior.ts';
 import { readSkyImage } from '../formats/sky-image.ts';
-import type { StageReport, StageTask } from '../kind.ts';
-import { measureRing, RING_LIMITS, type RingMeasurement } from '../numerics/ring.ts';
-import { measureDraws } from './measure-draws.ts';
+import { measureDraws } from '../imaging/measure-draws.ts';
 import {
   type Calibration,
   LEAST_RINGS,
@@ -14,7 +12,9 @@ import {
   ringFraction,
   UAS_PER_RADIAN,
   widthViolated,
-} from './ring-numbers.ts';
+} from '../imaging/ring-numbers.ts';
+import type { StageReport, StageTask } from '../kind.ts';
+import { measureRing, RING_LIMITS, type RingMeasurement } from '../numerics/ring.ts';
 
 export function compute(task: StageTask): StageReport {
   const basis = readBasis(task.inputs.basis[0]);

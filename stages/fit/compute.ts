@@ -5,14 +5,14 @@ import { writeJson, writeNumbers } from '../formats/json.ts';
 import { writePosterior } from '../formats/posterior.ts';
 import { writeSkyImage } from '../formats/sky-image.ts';
 import { readVisibilities } from '../formats/visibilities.ts';
+import { imageAt } from '../imaging/linear-model.ts';
+import { drawPosterior } from '../imaging/posterior-draws.ts';
+import { runFit } from '../imaging/run-fit.ts';
+import { readSettings } from '../imaging/settings.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import { fluxNumbers } from './flux-numbers.ts';
-import { imageAt } from './linear-model.ts';
-import { drawPosterior } from './posterior-draws.ts';
 import { makeReport } from './report.ts';
 import { makeResiduals } from './residuals.ts';
-import { runFit } from './run-fit.ts';
-import { readSettings } from './settings.ts';
 
 export function compute(task: StageTask): StageReport {
   const visibilities = readVisibilities(task.inputs.visibilities[0]);

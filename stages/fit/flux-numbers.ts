@@ -1,8 +1,8 @@
 /** The output `flux`: total flux, and the centroid where it was fitted, with credible intervals. */
 
 import type { Basis, Numbers, NumberValue } from '../data.ts';
+import type { PlacedPosterior } from '../imaging/posterior-draws.ts';
 import { quantiles } from '../numerics/statistics.ts';
-import type { PlacedPosterior } from './posterior-draws.ts';
 
 export const UAS_PER_RADIAN = (180 / Math.PI) * 3600e6;
 

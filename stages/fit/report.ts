@@ -2,15 +2,15 @@
  *  the warnings that go to the entry. */
 
 import type { Posterior } from '../data.ts';
+import { placeAt, slopesAt } from '../imaging/centroid.ts';
+import { componentsOf, imageAt, type Slopes } from '../imaging/linear-model.ts';
+import type { FitResult } from '../imaging/run-fit.ts';
+import { type FitSettings, fitsCentroid } from '../imaging/settings.ts';
+import { makeExpansion, mirror, type Term } from '../imaging/term.ts';
 import { cholesky, invertCholesky } from '../numerics/linear.ts';
 import { normalQuantile, quantiles } from '../numerics/statistics.ts';
-import { placeAt, slopesAt } from './centroid.ts';
 import { UAS_PER_RADIAN } from './flux-numbers.ts';
-import { componentsOf, imageAt, type Slopes } from './linear-model.ts';
 import type { FitResiduals } from './residuals.ts';
-import type { FitResult } from './run-fit.ts';
-import { type FitSettings, fitsCentroid } from './settings.ts';
-import { makeExpansion, mirror, type Term } from './term.ts';
 
 export interface TermReport {
   readonly term: string;

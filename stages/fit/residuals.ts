@@ -2,6 +2,9 @@
  *  stations are indices into `stations`. */
 
 import type { Visibilities } from '../data.ts';
+import type { ScanGains } from '../imaging/amplitude-term.ts';
+import type { ModelVisibilities } from '../imaging/linear-model.ts';
+import { riceMean } from '../imaging/rice.ts';
 import {
   type Closure,
   type ClosureSet,
@@ -10,9 +13,6 @@ import {
   wrapPhase,
 } from '../numerics/closures.ts';
 import { exp } from '../numerics/elementary.ts';
-import type { ScanGains } from './amplitude-term.ts';
-import type { ModelVisibilities } from './linear-model.ts';
-import { riceMean } from './rice.ts';
 
 export interface FitResiduals {
   /** Data terms of the fit, as the parameter names them. */

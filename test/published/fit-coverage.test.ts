@@ -5,9 +5,9 @@
 
 import { expect, test } from 'vitest';
 import type { Basis, Visibilities } from '../../stages/data.ts';
-import { drawPosterior } from '../../stages/fit/posterior-draws.ts';
-import { runFit } from '../../stages/fit/run-fit.ts';
-import type { FitSettings } from '../../stages/fit/settings.ts';
+import { drawPosterior } from '../../stages/imaging/posterior-draws.ts';
+import { runFit } from '../../stages/imaging/run-fit.ts';
+import type { FitSettings } from '../../stages/imaging/settings.ts';
 import { randomStream } from '../../stages/numerics/random.ts';
 import { quantiles } from '../../stages/numerics/statistics.ts';
 import { slowVisibility } from '../stages/fit/synthetic-data.ts';

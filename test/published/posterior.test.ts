@@ -3,10 +3,10 @@
  *  photon capture diameter (Misner, Thorne and Wheeler, section 25.6; invented masses, recomputed with mpmath). */
 
 import { expect, test } from 'vitest';
-import { massInSuns } from '../../stages/features/gravitational-radius.ts';
-import type { LinearModel } from '../../stages/fit/linear-model.ts';
-import { drawPosterior } from '../../stages/fit/posterior-draws.ts';
-import { riceMean } from '../../stages/fit/rice.ts';
+import { massInSuns } from '../../stages/imaging/gravitational-radius.ts';
+import type { LinearModel } from '../../stages/imaging/linear-model.ts';
+import { drawPosterior } from '../../stages/imaging/posterior-draws.ts';
+import { riceMean } from '../../stages/imaging/rice.ts';
 import { gaussNewton } from '../../stages/numerics/gauss-newton.ts';
 import { invertSymmetric } from '../../stages/numerics/linear.ts';
 import { mean, standardDeviation } from '../../stages/numerics/statistics.ts';

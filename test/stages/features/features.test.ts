@@ -4,12 +4,12 @@ import { expect, test } from 'vitest';
 import { memorySink, sourceOf } from '../../../stages/bytes.ts';
 import type { Basis, Posterior } from '../../../stages/data.ts';
 import { compute } from '../../../stages/features/compute.ts';
-import { measureDraws } from '../../../stages/features/measure-draws.ts';
-import { makeRingNumbers, widthViolated } from '../../../stages/features/ring-numbers.ts';
 import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readJson, readNumbers } from '../../../stages/formats/json.ts';
 import { writePosterior } from '../../../stages/formats/posterior.ts';
 import { writeSkyImage } from '../../../stages/formats/sky-image.ts';
+import { measureDraws } from '../../../stages/imaging/measure-draws.ts';
+import { makeRingNumbers, widthViolated } from '../../../stages/imaging/ring-numbers.ts';
 import { blurredRingImage, imageOf, UAS } from '../numerics/ring-images.ts';
 
 const GRID = { nx: 64, pixel: 2.5 };

@@ -4,11 +4,15 @@
 import { beforeAll, describe, expect, test } from 'vitest';
 import { memorySink, sourceOf } from '../../../stages/bytes.ts';
 import type { Basis, SkyImage, Visibilities } from '../../../stages/data.ts';
-import { findPlace } from '../../../stages/fit/centroid-start.ts';
-import { makeComplexTerm } from '../../../stages/fit/complex-term.ts';
 import { compute } from '../../../stages/fit/compute.ts';
 import { fit } from '../../../stages/fit/fit.ts';
-import { resized } from '../../../stages/fit/fit-problem.ts';
+import { writeBasis } from '../../../stages/formats/basis.ts';
+import { readJson, readNumbers } from '../../../stages/formats/json.ts';
+import { readSkyImage } from '../../../stages/formats/sky-image.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { findPlace } from '../../../stages/imaging/centroid-start.ts';
+import { makeComplexTerm } from '../../../stages/imaging/complex-term.ts';
+import { resized } from '../../../stages/imaging/fit-problem.ts';
 import {
   basisVisibilities,
   componentsOf,
@@ -16,16 +20,12 @@ import {
   makeLinearModel,
   predict,
   predictUnmoved,
-} from '../../../stages/fit/linear-model.ts';
-import { makeObjective } from '../../../stages/fit/objective.ts';
-import { makePositivityTerm } from '../../../stages/fit/positivity-term.ts';
-import { drawPosterior } from '../../../stages/fit/posterior-draws.ts';
-import { runFit } from '../../../stages/fit/run-fit.ts';
-import type { FitSettings } from '../../../stages/fit/settings.ts';
-import { writeBasis } from '../../../stages/formats/basis.ts';
-import { readJson, readNumbers } from '../../../stages/formats/json.ts';
-import { readSkyImage } from '../../../stages/formats/sky-image.ts';
-import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+} from '../../../stages/imaging/linear-model.ts';
+import { makeObjective } from '../../../stages/imaging/objective.ts';
+import { makePositivityTerm } from '../../../stages/imaging/positivity-term.ts';
+import { drawPosterior } from '../../../stages/imaging/posterior-draws.ts';
+import { runFit } from '../../../stages/imaging/run-fit.ts';
+import type { FitSettings } from '../../../stages/imaging/settings.ts';
 import { randomStream } from '../../../stages/numerics/random.ts';
 import { measureRing } from '../../../stages/numerics/ring.ts';
 import { angleDifference, quantiles } from '../../../stages/numerics/statistics.ts';

@@ -3,20 +3,20 @@
 
 import { beforeAll, expect, test } from 'vitest';
 import type { Basis, Visibilities } from '../../../stages/data.ts';
-import { makeAmplitudeTerm } from '../../../stages/fit/amplitude-term.ts';
-import { makeClosurePhaseTerm, makeLogClosureAmplitudeTerm } from '../../../stages/fit/closure-terms.ts';
-import { makeComplexTerm } from '../../../stages/fit/complex-term.ts';
-import { fitClosures } from '../../../stages/fit/fit-problem.ts';
+import { makeAmplitudeTerm } from '../../../stages/imaging/amplitude-term.ts';
+import { makeClosurePhaseTerm, makeLogClosureAmplitudeTerm } from '../../../stages/imaging/closure-terms.ts';
+import { makeComplexTerm } from '../../../stages/imaging/complex-term.ts';
+import { fitClosures } from '../../../stages/imaging/fit-problem.ts';
 import {
   basisVisibilities,
   type LinearModel,
   makeLinearModel,
   predict,
-} from '../../../stages/fit/linear-model.ts';
-import { makeObjective } from '../../../stages/fit/objective.ts';
-import { makePositivityTerm } from '../../../stages/fit/positivity-term.ts';
-import { selectRows } from '../../../stages/fit/select-rows.ts';
-import { makeExpansion, mirror, type Term } from '../../../stages/fit/term.ts';
+} from '../../../stages/imaging/linear-model.ts';
+import { makeObjective } from '../../../stages/imaging/objective.ts';
+import { makePositivityTerm } from '../../../stages/imaging/positivity-term.ts';
+import { selectRows } from '../../../stages/imaging/select-rows.ts';
+import { makeExpansion, mirror, type Term } from '../../../stages/imaging/term.ts';
 import { randomStream } from '../../../stages/numerics/random.ts';
 import { crescentImage, makeLibraryBasis, observe, slowVisibility, withFlux } from './synthetic-data.ts';
 
