@@ -4,10 +4,12 @@
 
 import { existsSync } from 'node:fs';
 import { auditKept } from './audit-seals.ts';
-import { DIGEST_OF_NOTHING, sha256 } from './digest.ts';
+import { DIGEST_OF_NOTHING } from './digest.ts';
 import type { Entry } from './entry.ts';
+import { hashedLines } from './hashed-lines.ts';
 import { ledgerPath, lineBefore, linesOf, parseEntry, readRange, sizeOf, withFile } from './ledger-file.ts';
-import { growPeaks, HASH_BYTES, leafHash, rootAt } from './merkle.ts';
+import { rememberingReader } from './line-reader.ts';
+import { growPeaks, HASH_BYTES, rootAt } from './merkle.ts';
 import { readSeal, type Seal } from './seal.ts';
 import { readKeys, signatureFault } from './seal-keys.ts';
 import type { VerifierKey } from './signed-note.ts';
@@ -70,7 +72,14 @@ export function auditLedger(
     const report: Report = (entry, what, more) => {
       if (!problems.has(entry)) problems.set(entry, { entry, what, ...more });
     };
-    const { count, tree, runs } = readLines(descriptor, { end, seal, book, report, problems, visit });
+    const { count, tree, runs } = readLines(ledgerPath(directory), {
+      end,
+      seal,
+      book,
+      report,
+      problems,
+      visit,
+    });
     auditSeal(count, seal, fault, end, report);
     if (problems.size === 0 && typeof seal !== 'string') auditLatest(count, seal, book, end, tree, report);
     const remarks = quick ? [] : auditKept(directory, { keys, tree, count, runs, book, problems, report });
@@ -133,7 +142,7 @@ interface Reading {
 
 /** Reads the lines, each judged with the two that follow it in view. */
 function readLines(
-  descriptor: number,
+  path: string,
   { end, seal, book, report, problems, visit }: Reading,
 ): { count: number; tree: AuditedTree & { hashes: Buffer }; runs: number[] } {
   const tree = growingTree();
@@ -158,13 +167,14 @@ function readLines(
     visit(line, problems.has(line.number), tree);
     window.shift();
   };
-  for (const { bytes, offset, whole } of linesOf(descriptor, 0, end)) {
+  const parse = rememberingReader(parseEntry);
+  for (const { bytes, offset, whole, digest, leaf } of hashedLines(path, 0, end, true)) {
     count += 1;
-    const { entry, what } = read(bytes);
+    const { entry, what } = read(bytes, parse);
     if (what !== null) report(count, what);
     else if (!whole) report(count, 'no line feed ends its line');
-    tree.add(leafHash(bytes));
-    window.push({ number: count, entry, digest: sha256(bytes), offset, length: bytes.length });
+    tree.add(leaf);
+    window.push({ number: count, entry, digest, offset, length: bytes.length });
     if (window.length === 3) judge();
   }
   while (window.length > 0) judge();
@@ -188,9 +198,12 @@ function witnessOfLast(count: number, seal: Seal | string): string | null {
   return typeof seal !== 'string' && seal.entries === count ? seal.last : null;
 }
 
-function read(bytes: Buffer): { entry: Entry | null; what: string | null } {
+function read(
+  bytes: Buffer,
+  parse: (bytes: Buffer) => Entry = parseEntry,
+): { entry: Entry | null; what: string | null } {
   try {
-    return { entry: parseEntry(bytes), what: null };
+    return { entry: parse(bytes), what: null };
   } catch (error) {
     return { entry: null, what: (error as Error).message.replace(/^entry(?=[:.])/, 'its line') };
   }

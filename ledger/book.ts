@@ -37,6 +37,7 @@ import { appendEntry, type Writer } from './append.ts';
 import type { Draft, Entry, Person, RunEntry, StageEntry, StoredFile } from './entry.ts';
 import type { Index } from './index.ts';
 import { keepIndex } from './index-keeper.ts';
+import { markOf } from './index-rows.ts';
 import { hasBook, nameOf, requireBook, startBook } from './layout.ts';
 import { digestOfFile } from './outside-file.ts';
 import { digestOfEntry, readEntry, visitEntries } from './reading.ts';
@@ -47,8 +48,7 @@ import { formatTime } from './time.ts';
 import { openTurns, type Turns } from './turns.ts';
 import { withdrawalsUpstream } from './withdrawal.ts';
 
-const STAGES_OF_KEY =
-  'SELECT number FROM entries WHERE substr(key, 1, 16) = substr(?1, 1, 16) AND key = ?1 ORDER BY number DESC';
+const STAGES_OF_KEY = 'SELECT number FROM entries WHERE key = ? ORDER BY number DESC';
 const RUN = 'SELECT number FROM entries WHERE run = ?';
 const LAST_RUN = 'SELECT max(run) AS run FROM entries';
 
@@ -178,8 +178,10 @@ function bookIn(
     count: () => keeper.ask((index) => index.extent().entries),
     entries: (from = 1) => visitEntries(directory, keeper, from),
     findStage(key) {
-      for (const { number } of keeper.ask((index) => index.all<{ number: number }>(STAGES_OF_KEY, key))) {
+      const found = keeper.ask((index) => index.all<{ number: number }>(STAGES_OF_KEY, markOf(key)));
+      for (const { number } of found) {
         const stage = entry(number) as StageEntry;
+        if (stage.key !== key) continue;
         if (!Object.values(stage.outputs).every((file) => store.has(file))) continue;
         if (withdrawalsUpstream(book, number).length === 0) return stage;
       }

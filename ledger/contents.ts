@@ -3,6 +3,7 @@
 import type { Book } from './book.ts';
 import type { Index } from './index.ts';
 import { beginsWith, LONGEST_VALUE, type Value, valuesOf } from './index-rows.ts';
+import { targetsReader } from './link-bundles.ts';
 import { badCall } from './problem.ts';
 import { timeBound } from './time.ts';
 import type { TracedEntry } from './trace.ts';
@@ -113,7 +114,7 @@ function find(
 function ofRecipe(index: Index, recipe: string, conditions: readonly Condition[]): number[] {
   const found = new Set<number>();
   const { where, values } = joined([
-    { sql: 'number IN (SELECT ? UNION SELECT target FROM links WHERE source = ?)', values: [] },
+    { sql: 'number IN (SELECT value FROM json_each(?))', values: [] },
     ...conditions,
   ]);
   const runs = index.all<{ number: number }>(
@@ -121,12 +122,13 @@ function ofRecipe(index: Index, recipe: string, conditions: readonly Condition[]
     recipe,
     MOST_COUNTED + 1,
   );
+  const targets = targetsReader(index);
   for (const { number: run } of runs) {
     if (found.size > MOST_COUNTED) break;
+    const named = JSON.stringify([run, ...targets(run)]);
     for (const { number } of index.all<{ number: number }>(
       `SELECT number FROM entries ${where}`,
-      run,
-      run,
+      named,
       ...values,
     ))
       found.add(number);

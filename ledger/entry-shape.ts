@@ -42,8 +42,15 @@ const FIELDS: Readonly<Record<Draft['type'], Readonly<Record<string, string>>>> 
   countersignature: { signs: 'number', what: 'string', key: 'string', signature: 'string' },
 };
 
+const FIELD_LISTS = new Map(Object.entries(FIELDS).map(([type, fields]) => [type, Object.entries(fields)]));
+
 /** What an object lacks to be an entry, as the end of a sentence; null when it lacks nothing. */
 export function lackOf(value: unknown): string | null {
+  return lackOfFields(value) ?? lackOfReferences(value as Entry);
+}
+
+/** The same, without a look at what the entry names. */
+export function lackOfFields(value: unknown): string | null {
   if (typeof value !== 'object' || value === null || Array.isArray(value)) return 'expected an object';
   const { book, number, before, time, by, type } = value as { [key: string]: unknown };
   if (typeof book !== 'string') return 'expected the name of a book in "book"';
@@ -58,11 +65,15 @@ export function lackOf(value: unknown): string | null {
 }
 
 function lackOfType(entry: Entry): string | null {
-  if (!Object.hasOwn(FIELDS, entry.type)) return null;
-  for (const [field, type] of Object.entries(FIELDS[entry.type])) {
+  for (const [field, type] of FIELD_LISTS.get(entry.type) ?? []) {
     const found = (entry as unknown as Record<string, unknown>)[field];
     if (found === null || typeof found !== type) return `expected a field "${field}" in a ${entry.type}`;
   }
+  return null;
+}
+
+function lackOfReferences(entry: Entry): string | null {
+  if (!FIELD_LISTS.has(entry.type)) return null;
   try {
     const { files, entries } = referencesOf(entry);
     const whole =

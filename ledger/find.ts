@@ -2,11 +2,10 @@
 
 import type { Book } from './book.ts';
 import type { PlateEntry, RunEntry } from './entry.ts';
+import { runsNaming } from './link-bundles.ts';
 import { withdrawalsOf } from './withdrawal.ts';
 
 const PLATES = 'SELECT entry FROM plates WHERE plate = ? ORDER BY entry DESC';
-const RUNS =
-  "SELECT source FROM links JOIN entries ON number = source WHERE target = ? AND type = 'run' ORDER BY source DESC";
 
 /** The newest plate entry of this number, name and mark whose files stand in the store and that is not withdrawn. */
 export function findPlate(
@@ -24,6 +23,6 @@ export function findPlate(
 
 /** The newest run that holds a stage's entry. */
 export function findRunOfStage(book: Book, stage: number): RunEntry | undefined {
-  const row = book.ask((index) => index.get<{ source: number }>(RUNS, stage));
-  return row === undefined ? undefined : (book.entry(row.source) as RunEntry);
+  const newest = book.ask((index) => [...runsNaming(index, stage)].at(-1));
+  return newest === undefined ? undefined : (book.entry(newest) as RunEntry);
 }

@@ -3,8 +3,9 @@
 import type { StatementSync } from 'node:sqlite';
 import type { Entry } from './entry.ts';
 import type { Extent } from './index.ts';
-import { LONGEST_VALUE, rowsOf, TABLES, type Value, valuesOf } from './index-rows.ts';
+import { LONGEST_VALUE, type Place, rowsOf, TABLES, type Value, valuesOf } from './index-rows.ts';
 import { bundleWriter, IN_BUNDLE } from './link-bundles.ts';
+import { ledgerDamaged } from './problem.ts';
 
 /** Rows in a statement. Measured for files, microseconds a row: 1.7 one by one, 0.8 with 10, 1.3 with 50. */
 const TOGETHER = 10;
@@ -35,7 +36,7 @@ export function addLines(prepare: Prepare, extent: Extent, lines: Iterable<Index
       if (entry.number <= entries) continue;
       throw new Error(`the index was offered entry ${entry.number} after ${entries}`);
     }
-    const { rows, links } = rowsOf(entry, { position: bytes, length, digest });
+    const { rows, links } = shapedRows(entry, { position: bytes, length, digest });
     for (const [i, table] of tables.entries()) table.add(rows[i] as Value[][]);
     settings.add(entry, rows[0]?.[0]?.[SETTINGS] as number | null);
     bundles.add(links);
@@ -46,6 +47,15 @@ export function addLines(prepare: Prepare, extent: Extent, lines: Iterable<Index
   for (const table of tables) table.finish();
   bundles.end();
   prepare('UPDATE extent SET entries = ?, bytes = ?, last = ?').run(entries, bytes, last);
+}
+
+function shapedRows(entry: Entry, place: Place): ReturnType<typeof rowsOf> {
+  try {
+    return rowsOf(entry, place);
+  } catch (cause) {
+    const what = `a ${entry.type} of another shape (${(cause as Error).message})`;
+    throw ledgerDamaged('ledger.jsonl', entry.number, what);
+  }
 }
 
 function begunBundle(prepare: Prepare, entries: number): Uint8Array | null {

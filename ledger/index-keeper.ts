@@ -6,6 +6,7 @@ import { existsSync, rmSync } from 'node:fs';
 import { join } from 'node:path';
 import { sha256 } from './digest.ts';
 import type { Entry } from './entry.ts';
+import { hashedLines } from './hashed-lines.ts';
 import { type Extent, type Index, makeIndexFile, openIndex } from './index.ts';
 import type { IndexedLine } from './index-filling.ts';
 import { ledgerPath, linesOf, parseEntry, parseTrusted, sizeOf, withFile } from './ledger-file.ts';
@@ -106,21 +107,17 @@ function readNew(
   use: (lines: Iterable<IndexedLine>) => void,
 ): void {
   const path = ledgerPath(directory);
-  withFile(path, (descriptor) => use(chain(path, descriptor, extent, seal)));
+  const end = seal?.bytes ?? withFile(path, sizeOf);
+  use(chain(path, extent, seal, end));
 }
 
-function* chain(
-  path: string,
-  descriptor: number,
-  extent: Extent,
-  seal: Seal | null,
-): Generator<IndexedLine, void> {
+function* chain(path: string, extent: Extent, seal: Seal | null, end: number): Generator<IndexedLine, void> {
   let { entries, bytes: position, last } = extent;
   // Bytes that lead to the sealed digest are those that were written. How they are spelled is the audit's question.
   const read = rememberingReader(parseTrusted);
-  for (const line of linesOf(descriptor, position, seal?.bytes ?? sizeOf(descriptor))) {
-    if (!line.whole) break;
-    const entry = entryOf(read, path, entries + 1, line.bytes);
+  for (const { bytes, whole, digest } of hashedLines(path, position, end)) {
+    if (!whole) break;
+    const entry = entryOf(read, path, entries + 1, bytes);
     if (entry.number !== entries + 1)
       throw ledgerDamaged(path, entries + 1, `expected entry ${entries + 1}, got ${entry.number}`);
     if (entry.before !== last) {
@@ -131,9 +128,9 @@ function* chain(
       );
     }
     entries += 1;
-    last = sha256(line.bytes);
-    position += line.bytes.length + 1;
-    yield { entry, digest: last, length: line.bytes.length };
+    last = digest;
+    position += bytes.length + 1;
+    yield { entry, digest, length: bytes.length };
   }
   if (seal !== null && (position !== seal.bytes || last !== seal.last)) {
     throw ledgerDamaged(path, seal.entries, `the seal says ${seal.entries} entries, the last ${seal.last}`);

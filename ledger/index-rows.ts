@@ -50,13 +50,12 @@ export const TABLES = [
     order: 'number',
   },
   { name: 'files', columns: ['mark', 'rest', 'role', 'name', 'entry'], entry: 'entry', order: 'rowid' },
-  { name: 'links', columns: ['source', 'target'], entry: 'source', order: 'source, target' },
-  { name: 'plates', columns: ['plate', 'entry', 'drawn', 'output', 'name'], entry: 'entry', order: 'rowid' },
+  { name: 'plates', columns: ['plate', 'entry', 'drawn', 'output', 'name'], entry: 'entry', order: 'entry' },
   {
     name: 'numbers',
-    columns: ['name', 'run', 'place', 'entry', 'output', 'publisher'],
+    columns: ['name', 'place', 'entry', 'output', 'publisher'],
     entry: 'publisher',
-    order: 'rowid',
+    order: 'publisher, place',
   },
   { name: 'withdrawals', columns: ['withdraws', 'entry'], entry: 'entry', order: 'rowid' },
   { name: 'countersignatures', columns: ['signs', 'entry'], entry: 'entry', order: 'rowid' },
@@ -91,18 +90,10 @@ export function rowsOf(entry: Entry, place: Place): { rows: Value[][][]; links: 
   const rows: Value[][][] = [
     [entryRow(entry, place)],
     files.map(({ digest, role, name }) => [markOf(digest), restOf(digest), role, name, entry.number]),
-    targets.map((target) => [entry.number, target]),
     entry.type === 'plate' ? [[entry.plate, entry.number, entry.drawn, entry.output, entry.name]] : [],
     entry.type !== 'run'
       ? []
-      : entry.numbers.map((number, i) => [
-          number.name,
-          entry.run,
-          i,
-          number.entry,
-          number.output,
-          entry.number,
-        ]),
+      : entry.numbers.map(({ name, ...of }, i) => [name, i, of.entry, of.output, entry.number]),
     entry.type === 'withdrawal' ? [[entry.withdraws, entry.number]] : [],
     entry.type === 'countersignature' ? [[entry.signs, entry.number]] : [],
   ];
@@ -143,13 +134,13 @@ function entryRow(entry: Entry, { position, length, digest }: Place): Value[] {
 function columnsOf(entry: Entry): {
   name: string | null;
   kind: string | null;
-  key: string | null;
+  key: number | null;
   run: number | null;
 } {
   const none = { name: null, kind: null, key: null, run: null };
   switch (entry.type) {
     case 'stage':
-      return { ...none, name: entry.name, kind: entry.kind, key: entry.key };
+      return { ...none, name: entry.name, kind: entry.kind, key: markOf(entry.key) };
     case 'failure':
       return { ...none, name: entry.name, kind: entry.kind };
     case 'run':

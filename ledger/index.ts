@@ -10,7 +10,7 @@ import { endianness } from 'node:os';
 import { DatabaseSync, type StatementSync } from 'node:sqlite';
 import { DIGEST_OF_NOTHING } from './digest.ts';
 import { addLines, type IndexedLine, type Prepare } from './index-filling.ts';
-import { TABLES, type Value } from './index-rows.ts';
+import type { Value } from './index-rows.ts';
 
 /** Changes when the tables do; an index of another version, or of a machine with another order of bytes, is made again. */
 const VERSION = endianness() === 'LE' ? 3 : 0x10003;
@@ -18,17 +18,16 @@ const VERSION = endianness() === 'LE' ? 3 : 0x10003;
 const PATIENCE_MILLISECONDS = 500;
 /** Pages held in memory, kB: SQLite's own default, and what sorting millions of rows asks for. */
 const CACHE = 2_000;
-const CACHE_WHILE_MAKING = 64_000;
+const CACHE_WHILE_MAKING = 16_000;
 
 const SCHEMA = `
   CREATE TABLE entries(number INTEGER PRIMARY KEY, position INTEGER, length INTEGER, digest TEXT, type TEXT, time TEXT,
-    name TEXT, kind TEXT, key TEXT, run INTEGER, settings INTEGER);
+    name TEXT, kind TEXT, key INTEGER, run INTEGER, settings INTEGER);
   CREATE TABLE files(mark INTEGER, rest INTEGER, role TEXT, name TEXT, entry INTEGER);
-  CREATE TABLE links(source INTEGER, target INTEGER, PRIMARY KEY(source, target)) WITHOUT ROWID;
   CREATE TABLE bundles(bundle INTEGER PRIMARY KEY, links BLOB);
-  CREATE TABLE plates(plate TEXT, entry INTEGER, drawn INTEGER, output TEXT, name TEXT);
-  CREATE TABLE numbers(name TEXT, run INTEGER, place INTEGER, entry INTEGER, output TEXT,
-    publisher INTEGER);
+  CREATE TABLE plates(plate TEXT, entry INTEGER PRIMARY KEY, drawn INTEGER, output TEXT, name TEXT);
+  CREATE TABLE numbers(name TEXT, place INTEGER, entry INTEGER, output TEXT, publisher INTEGER,
+    PRIMARY KEY(publisher, place)) WITHOUT ROWID;
   CREATE TABLE withdrawals(withdraws INTEGER, entry INTEGER);
   CREATE TABLE countersignatures(signs INTEGER, entry INTEGER);
   CREATE TABLE settings(name TEXT, value TEXT, settings INTEGER, PRIMARY KEY(name, value, settings)) WITHOUT ROWID;
@@ -38,9 +37,9 @@ const SCHEMA = `
 `;
 
 /** Made after a new index has been filled: sorting once is faster than keeping them sorted. Those of entries end with
- *  the number, by which the latest are found first; those of links hold both columns. */
+ *  the number, by which the latest are found first. */
 const INDEXES = `
-  CREATE INDEX entries_key ON entries(substr(key, 1, 16), number) WHERE key IS NOT NULL;
+  CREATE INDEX entries_key ON entries(key, number) WHERE key IS NOT NULL;
   CREATE INDEX entries_run ON entries(run) WHERE run IS NOT NULL;
   CREATE INDEX entries_digest ON entries(substr(digest, 1, 16));
   CREATE INDEX entries_type ON entries(type, number);
@@ -50,13 +49,9 @@ const INDEXES = `
   CREATE INDEX entries_recipe ON entries(name, number) WHERE run IS NOT NULL;
   CREATE INDEX entries_settings ON entries(settings, number) WHERE settings IS NOT NULL;
   CREATE INDEX files_mark ON files(mark, entry);
-  CREATE INDEX links_target ON links(target, source);
   CREATE INDEX plates_plate ON plates(plate);
-  CREATE INDEX plates_entry ON plates(entry);
   CREATE INDEX plates_drawn ON plates(drawn);
-  CREATE INDEX numbers_name ON numbers(name, run);
   CREATE INDEX numbers_entry ON numbers(entry);
-  CREATE INDEX numbers_publisher ON numbers(publisher);
   CREATE INDEX withdrawals_withdraws ON withdrawals(withdraws, entry);
   CREATE INDEX countersignatures_signs ON countersignatures(signs, entry);
 `;
@@ -198,8 +193,11 @@ function preparing(database: DatabaseSync): Prepare {
 }
 
 function makeTables(database: DatabaseSync, book: string): void {
-  for (const table of [...TABLES.map(({ name }) => name), 'bundles', 'settings', 'extent'])
-    database.exec(`DROP TABLE IF EXISTS ${table}`);
+  // Those of another version too.
+  const tables = database.prepare(
+    "SELECT name FROM sqlite_master WHERE type = 'table' AND name <> 'remembered'",
+  );
+  for (const { name } of tables.all() as { name: string }[]) database.exec(`DROP TABLE ${name}`);
   database.exec(SCHEMA);
   database.prepare('INSERT INTO extent VALUES (?, 0, 0, ?)').run(book, DIGEST_OF_NOTHING);
 }

@@ -83,19 +83,11 @@ export function dependantsOf(
   // One more than the distance; 0 where there is no way.
   const steps = new Uint32Array(count + 1);
   for (const [number, distance] of starts) steps[number] = distance + 1;
-  const first = Math.min(count, ...starts.keys(), ...near.keys());
+  let first = count;
+  for (const number of [...starts.keys(), ...near.keys()]) first = Math.min(first, number);
   const found: Dependant[] = [];
   const plates = new Map<number, Dependant>();
 
-  const settle = (number: number, words: Uint32Array, at: number, end: number): number => {
-    let least = steps[number] as number;
-    for (let i = at; i < end; i += 1) {
-      const step = steps[words[i] as number] as number;
-      if (step !== 0 && (least === 0 || step + 1 < least)) least = step + 1;
-    }
-    steps[number] = least;
-    return least;
-  };
   const takeRun = (number: number, step: number, words: Uint32Array, at: number, end: number) => {
     if (step > 1) found.push({ type: 'run', distance: step - 1, entry: number, publisher: number, place: 0 });
     for (let i = at; i < end && plates.size > 0; i += 1) {
@@ -112,13 +104,13 @@ export function dependantsOf(
     }
   };
 
-  for (const { bundle, links } of bundlesFrom(index, Math.floor((first - 1) / IN_BUNDLE))) {
+  for (const { bundle, links } of bundlesFrom(index, bundleOf(first))) {
     const words = wordsOf(links);
     let number = bundle * IN_BUNDLE + 1;
     for (let at = 0; at < words.length; number += 1) {
       const head = words[at] as number;
       const end = at + 1 + (head >>> 2);
-      const step = settle(number, words, at + 1, end);
+      const step = settle(steps, number, words.subarray(at + 1, end));
       const what = head & 3;
       if (what === RUN && (step > 0 || near.size > 0)) takeRun(number, step, words, at + 1, end);
       if (what === PLATE && step > 1) {
@@ -137,6 +129,76 @@ export function dependantsOf(
   }
   // What was found first is the older run, and stays before what is otherwise equal.
   return found.sort((a, b) => a.distance - b.distance || a.entry - b.entry);
+}
+
+/** Puts down how many steps an entry is away, one more than the nearest of those that it names. */
+function settle(steps: Uint32Array, number: number, targets: Uint32Array): number {
+  let least = steps[number] as number;
+  for (let i = 0; i < targets.length; i += 1) {
+    const step = steps[targets[i] as number] as number;
+    if (step !== 0 && (least === 0 || step + 1 < least)) least = step + 1;
+  }
+  steps[number] = least;
+  return least;
+}
+
+/** Everything that some entries depend on, themselves included, the newest first. Cost: a few bundles of the lineage. */
+export function upstreamOf(index: Index, entries: Iterable<number>): number[] {
+  const targets = targetsReader(index);
+  const found = new Set<number>();
+  const waiting = [...entries];
+  for (let number = waiting.pop(); number !== undefined; number = waiting.pop()) {
+    if (found.has(number)) continue;
+    found.add(number);
+    waiting.push(...targets(number));
+  }
+  return [...found].sort((a, b) => b - a);
+}
+
+/** Reads what entries name; keeps the bundles that it has read. */
+export function targetsReader(index: Index): (number: number) => number[] {
+  const known = new Map<number, Map<number, number[]>>();
+  return (number) => {
+    const bundle = bundleOf(number);
+    let entries = known.get(bundle);
+    if (entries === undefined) {
+      const row = index.get<{ links: Uint8Array }>('SELECT links FROM bundles WHERE bundle = ?', bundle);
+      entries = new Map();
+      if (row !== undefined) {
+        const words = wordsOf(row.links);
+        for (const { entry, at, end } of recordsOf(bundle, words))
+          entries.set(entry, [...words.subarray(at, end)]);
+      }
+      known.set(bundle, entries);
+    }
+    return entries.get(number) ?? [];
+  };
+}
+
+/** The entries of runs that name an entry, oldest first. Cost: reads the bundles from the entry on, as far as wanted. */
+export function* runsNaming(index: Index, number: number): Generator<number> {
+  for (const { bundle, links } of bundlesFrom(index, bundleOf(number))) {
+    const words = wordsOf(links);
+    for (const { entry, what, at, end } of recordsOf(bundle, words)) {
+      if (what === RUN && words.subarray(at, end).includes(number)) yield entry;
+    }
+  }
+}
+
+/** The records of a bundle: what each entry is, and where the entries that it names stand. */
+function* recordsOf(bundle: number, words: Uint32Array) {
+  let entry = bundle * IN_BUNDLE + 1;
+  for (let at = 0; at < words.length; entry += 1) {
+    const head = words[at] as number;
+    const what = head & 3;
+    const end = at + 1 + (head >>> 2);
+    yield { entry, what, at: at + 1, end };
+    at = what === RUN ? end + 1 + (words[end] as number) : end;
+  }
+}
+
+function bundleOf(number: number): number {
+  return Math.floor((number - 1) / IN_BUNDLE);
 }
 
 function* bundlesFrom(index: Index, from: number): Generator<{ bundle: number; links: Uint8Array }> {

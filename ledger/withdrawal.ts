@@ -7,14 +7,12 @@
 import type { Book } from './book.ts';
 import type { WithdrawalEntry } from './entry.ts';
 import type { Index } from './index.ts';
+import { upstreamOf } from './link-bundles.ts';
 
 const ANY = 'SELECT 1 FROM withdrawals LIMIT 1';
 const OF = 'SELECT entry FROM withdrawals WHERE withdraws = ? ORDER BY entry';
 /** Withdrawals and countersignatures name an entry without depending on it. */
 const BESIDE = "SELECT type IN ('withdrawal', 'countersignature') AS beside FROM entries WHERE number = ?";
-const UPSTREAM = `
-  WITH RECURSIVE upstream(number) AS (VALUES (?) UNION SELECT target FROM links JOIN upstream ON source = number)
-  SELECT number FROM upstream ORDER BY number DESC`;
 
 /** The withdrawals that stand of an entry and of everything that it depends on, nearest first; the entry's own come
  *  first of all. Cost: none in a book without withdrawals, else one look at the index for each entry of the lineage. */
@@ -27,8 +25,7 @@ export function withdrawalsUpstream(book: Book, entry: number): number[] {
   return book.ask((index) => {
     if (index.get(ANY) === undefined) return [];
     if (index.get<{ beside: number }>(BESIDE, entry)?.beside === 1) return standingOf(index, entry);
-    const upstream = index.all<{ number: number }>(UPSTREAM, entry);
-    return upstream.flatMap(({ number }) => standingOf(index, number));
+    return upstreamOf(index, [entry]).flatMap((number) => standingOf(index, number));
   });
 }
 

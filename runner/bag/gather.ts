@@ -4,15 +4,14 @@
 import type { Book } from '../../ledger/book.ts';
 import { canonicalJson } from '../../ledger/canonical.ts';
 import type { Entry, Json, RunEntry, WithdrawalEntry } from '../../ledger/entry.ts';
+import { runsNaming } from '../../ledger/link-bundles.ts';
 import { findSubject } from '../../ledger/subject.ts';
 import { lineageOf } from '../../ledger/trace.ts';
 import { badBagCall } from './problem.ts';
 
-/** The first run that holds an entry: unlike the newest it stays the same while the book grows. */
-const FIRST_RUN =
-  "SELECT source FROM links JOIN entries ON number = source WHERE target = ? AND type = 'run' ORDER BY source LIMIT 1";
-const SAID_LATER =
-  "SELECT source FROM links JOIN entries ON number = source WHERE target = ? AND type IN ('withdrawal', 'countersignature') ORDER BY source";
+const SAID_LATER = `
+  SELECT entry FROM withdrawals WHERE withdraws = ?1 UNION SELECT entry FROM countersignatures WHERE signs = ?1
+  ORDER BY entry`;
 
 export interface GatheredEntry {
   readonly entry: Entry;
@@ -74,13 +73,14 @@ function nothingToBag(place: string, found: string) {
   );
 }
 
+/** The first run that holds an entry: unlike the newest it stays the same while the book grows. */
 function firstRunOf(book: Book, number: number): RunEntry | null {
-  const row = book.ask((index) => index.get<{ source: number }>(FIRST_RUN, number));
-  return row === undefined ? null : (book.entry(row.source) as RunEntry);
+  const [first] = book.ask((index) => [...runsNaming(index, number).take(1)]);
+  return first === undefined ? null : (book.entry(first) as RunEntry);
 }
 
 function saidLater(book: Book, number: number): number[] {
-  return book.ask((index) => index.all<{ source: number }>(SAID_LATER, number)).map(({ source }) => source);
+  return book.ask((index) => index.all<{ entry: number }>(SAID_LATER, number)).map(({ entry }) => entry);
 }
 
 function gatherEntry(book: Book, number: number): GatheredEntry {

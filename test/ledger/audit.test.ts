@@ -86,10 +86,12 @@ describe('the index', () => {
   test.each([
     ["UPDATE entries SET key = 'x' WHERE number = 5", 5],
     ['UPDATE entries SET position = position + 1 WHERE number = 5', 5],
-    ['DELETE FROM links WHERE source = 7', 7],
+    ['UPDATE bundles SET links = zeroblob(length(links))', 1],
+    ['DELETE FROM bundles', 1],
+    ["INSERT INTO bundles VALUES (1, x'00000000')", 16],
     ["UPDATE files SET role = 'output' WHERE entry = 1", 1],
     ["INSERT INTO plates VALUES ('1-ABCDEF', 4, 4, 'basis', 'basis')", 4],
-    ["UPDATE numbers SET name = 'x' WHERE run = 1", 10],
+    ["UPDATE numbers SET name = 'x' WHERE publisher = 10", 10],
   ])('that says something else is blamed: %s', (sql, entry) => {
     tamper(sql);
     expect(audit({ directory: copy })).toMatchObject({
@@ -113,7 +115,7 @@ describe('the index', () => {
     });
     cpSync(join(book.directory, 'index.sqlite'), join(copy, 'index.sqlite'));
     tamper(
-      'UPDATE extent SET entries = 10; DELETE FROM entries WHERE number > 10; DELETE FROM numbers WHERE run > 1',
+      'UPDATE extent SET entries = 10; DELETE FROM entries WHERE number > 10; DELETE FROM numbers WHERE publisher > 10',
     );
     expect(audit({ directory: copy })).toMatchObject({ verdict: 'sound', remarks: [] });
   });
