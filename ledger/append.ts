@@ -9,6 +9,7 @@ import { sha256 } from './digest.ts';
 import { writeAll } from './durable.ts';
 import type { Draft, Entry, Json, Person } from './entry.ts';
 import { lackOf } from './entry-shape.ts';
+import { LAST_RUN } from './index.ts';
 import type { IndexKeeper } from './index-keeper.ts';
 import { ledgerPath } from './ledger-file.ts';
 import { badDraft, cannotWrite, ledgerDamaged, nobodyWrites } from './problem.ts';
@@ -31,6 +32,8 @@ export interface Writer {
   readonly announce: Announce;
   /** The key that signs; read, or made, when it is first needed. */
   readonly key: () => KeyObject;
+  /** Whether this writer has said that the clock is behind. */
+  clockSaid?: boolean;
   /** What this writer itself sealed last: it need not be verified or read again. */
   own: { readonly note: string | null; readonly tree: GrowingTree } | null;
 }
@@ -42,6 +45,7 @@ export function appendEntry(writer: Writer, draft: Draft): { entry: Entry; diges
   return turns.take(() => {
     const sealed = sealedState(writer);
     const entry = fillIn(writer, by, draft, sealed.seal);
+    warnOfClock(writer, entry, sealed.seal);
     requireAcceptable(writer, entry, sealed.seal);
     const text = canonicalJson(entry as unknown as Json, draft.type);
     const digest = sha256(text);
@@ -86,10 +90,19 @@ function fillIn({ keeper, now }: Writer, by: Person, draft: Draft, seal: Seal): 
     by,
   };
   if (draft.type !== 'run') return { ...draft, ...common };
-  const last = keeper.ask((index) =>
-    index.get<{ run: number | null }>('SELECT max(run) AS run FROM entries'),
-  );
+  const last = keeper.ask((index) => index.get<{ run: number }>(LAST_RUN));
   return { ...draft, ...common, run: (last?.run ?? 0) + 1 };
+}
+
+/** The order of entries is that of their numbers; a clock that was set back changes nothing in it, but is said. */
+function warnOfClock(writer: Writer, { number, time }: Entry, { entries, time: sealed }: Seal): void {
+  if (writer.clockSaid || entries === 0 || sealed === null || !(time < sealed)) return;
+  writer.clockSaid = true;
+  writer.announce(
+    `The clock says ${time}, which is before entry ${entries} of ${sealed}: entry ${number} is dated by it all the ` +
+      'same, and the numbers give the order. Set the clock.',
+    'clock',
+  );
 }
 
 /** The root of the first `size` entries, base64; null when there are not so many. */

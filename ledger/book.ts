@@ -35,7 +35,7 @@ import type { KeyObject } from 'node:crypto';
 import { basename, join, resolve } from 'node:path';
 import { appendEntry, type Writer } from './append.ts';
 import type { Draft, Entry, Person, RunEntry, StageEntry, StoredFile } from './entry.ts';
-import type { Index } from './index.ts';
+import { type Index, LAST_RUN } from './index.ts';
 import { keepIndex } from './index-keeper.ts';
 import { markOf } from './index-rows.ts';
 import { hasBook, nameOf, requireBook, startBook } from './layout.ts';
@@ -50,10 +50,9 @@ import { withdrawalsUpstream } from './withdrawal.ts';
 
 const STAGES_OF_KEY = 'SELECT number FROM entries WHERE key = ? ORDER BY number DESC';
 const RUN = 'SELECT number FROM entries WHERE run = ?';
-const LAST_RUN = 'SELECT max(run) AS run FROM entries';
 
-/** Hears what was put right after a crash, of damage, and of keys that are new. */
-export type Announce = (text: string, what: 'put right' | 'damaged' | 'key') => void;
+/** Hears what was put right after a crash, of damage, of keys that are new, and of a clock that is behind. */
+export type Announce = (text: string, what: 'put right' | 'damaged' | 'key' | 'clock') => void;
 
 export interface BookOptions {
   /** Who enters; without a person the book can only be read. */
@@ -160,10 +159,10 @@ function bookIn(
   { by, now = () => new Date() }: BookOptions,
 ): Book {
   const store = openStore(join(directory, 'store'));
-  const keeper = keepIndex(directory, name);
+  const keeper = keepIndex(directory, name, announce);
   const writer: Writer = { directory, turns, keeper, store, by, now, announce, key, own: null };
   const entry = (number: number) => readEntry(directory, keeper, number);
-  const lastRun = () => keeper.ask((index) => index.get<{ run: number | null }>(LAST_RUN))?.run ?? 0;
+  const lastRun = () => keeper.ask((index) => index.get<{ run: number }>(LAST_RUN))?.run ?? 0;
   const findRun = (run: number) => {
     const row = keeper.ask((index) => index.get<{ number: number }>(RUN, run));
     return row === undefined ? undefined : (entry(row.number) as RunEntry);

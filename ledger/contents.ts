@@ -3,7 +3,7 @@
 import type { Book } from './book.ts';
 import type { Index } from './index.ts';
 import { beginsWith, LONGEST_VALUE, type Value, valuesOf } from './index-rows.ts';
-import { targetsReader } from './link-bundles.ts';
+import { namedByRuns } from './link-bundles.ts';
 import { badCall } from './problem.ts';
 import { timeBound } from './time.ts';
 import type { TracedEntry } from './trace.ts';
@@ -13,6 +13,8 @@ import { withdrawalsOf, withdrawalsUpstream } from './withdrawal.ts';
 export const PAGE = 20;
 /** Matching entries are counted up to so many: counting all would take longer than finding the page. */
 export const MOST_COUNTED = 10_000;
+/** Answers that are fetched at first. */
+const FIRST_PIECE = 2_000;
 
 export interface ContentsFilter {
   /** Runs of a recipe, and the entries that these runs name. */
@@ -87,17 +89,12 @@ function find(
   conditions: readonly Condition[],
   last: number,
 ): { numbers: number[]; matching: number } {
-  if (recipe !== undefined) {
-    const found = ofRecipe(index, recipe, conditions);
-    return { numbers: found, matching: found.length };
-  }
   const { where, values } = joined(conditions);
-  const order = /\btime\b/.test(where) ? 'time DESC, number DESC' : 'number DESC';
-  const rows = index.all<{ number: number }>(
-    `SELECT number FROM entries ${where} ORDER BY ${order} LIMIT ?`,
-    ...values,
-    last,
-  );
+  const order = /(?<!\+)\btime\b/.test(where) ? 'time DESC, number DESC' : 'number DESC';
+  const sorted = `SELECT number FROM entries ${where} ORDER BY ${order}`;
+  if (recipe !== undefined)
+    return ofRecipe(index, recipe, conditions.length === 0 ? null : { sorted, values }, last);
+  const rows = index.all<{ number: number }>(`${sorted} LIMIT ?`, ...values, last);
   const matching =
     conditions.length === 0
       ? index.extent().entries
@@ -109,31 +106,47 @@ function find(
   return { numbers: rows.map(({ number }) => number).sort((a, b) => b - a), matching: matching ?? 0 };
 }
 
-/** The runs of a recipe and what they name, newest first, as far as they are counted. What older runs name is older
- *  than the older run, so going back from the newest run finds the latest first. */
-function ofRecipe(index: Index, recipe: string, conditions: readonly Condition[]): number[] {
-  const found = new Set<number>();
-  const { where, values } = joined([
-    { sql: 'number IN (SELECT value FROM json_each(?))', values: [] },
-    ...conditions,
-  ]);
+/** The runs of a recipe and what they name: those that pass a question, or all. */
+function ofRecipe(
+  index: Index,
+  recipe: string,
+  question: { readonly sorted: string; readonly values: readonly Value[] } | null,
+  last: number,
+): { numbers: number[]; matching: number } {
   const runs = index.all<{ number: number }>(
-    'SELECT number FROM entries WHERE run IS NOT NULL AND name = ? ORDER BY number DESC LIMIT ?',
+    'SELECT number FROM entries WHERE run IS NOT NULL AND name = ?',
     recipe,
-    MOST_COUNTED + 1,
   );
-  const targets = targetsReader(index);
-  for (const { number: run } of runs) {
-    if (found.size > MOST_COUNTED) break;
-    const named = JSON.stringify([run, ...targets(run)]);
-    for (const { number } of index.all<{ number: number }>(
-      `SELECT number FROM entries ${where}`,
-      named,
-      ...values,
-    ))
-      found.add(number);
+  if (runs.length === 0) return { numbers: [], matching: 0 };
+  const isOfRecipe = namedByRuns(
+    index,
+    runs.map(({ number }) => number),
+  );
+  const numbers: number[] = [];
+  let matching = 0;
+  for (const number of question === null ? downFrom(index.extent().entries) : answers(index, question)) {
+    if (!isOfRecipe(number)) continue;
+    matching += 1;
+    if (numbers.length < last) numbers.push(number);
+    if (matching > MOST_COUNTED) break;
   }
-  return [...found].sort((a, b) => b - a);
+  return { numbers: numbers.sort((a, b) => b - a), matching };
+}
+
+function* downFrom(number: number): Generator<number> {
+  for (let n = number; n >= 1; n -= 1) yield n;
+}
+
+/** The numbers that a question finds, in pieces that grow: most readers stop early. */
+function* answers(
+  index: Index,
+  { sorted, values }: { readonly sorted: string; readonly values: readonly Value[] },
+): Generator<number> {
+  for (let from = 0, piece = FIRST_PIECE; ; from += piece, piece *= 10) {
+    const rows = index.all<{ number: number }>(`${sorted} LIMIT ? OFFSET ?`, ...values, piece, from);
+    for (const { number } of rows) yield number;
+    if (rows.length < piece) return;
+  }
 }
 
 function joined(conditions: readonly Condition[]): { where: string; values: Value[] } {
@@ -145,12 +158,15 @@ function conditionsOf(filter: ContentsFilter): Condition[] {
   const { stage, kind, type, since, until, digest } = filter;
   const conditions: Condition[] = [];
   const add = (sql: string, ...values: Value[]) => conditions.push({ sql, values });
-  if (type !== undefined) add('type = ?', type);
-  if (kind !== undefined) add('kind = ?', kind);
-  if (stage !== undefined) add('kind IS NOT NULL AND name = ?', stage);
-  if (since !== undefined) add('time >= ?', timeBound(since));
+  const wanted = parameterOf(filter);
+  // A file or a value names the fewest entries: a plus keeps SQLite from starting with anything else.
+  const plus = digest !== undefined || wanted !== null ? '+' : '';
+  if (type !== undefined) add(`${plus}type = ?`, type);
+  if (kind !== undefined) add(`${plus}kind = ?`, kind);
+  if (stage !== undefined) add(`kind IS NOT NULL AND ${plus}name = ?`, stage);
+  if (since !== undefined) add(`${plus}time >= ?`, timeBound(since));
   // Whatever continues the bound counts: a day has all its hours.
-  if (until !== undefined) add('time < ?', `${timeBound(until)}\u007f`);
+  if (until !== undefined) add(`${plus}time < ?`, `${timeBound(until)}\u007f`);
   if (digest !== undefined) {
     const digits = digest.toLowerCase();
     if (!/^[0-9a-f]{6,64}$/.test(digits))
@@ -164,18 +180,15 @@ function conditionsOf(filter: ContentsFilter): Condition[] {
       digits.slice(0, 16).padEnd(16, 'f'),
     );
   }
-  const wanted = parameterOf(filter);
   if (wanted !== null) {
     const { path, value, stage: of, rest } = wanted;
     const sets = 'SELECT settings FROM settings WHERE name = ? AND value = ?';
     const shown = value.slice(0, LONGEST_VALUE);
+    // The first looks them up, the second keeps the stage's own among those of its short name.
     add(
-      `settings IS NOT NULL AND (settings IN (${sets}) OR (name = ? AND settings IN (${sets})))`,
-      path,
-      shown,
-      of,
-      rest,
-      shown,
+      `${digest === undefined ? '' : '+'}settings IN (${sets} UNION ${sets}) AND (settings IN (${sets}) OR +name = ?)`,
+      ...[path, shown, rest, shown],
+      ...[path, shown, of],
     );
   }
   return conditions;

@@ -4,6 +4,7 @@
 
 import { existsSync, rmSync } from 'node:fs';
 import { join } from 'node:path';
+import type { Announce } from './book.ts';
 import { sha256 } from './digest.ts';
 import type { Entry } from './entry.ts';
 import { hashedLines } from './hashed-lines.ts';
@@ -29,13 +30,13 @@ export interface IndexKeeper {
 }
 
 /** The index of the book in a directory; opened at the first question. */
-export function keepIndex(directory: string, book: string): IndexKeeper {
+export function keepIndex(directory: string, book: string, announce: Announce = () => {}): IndexKeeper {
   let index: Index | null = null;
   /** The seal with which the index was last found level. */
   let level: Seal | null = null;
 
   const opened = (): Index => {
-    if (index === null) index = openOrReplace(directory, book);
+    if (index === null) index = openOrReplace(directory, book, announce);
     return index;
   };
   const drop = (replacement: () => Index): Index => {
@@ -48,7 +49,7 @@ export function keepIndex(directory: string, book: string): IndexKeeper {
     const current = opened();
     const seal = readSeal(directory);
     if (typeof seal !== 'string' && level !== null && sameSeal(seal, level)) return current;
-    bringUp(current, directory, typeof seal === 'string' ? null : seal);
+    bringUp(current, directory, typeof seal === 'string' ? null : seal, announce);
     level = typeof seal === 'string' ? null : seal;
     return current;
   };
@@ -62,7 +63,7 @@ export function keepIndex(directory: string, book: string): IndexKeeper {
         if (code === null) throw error;
         // The last level state is still a true answer; the next question tries again.
         if (code === BUSY && index !== null) return question(index);
-        drop(() => (isBroken(code) ? openAgain(directory, book) : openIndex(':memory:', book)));
+        drop(() => (isBroken(code) ? openAgain(directory, book, announce) : openIndex(':memory:', book)));
         return question(sync());
       }
     },
@@ -83,7 +84,7 @@ export function keepIndex(directory: string, book: string): IndexKeeper {
 }
 
 /** Adds what the ledger has beyond the index, or makes the index again where it does not fit. */
-function bringUp(index: Index, directory: string, seal: Seal | null): void {
+function bringUp(index: Index, directory: string, seal: Seal | null, announce: Announce): void {
   const extent = index.extent();
   if (seal === null) {
     readNew(directory, extent, null, (lines) => index.add(lines));
@@ -92,9 +93,11 @@ function bringUp(index: Index, directory: string, seal: Seal | null): void {
   if (extent.bytes === seal.bytes && extent.last === seal.last && extent.book === seal.book) return;
   // To sort once is faster than to keep sorted: from half on, making it again is less work.
   const isMuch = seal.entries - extent.entries >= extent.entries;
-  const fits =
-    extent.book === seal.book && extent.bytes < seal.bytes && !isMuch && continues(directory, extent);
-  if (fits) readNew(directory, extent, seal, (lines) => index.add(lines));
+  const belongs = extent.book === seal.book && extent.bytes < seal.bytes && continues(directory, extent);
+  const isEmpty = extent.entries === 0 && seal.entries > 1;
+  if (isEmpty || !belongs)
+    announce(madeAgain(isEmpty ? 'is empty' : 'does not fit its ledger', seal), 'put right');
+  if (belongs && !isMuch) readNew(directory, extent, seal, (lines) => index.add(lines));
   else readNew(directory, emptyExtent(seal.book), seal, (lines) => index.rebuild(seal.book, lines));
 }
 
@@ -159,37 +162,42 @@ function continues(directory: string, extent: Extent): boolean {
   });
 }
 
-function openOrReplace(directory: string, book: string): Index {
-  makeWhereMissing(directory, book);
+function openOrReplace(directory: string, book: string, announce: Announce): Index {
+  makeWhereMissing(directory, book, announce);
   try {
     return openIndex(join(directory, 'index.sqlite'), book);
   } catch (error) {
     const code = sqliteCode(error);
     if (code === null) throw error;
-    return isBroken(code) ? openAgain(directory, book) : openIndex(':memory:', book);
+    return isBroken(code) ? openAgain(directory, book, announce) : openIndex(':memory:', book);
   }
 }
 
 /** Makes the index of a book that has entries and none. Where that fails, the usual way says why. */
-function makeWhereMissing(directory: string, book: string): void {
+function makeWhereMissing(directory: string, book: string, announce: Announce): void {
   const path = join(directory, 'index.sqlite');
   const seal = readSeal(directory);
   if (existsSync(path) || typeof seal === 'string' || seal.entries === 0) return;
+  announce(madeAgain('is missing', seal), 'put right');
   try {
     readNew(directory, emptyExtent(book), seal, (lines) => makeIndexFile(path, book, lines));
   } catch {}
 }
 
 /** A new index in place of one that is no database. */
-function openAgain(directory: string, book: string): Index {
+function openAgain(directory: string, book: string, announce: Announce): Index {
   try {
     for (const suffix of ['', '-wal', '-shm'])
       rmSync(join(directory, `index.sqlite${suffix}`), { force: true });
-    makeWhereMissing(directory, book);
+    makeWhereMissing(directory, book, announce);
     return openIndex(join(directory, 'index.sqlite'), book);
   } catch {
     return openIndex(':memory:', book);
   }
+}
+
+function madeAgain(why: string, { entries }: Seal): string {
+  return `The index of the book ${why}: it is made again from the ledger's ${entries} entries. Nothing is lost.`;
 }
 
 function emptyExtent(book: string): Extent {

@@ -56,6 +56,9 @@ const INDEXES = `
   CREATE INDEX countersignatures_signs ON countersignatures(signs, entry);
 `;
 
+/** The number of the last run. Not max(run): that would read every entry. */
+export const LAST_RUN = 'SELECT run FROM entries WHERE run IS NOT NULL ORDER BY run DESC LIMIT 1';
+
 /** How much of the ledger the index has. */
 export interface Extent {
   readonly book: string;

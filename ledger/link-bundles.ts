@@ -14,6 +14,11 @@ import type { Index } from './index.ts';
 export const IN_BUNDLE = 256;
 /** Bundles in memory at a time while they are gone through. */
 const AT_ONCE = 500;
+/** The same, where they are gone through backwards and few may do. */
+const BACK_AT_ONCE = 50;
+const BUNDLES = 'SELECT bundle, links FROM bundles WHERE bundle >= ? AND bundle < ? ORDER BY bundle';
+
+const NO_WORDS = new Uint32Array(0);
 
 const OTHER = 0;
 const RUN = 1;
@@ -156,23 +161,67 @@ export function upstreamOf(index: Index, entries: Iterable<number>): number[] {
 }
 
 /** Reads what entries name; keeps the bundles that it has read. */
-export function targetsReader(index: Index): (number: number) => number[] {
-  const known = new Map<number, Map<number, number[]>>();
+export function targetsReader(index: Index): (number: number) => Uint32Array {
+  const known = new Map<number, { words: Uint32Array; starts: Uint32Array }>();
   return (number) => {
     const bundle = bundleOf(number);
-    let entries = known.get(bundle);
-    if (entries === undefined) {
+    let found = known.get(bundle);
+    if (found === undefined) {
       const row = index.get<{ links: Uint8Array }>('SELECT links FROM bundles WHERE bundle = ?', bundle);
-      entries = new Map();
-      if (row !== undefined) {
-        const words = wordsOf(row.links);
-        for (const { entry, at, end } of recordsOf(bundle, words))
-          entries.set(entry, [...words.subarray(at, end)]);
-      }
-      known.set(bundle, entries);
+      const words = row === undefined ? NO_WORDS : wordsOf(row.links);
+      found = { words, starts: startsOf(words) };
+      known.set(bundle, found);
     }
-    return entries.get(number) ?? [];
+    const at = found.starts[number - 1 - bundle * IN_BUNDLE];
+    if (at === undefined || at >= found.words.length) return NO_WORDS;
+    return found.words.subarray(at + 1, at + 1 + ((found.words[at] as number) >>> 2));
   };
+}
+
+/** Where the records of a bundle start; beyond the last one, the bundle's end. */
+function startsOf(words: Uint32Array): Uint32Array {
+  const starts = new Uint32Array(IN_BUNDLE).fill(words.length);
+  for (let at = 0, i = 0; at < words.length; i += 1) {
+    starts[i] = at;
+    at = after(words, at);
+  }
+  return starts;
+}
+
+/** Where the record after the one at a place starts. */
+function after(words: Uint32Array, at: number): number {
+  const head = words[at] as number;
+  const end = at + 1 + (head >>> 2);
+  return (head & 3) === RUN ? end + 1 + (words[end] as number) : end;
+}
+
+/** Tells whether an entry is one of some runs or named by one. @param runs  their entries
+ *  Cost: reads the bundles from the newest back to the oldest entry that is asked for. */
+export function namedByRuns(index: Index, runs: Iterable<number>): (number: number) => boolean {
+  const marks = new Uint8Array(index.extent().entries + 1);
+  for (const run of runs) marks[run] = 1;
+  /** Bundles from here on have been read: an entry is named by later ones only. */
+  let read = bundleOf(marks.length - 1) + 1;
+  return (number) => {
+    const wanted = bundleOf(number);
+    while (read > wanted) {
+      const from = Math.max(0, read - BACK_AT_ONCE);
+      const bundles = index.all<{ bundle: number; links: Uint8Array }>(BUNDLES, from, read);
+      for (const { bundle, links } of bundles.reverse()) markNamed(marks, bundle, wordsOf(links));
+      read = from;
+    }
+    return marks[number] === 1;
+  };
+}
+
+/** Marks what the marked runs of a bundle name. */
+function markNamed(marks: Uint8Array, bundle: number, words: Uint32Array): void {
+  let entry = bundle * IN_BUNDLE + 1;
+  for (let at = 0; at < words.length; at = after(words, at), entry += 1) {
+    const head = words[at] as number;
+    if ((head & 3) !== RUN || marks[entry] !== 1) continue;
+    for (let i = at + 1, end = at + 1 + (head >>> 2); i < end; i += 1) marks[words[i] as number] = 1;
+  }
 }
 
 /** The entries of runs that name an entry, oldest first. Cost: reads the bundles from the entry on, as far as wanted. */
@@ -193,7 +242,7 @@ function* recordsOf(bundle: number, words: Uint32Array) {
     const what = head & 3;
     const end = at + 1 + (head >>> 2);
     yield { entry, what, at: at + 1, end };
-    at = what === RUN ? end + 1 + (words[end] as number) : end;
+    at = after(words, at);
   }
 }
 
@@ -203,11 +252,7 @@ function bundleOf(number: number): number {
 
 function* bundlesFrom(index: Index, from: number): Generator<{ bundle: number; links: Uint8Array }> {
   for (let next = Math.max(0, from); ; next += AT_ONCE) {
-    const bundles = index.all<{ bundle: number; links: Uint8Array }>(
-      'SELECT bundle, links FROM bundles WHERE bundle >= ? AND bundle < ? ORDER BY bundle',
-      next,
-      next + AT_ONCE,
-    );
+    const bundles = index.all<{ bundle: number; links: Uint8Array }>(BUNDLES, next, next + AT_ONCE);
     if (bundles.length === 0) return;
     yield* bundles;
   }

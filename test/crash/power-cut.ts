@@ -247,7 +247,7 @@ function describe(event: Event): string {
   return `${step.op} ${place}`;
 }
 
-/** Mulberry32, by Tommy Ettinger, public domain. */
+/** A counter and a mixing function: even enough to draw samples with. */
 function seeded(seed: number): () => number {
   let state = seed;
   return () => {

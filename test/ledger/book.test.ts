@@ -3,7 +3,9 @@
 import { existsSync, mkdirSync, readdirSync, readFileSync, rmSync, statSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { afterEach, beforeEach, describe, expect, test } from 'vitest';
+import { audit } from '../../ledger/audit.ts';
 import { type Book, openBook } from '../../ledger/book.ts';
+import { contents } from '../../ledger/contents.ts';
 import type { Draft } from '../../ledger/entry.ts';
 import {
   entryInput,
@@ -334,6 +336,29 @@ describe('asking', () => {
   });
 });
 
+describe('a clock that was set back', () => {
+  test('is announced once, and neither order nor soundness suffers', () => {
+    const said: string[] = [];
+    const { time: before } = book.append(stageDraft(book)).entry;
+    book.close();
+    const now = () => new Date(Date.UTC(2020, 0, 1));
+    const options = { by: { name: 'A. Keeper' }, key: keyFile(directory), now };
+    const late = openBook(book.directory, { ...options, announce: (text) => said.push(text) });
+    for (let i = 0; i < 3; i += 1) late.append(stageDraft(late));
+    expect(said).toEqual([
+      `The clock says 2020-01-01T00:00:00.000Z, which is before entry 1 of ${before}: entry 2 is dated by it all the ` +
+        'same, and the numbers give the order. Set the clock.',
+    ]);
+    expect([...late.entries()].map(({ number }) => number)).toEqual([1, 2, 3, 4]);
+    expect(contents(late).document.entries.map(({ number }) => number)).toEqual([1, 2, 3, 4]);
+    expect(contents(late, { until: '2020-01-01' }).document.entries.map(({ number }) => number)).toEqual([
+      2, 3, 4,
+    ]);
+    expect(audit(late)).toMatchObject({ verdict: 'sound', entries: 4, problems: [] });
+    late.close();
+  });
+});
+
 describe('the index', () => {
   const index = () => join(book.directory, 'index.sqlite');
 
@@ -347,8 +372,15 @@ describe('the index', () => {
     book.append(runDraft(book, [1]));
     book.close();
     spoil();
-    const again = openBook(book.directory, { by: { name: 'A. Keeper' }, key: keyFile(directory) });
+    const said: string[] = [];
+    const announce = (text: string) => said.push(text);
+    const again = openBook(book.directory, { by: { name: 'A. Keeper' }, key: keyFile(directory), announce });
     expect(again.count()).toBe(6);
+    expect(said).toEqual([
+      expect.stringMatching(
+        /^The index of the book .*it is made again from the ledger's 6 entries\. Nothing is lost\.$/,
+      ),
+    ]);
     expect(again.lastRun()?.number).toBe(6);
     expect(again.append(stageDraft(again)).entry.number).toBe(7);
     again.close();
@@ -365,10 +397,15 @@ describe('the index', () => {
     const writer = openBook(book.directory, { by: { name: 'A. Keeper' }, key: keyFile(directory) });
     writer.append(stageDraft(writer, { name: 'second' }));
     writer.close();
-    for (const content of [behind, readFileSync(join(other.directory, 'index.sqlite'))]) {
+    const foreign = readFileSync(join(other.directory, 'index.sqlite'));
+    for (const content of [behind, foreign]) {
       writeFileSync(index(), content);
-      const again = openBook(book.directory);
+      const said: string[] = [];
+      const again = openBook(book.directory, { announce: (text) => said.push(text) });
       expect(again.count()).toBe(2);
+      expect(said.join()).toMatch(
+        content === foreign ? /^The index of the book does not fit its ledger/ : /^$/,
+      );
       expect(again.entry(2)).toMatchObject({ name: 'second' });
       again.close();
     }

@@ -306,7 +306,7 @@ describe('a book of the first version', () => {
     expect(audit(reader).verdict).toBe('sound');
     expect(() => prove(reader, 1)).toThrow('The book was not signed so far.');
     expect(existsSync(at('seals/latest'))).toBe(false);
-    expect(said).toEqual([]);
+    expect(said).toEqual([expect.stringMatching(/^The index of the book is missing: it is made again/)]);
     reader.close();
   });
 
@@ -392,10 +392,13 @@ test('a reader leaves an entry that was not sealed to the next writer', () => {
   writeFileSync(at('seals/latest'), seal);
   const reader = openBook(book.directory, { announce: (text) => said.push(text) });
   expect(reader.count()).toBe(1);
-  expect(said).toEqual([]);
+  expect(said).toEqual([
+    expect.stringMatching(/^The index of the book does not fit its ledger: it is made again/),
+  ]);
   expect(audit(reader)).toMatchObject({ verdict: 'sound', entries: 1 });
   expect(audit(reader).remarks.join()).toContain('bytes beyond the seal');
   reader.close();
+  said.length = 0;
   const writer = open();
   expect(said).toEqual([
     'Entry 2 was written whole when its writer was interrupted: it stands, and is now sealed.',
