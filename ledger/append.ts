@@ -12,7 +12,7 @@ import { lackOf } from './entry-shape.ts';
 import { LAST_RUN } from './index.ts';
 import type { IndexKeeper } from './index-keeper.ts';
 import { ledgerPath } from './ledger-file.ts';
-import { badDraft, cannotWrite, ledgerDamaged, nobodyWrites } from './problem.ts';
+import { asProblem, badDraft, cannotWrite, ledgerDamaged, nobodyWrites } from './problem.ts';
 import { digestOfEntry, readEntry } from './reading.ts';
 import { recover, type Sealed, standingOf, takeUp } from './recovery.ts';
 import { readSeal, type Seal, type SealFacts, sealPath } from './seal.ts';
@@ -42,17 +42,23 @@ export interface Writer {
 export function appendEntry(writer: Writer, draft: Draft): { entry: Entry; digest: string } {
   const { by, turns } = writer;
   if (by === undefined) throw nobodyWrites();
-  return turns.take(() => {
-    const sealed = sealedState(writer);
-    const entry = fillIn(writer, by, draft, sealed.seal);
-    warnOfClock(writer, entry, sealed.seal);
-    requireAcceptable(writer, entry, sealed.seal);
-    const text = canonicalJson(entry as unknown as Json, draft.type);
-    const digest = sha256(text);
-    writeLine(writer, sealed, Buffer.from(`${text}\n`), digest, entry.time);
-    level(writer.keeper);
-    return { entry, digest };
-  });
+  try {
+    return turns.take(() => enter(writer, by, draft));
+  } catch (error) {
+    throw asProblem(error, writer.directory, true);
+  }
+}
+
+function enter(writer: Writer, by: Person, draft: Draft): { entry: Entry; digest: string } {
+  const sealed = sealedState(writer);
+  const entry = fillIn(writer, by, draft, sealed.seal);
+  warnOfClock(writer, entry, sealed.seal);
+  requireAcceptable(writer, entry, sealed.seal);
+  const text = canonicalJson(entry as unknown as Json, draft.type);
+  const digest = sha256(text);
+  writeLine(writer, sealed, Buffer.from(`${text}\n`), digest, entry.time);
+  level(writer.keeper);
+  return { entry, digest };
 }
 
 /** The seal that the ledger's end agrees with, after what an interrupted writer left has been put right. */

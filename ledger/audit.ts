@@ -63,15 +63,9 @@ function auditDirectory(directory: string, quick: boolean): AuditDocument {
   const ledger = auditLedger(directory, {
     quick,
     visit(line, damaged, tree) {
-      noteMakers(line, store.files, codes);
-      for (const { what, digest } of auditReferences(
-        recollection,
-        line,
-        damaged,
-        tree,
-        hasFileIn(store.files),
-      ))
+      for (const { what, digest } of auditReferences(recollection, line, damaged, tree, store.hasFile))
         references.push({ entry: line.number, what, ...(digest === undefined ? {} : { digest }) });
+      noteMakers(line, store.files, codes);
       if (!damaged && line.entry !== null) index?.visit(line);
     },
   });
@@ -98,7 +92,7 @@ function auditDirectory(directory: string, quick: boolean): AuditDocument {
     reached: together,
     remarks,
     files: store.files.size,
-    bytes: store.bytes,
+    bytes: store.bytes(),
     quick,
   };
 }
@@ -114,21 +108,36 @@ interface SurveyedFile {
 interface Survey {
   readonly files: Map<string, SurveyedFile>;
   readonly others: readonly string[];
-  readonly bytes: number;
+  bytes(): number;
+  /** Whether a file stands with its size. Bytes that are not their name are reported with the store. */
+  hasFile(file: StoredFile): boolean;
 }
 
 function surveyStore(directory: string, quick: boolean): Survey {
   const { digests, others } = existsSync(directory) ? listStore(directory) : { digests: [], others: [] };
   const files = new Map<string, SurveyedFile>();
   let bytes = 0;
-  for (const digest of digests) {
+  const survey = (digest: string): SurveyedFile | undefined => {
     const path = join(directory, digest.slice(0, 3), digest);
-    const { size } = statSync(path);
-    const found = quick ? digest : sha256File(path);
-    bytes += size;
-    files.set(digest, { bytes: size, found: found === digest ? null : found, maker: null });
-  }
-  return { files, others, bytes };
+    const found = statSync(path, { throwIfNoEntry: false });
+    if (found === undefined) return undefined;
+    const sum = quick ? digest : sha256File(path);
+    bytes += found.size;
+    const file = { bytes: found.size, found: sum === digest ? null : sum, maker: null };
+    files.set(digest, file);
+    return file;
+  };
+  for (const digest of digests) survey(digest);
+  return {
+    files,
+    others,
+    bytes: () => bytes,
+    hasFile({ digest, bytes: size }) {
+      // What somebody entered after the list was made is not in it.
+      const file = files.get(digest) ?? survey(digest);
+      return file !== undefined && (file.found !== null || file.bytes === size);
+    },
+  };
 }
 
 /** @param codes  digests of code whose files were noted */
@@ -149,14 +158,6 @@ function noteMakers(
   for (const [path, digest] of Object.entries(entry.code.files ?? {})) note(digest, `code ${path}`);
   if (entry.code.package !== undefined) note(entry.code.package.digest, 'code package.json');
   if (entry.code.lock !== undefined) note(entry.code.lock.digest, 'code lock file');
-}
-
-/** Whether a file stands with its size. Bytes that are not their name are reported with the store. */
-function hasFileIn(files: ReadonlyMap<string, SurveyedFile>): (file: StoredFile) => boolean {
-  return ({ digest, bytes }) => {
-    const file = files.get(digest);
-    return file !== undefined && (file.found !== null || file.bytes === bytes);
-  };
 }
 
 function problemsOf({ files, others }: Survey): { problems: Damage[]; remarks: string[] } {

@@ -40,6 +40,7 @@ import { keepIndex } from './index-keeper.ts';
 import { markOf } from './index-rows.ts';
 import { hasBook, nameOf, requireBook, startBook } from './layout.ts';
 import { digestOfFile } from './outside-file.ts';
+import { asProblem } from './problem.ts';
 import { digestOfEntry, readEntry, visitEntries } from './reading.ts';
 import { recover, type Sealing, standingOf, takeUp } from './recovery.ts';
 import { signingKeyFile, useSigningKey } from './signing-key.ts';
@@ -113,7 +114,7 @@ export function openBook(directory: string, options: BookOptions = {}): Book {
     return bookIn(at, nameOf(at), turns, announce, key, options);
   } catch (error) {
     turns.close();
-    throw error;
+    throw asProblem(error, at, options.by !== undefined);
   }
 }
 

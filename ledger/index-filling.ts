@@ -19,10 +19,15 @@ export interface IndexedLine {
 
 const SETTINGS = TABLES[0].columns.indexOf('settings');
 
+/** Another process has changed the index between a look at its extent and the turn to write to it. */
+export class IndexMoved extends Error {
+  override readonly name = 'IndexMoved';
+}
+
 export type Prepare = (sql: string) => StatementSync;
 
 /** Adds entries that follow the extent, and moves it on. Only within a transaction.
- *  @throws Error for entries that do not follow; such as stand already are passed over */
+ *  @throws IndexMoved for entries that do not follow; such as stand already are passed over */
 export function addLines(prepare: Prepare, extent: Extent, lines: Iterable<IndexedLine>): void {
   let { entries, bytes, last } = extent;
   const tables = TABLES.map(({ name, columns }) => fillTable(prepare, name, columns.length));
@@ -34,7 +39,7 @@ export function addLines(prepare: Prepare, extent: Extent, lines: Iterable<Index
     if (entry.number !== entries + 1 || entry.before !== last) {
       // Another process added it in the meantime.
       if (entry.number <= entries) continue;
-      throw new Error(`the index was offered entry ${entry.number} after ${entries}`);
+      throw new IndexMoved();
     }
     const { rows, links } = shapedRows(entry, { position: bytes, length, digest });
     for (const [i, table] of tables.entries()) table.add(rows[i] as Value[][]);

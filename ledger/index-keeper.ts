@@ -2,14 +2,14 @@
  *  is missing, of another book, ahead of the ledger, or no database; where the directory cannot be written it is held
  *  in memory. When it is level, nothing but the seal is read. */
 
-import { existsSync, rmSync } from 'node:fs';
+import { accessSync, constants, existsSync, rmSync } from 'node:fs';
 import { join } from 'node:path';
 import type { Announce } from './book.ts';
 import { sha256 } from './digest.ts';
 import type { Entry } from './entry.ts';
 import { hashedLines } from './hashed-lines.ts';
-import { type Extent, type Index, makeIndexFile, openIndex } from './index.ts';
-import type { IndexedLine } from './index-filling.ts';
+import { type Extent, type Index, makeIndexFile, openIndex, openIndexToRead } from './index.ts';
+import { type IndexedLine, IndexMoved } from './index-filling.ts';
 import { ledgerPath, linesOf, parseEntry, parseTrusted, sizeOf, withFile } from './ledger-file.ts';
 import { rememberingReader } from './line-reader.ts';
 import { ledgerDamaged } from './problem.ts';
@@ -19,6 +19,9 @@ import { readSeal, type Seal } from './seal.ts';
 const BUSY = 5;
 const CORRUPT = 11;
 const NOT_A_DATABASE = 26;
+
+/** Other processes may write to the index at the same time. */
+const MOST_ATTEMPTS = 10;
 
 export interface IndexKeeper {
   /** Asks the index, after it has been brought up to the seal.
@@ -47,11 +50,20 @@ export function keepIndex(directory: string, book: string, announce: Announce = 
   };
   const sync = (): Index => {
     const current = opened();
-    const seal = readSeal(directory);
-    if (typeof seal !== 'string' && level !== null && sameSeal(seal, level)) return current;
-    bringUp(current, directory, typeof seal === 'string' ? null : seal, announce);
-    level = typeof seal === 'string' ? null : seal;
-    return current;
+    for (let attempt = 1; ; attempt += 1) {
+      // In this order: the index is never ahead of the seal, so a seal that is read later is not behind it.
+      const extent = current.extent();
+      const seal = readSeal(directory);
+      if (typeof seal !== 'string' && level !== null && sameSeal(seal, level)) return current;
+      try {
+        bringUp(current, extent, directory, typeof seal === 'string' ? null : seal, announce);
+      } catch (error) {
+        if (error instanceof IndexMoved && attempt < MOST_ATTEMPTS) continue;
+        throw error;
+      }
+      level = typeof seal === 'string' ? null : seal;
+      return current;
+    }
   };
 
   return {
@@ -84,8 +96,13 @@ export function keepIndex(directory: string, book: string, announce: Announce = 
 }
 
 /** Adds what the ledger has beyond the index, or makes the index again where it does not fit. */
-function bringUp(index: Index, directory: string, seal: Seal | null, announce: Announce): void {
-  const extent = index.extent();
+function bringUp(
+  index: Index,
+  extent: Extent,
+  directory: string,
+  seal: Seal | null,
+  announce: Announce,
+): void {
   if (seal === null) {
     readNew(directory, extent, null, (lines) => index.add(lines));
     return;
@@ -95,10 +112,11 @@ function bringUp(index: Index, directory: string, seal: Seal | null, announce: A
   const isMuch = seal.entries - extent.entries >= extent.entries;
   const belongs = extent.book === seal.book && extent.bytes < seal.bytes && continues(directory, extent);
   const isEmpty = extent.entries === 0 && seal.entries > 1;
-  if (isEmpty || !belongs)
+  if (index.isInMemory) announce(madeInMemory(seal), 'put right');
+  else if (isEmpty || !belongs)
     announce(madeAgain(isEmpty ? 'is empty' : 'does not fit its ledger', seal), 'put right');
   if (belongs && !isMuch) readNew(directory, extent, seal, (lines) => index.add(lines));
-  else readNew(directory, emptyExtent(seal.book), seal, (lines) => index.rebuild(seal.book, lines));
+  else readNew(directory, emptyExtent(seal.book), seal, (lines) => index.rebuild(seal.book, lines, extent));
 }
 
 /** Hands over the entries between the extent and the seal (or, without a seal, the end of the last whole line).
@@ -169,7 +187,7 @@ function openOrReplace(directory: string, book: string, announce: Announce): Ind
   } catch (error) {
     const code = sqliteCode(error);
     if (code === null) throw error;
-    return isBroken(code) ? openAgain(directory, book, announce) : openIndex(':memory:', book);
+    return isBroken(code) ? openAgain(directory, book, announce) : openUnwritable(directory, book);
   }
 }
 
@@ -178,8 +196,9 @@ function makeWhereMissing(directory: string, book: string, announce: Announce): 
   const path = join(directory, 'index.sqlite');
   const seal = readSeal(directory);
   if (existsSync(path) || typeof seal === 'string' || seal.entries === 0) return;
-  announce(madeAgain('is missing', seal), 'put right');
   try {
+    accessSync(directory, constants.W_OK);
+    announce(madeAgain('is missing', seal), 'put right');
     readNew(directory, emptyExtent(book), seal, (lines) => makeIndexFile(path, book, lines));
   } catch {}
 }
@@ -198,6 +217,19 @@ function openAgain(directory: string, book: string, announce: Announce): Index {
 
 function madeAgain(why: string, { entries }: Seal): string {
   return `The index of the book ${why}: it is made again from the ledger's ${entries} entries. Nothing is lost.`;
+}
+
+function madeInMemory({ entries }: Seal): string {
+  return `The index of the book cannot be kept where it lies: one is made in memory from the ledger's ${entries} entries. Nothing is lost.`;
+}
+
+/** Where it cannot be written: what lies there, or a new one in memory. */
+function openUnwritable(directory: string, book: string): Index {
+  try {
+    const found = openIndexToRead(join(directory, 'index.sqlite'));
+    if (found !== null) return found;
+  } catch {}
+  return openIndex(':memory:', book);
 }
 
 function emptyExtent(book: string): Extent {

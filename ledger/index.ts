@@ -5,11 +5,12 @@
  *  not derived; losing it costs one reading of each file. `settings` holds the values of parameters by the number that
  *  settingsOf gives a whole set of them: sets repeat from run to run, so it grows much slower than the ledger. */
 
-import { existsSync, linkSync, rmSync } from 'node:fs';
+import { existsSync, linkSync, rmSync, statSync } from 'node:fs';
 import { endianness } from 'node:os';
 import { DatabaseSync, type StatementSync } from 'node:sqlite';
+import { pathToFileURL } from 'node:url';
 import { DIGEST_OF_NOTHING } from './digest.ts';
-import { addLines, type IndexedLine, type Prepare } from './index-filling.ts';
+import { addLines, type IndexedLine, IndexMoved, type Prepare } from './index-filling.ts';
 import type { Value } from './index-rows.ts';
 
 /** Changes when the tables do; an index of another version, or of a machine with another order of bytes, is made again. */
@@ -93,11 +94,14 @@ export interface PlateRow {
 }
 
 export interface Index {
+  /** Not in a file: it is made anew by every process. */
+  readonly isInMemory: boolean;
   extent(): Extent;
   /** Adds entries that follow the extent. All or nothing. */
   add(lines: Iterable<IndexedLine>): void;
-  /** Forgets everything that is derived, and adds entries from the first. All or nothing. */
-  rebuild(book: string, lines: Iterable<IndexedLine>): void;
+  /** Forgets everything that is derived, and adds entries from the first. All or nothing.
+   *  @param seen  the extent that is to be replaced  @throws IndexMoved when it is another by now */
+  rebuild(book: string, lines: Iterable<IndexedLine>, seen?: Extent): void;
   /** Rows of a question in SQL; statements are prepared once. */
   all<T>(sql: string, ...values: Value[]): T[];
   get<T>(sql: string, ...values: Value[]): T | undefined;
@@ -109,16 +113,47 @@ export interface Index {
  *  @throws SQLite's error when the file is no database or cannot be written. */
 export function openIndex(path: string, book: string): Index {
   const database = new DatabaseSync(path, { timeout: PATIENCE_MILLISECONDS });
-  const prepare = preparing(database);
+  const index = indexOver(database, path === ':memory:');
+  try {
+    database.exec('PRAGMA journal_mode = WAL; PRAGMA synchronous = NORMAL');
+    if (!isCurrent(database)) index.rebuild(book, []);
+    return index;
+  } catch (error) {
+    database.close();
+    throw error;
+  }
+}
 
+/** Opens an index in a place that cannot be written, as it stands; null when it is not whole without its journal, or of another version.
+ *  @throws SQLite's error */
+export function openIndexToRead(path: string): Index | null {
+  const journal = statSync(`${path}-wal`, { throwIfNoEntry: false });
+  if (!existsSync(path) || (journal !== undefined && journal.size > 0)) return null;
+  const place = pathToFileURL(path);
+  // Nobody writes to it: SQLite need not look for locks and journals, for which it would have to write.
+  place.searchParams.set('immutable', '1');
+  const database = new DatabaseSync(place, { readOnly: true });
+  if (isCurrent(database)) return indexOver(database, false);
+  database.close();
+  return null;
+}
+
+function sameExtent(a: Extent, b: Extent): boolean {
+  return a.book === b.book && a.bytes === b.bytes && a.last === b.last;
+}
+
+function indexOver(database: DatabaseSync, isInMemory: boolean): Index {
+  const prepare = preparing(database);
   const index: Index = {
+    isInMemory,
     extent: () => prepare('SELECT book, entries, bytes, last FROM extent').get() as unknown as Extent,
     add(lines) {
       transact(database, () => addLines(prepare, index.extent(), lines));
     },
-    rebuild(name, lines) {
+    rebuild(name, lines, seen) {
       database.exec(`PRAGMA cache_size = ${-CACHE_WHILE_MAKING}`);
       transact(database, () => {
+        if (seen !== undefined && !sameExtent(seen, index.extent())) throw new IndexMoved();
         makeTables(database, name);
         addLines(prepare, index.extent(), lines);
         database.exec(INDEXES);
@@ -132,14 +167,7 @@ export function openIndex(path: string, book: string): Index {
     },
     close: () => database.close(),
   };
-  try {
-    database.exec('PRAGMA journal_mode = WAL; PRAGMA synchronous = NORMAL');
-    if (!isCurrent(database)) index.rebuild(book, []);
-    return index;
-  } catch (error) {
-    database.close();
-    throw error;
-  }
+  return index;
 }
 
 /** Makes the index of a book in a new file, where there is none, and gives it its name when it is whole: nobody sees it
@@ -163,8 +191,11 @@ export function makeIndexFile(path: string, book: string, lines: Iterable<Indexe
     } finally {
       database.close();
     }
-    // What a deleted index has left beside it would be taken for this one's.
-    for (const suffix of ['-wal', '-shm', '-journal']) rmSync(`${path}${suffix}`, { force: true });
+    // What a deleted index has left beside it would be taken for this one's. In this order: an index that somebody else
+    // has made meanwhile was there before its journal was.
+    const left = ['-wal', '-shm', '-journal'].map((suffix) => `${path}${suffix}`).filter((file) => existsSync(file));
+    if (existsSync(path)) return false;
+    for (const file of left) rmSync(file, { force: true });
     linkSync(made, path);
     return true;
   } catch (error) {

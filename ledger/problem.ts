@@ -248,11 +248,30 @@ export function ambiguous(what: string, candidates: readonly string[]): LedgerPr
   return new LedgerProblem('ambiguous', `${what} can be any of ${some}. Give more of it.`);
 }
 
-function reasonOf(cause: unknown): string {
-  if (!(cause instanceof Error)) return String(cause);
-  const code = (cause as NodeJS.ErrnoException).code;
-  return REASONS[code ?? ''] ?? cause.message;
+/** An error of the system, or of the index's database, as a problem of the book; any other error as it is. */
+export function asProblem(error: unknown, directory: string, isWriting: boolean): unknown {
+  if (!(error instanceof Error) || error instanceof LedgerProblem) return error;
+  const { syscall, path, errcode } = error as NodeJS.ErrnoException & { errcode?: number };
+  if (syscall === undefined && errcode === undefined) return error;
+  return isWriting ? cannotWrite(path ?? directory, error) : bookUnreadable(path ?? directory, error);
 }
+
+/** Why the system refused, in words. */
+export function reasonOf(cause: unknown): string {
+  if (!(cause instanceof Error)) return String(cause);
+  const { code, errcode } = cause as NodeJS.ErrnoException & { errcode?: number };
+  const primary = errcode === undefined ? undefined : SQLITE_REASONS[errcode & 0xff];
+  return REASONS[code ?? ''] ?? primary ?? cause.message;
+}
+
+/** Primary result codes of SQLite: PERM, READONLY, IOERR, FULL, CANTOPEN. */
+const SQLITE_REASONS: Readonly<Record<number, string>> = {
+  3: 'permission denied',
+  8: 'it is read-only',
+  10: 'the disk reports an error, or is full',
+  13: 'no space left on the disk',
+  14: 'it cannot be opened',
+};
 
 const REASONS: Readonly<Record<string, string>> = {
   ENOENT: 'no such file',

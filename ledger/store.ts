@@ -135,7 +135,13 @@ function newName(directory: string): string {
 }
 
 function makeShelf(directory: string, digest: string): void {
-  mkdirSync(join(directory, digest.slice(0, 3)), { recursive: true });
+  const shelf = join(directory, digest.slice(0, 3));
+  try {
+    // Not recursive: on a read-only disk that says that a file is missing.
+    if (!existsSync(shelf)) mkdirSync(shelf);
+  } catch (error) {
+    if ((error as NodeJS.ErrnoException).code !== 'EEXIST') throw error;
+  }
 }
 
 function bringIn(source: string, temporary: string, move: boolean): void {

@@ -1,6 +1,6 @@
 /** How a problem reaches the user: one text, one JSON document, one exit status. No stack trace ever does. */
 
-import { LedgerProblem } from '../ledger/problem.ts';
+import { LedgerProblem, reasonOf } from '../ledger/problem.ts';
 import { InputProblem } from '../stages/problem.ts';
 import type { ExitStatus } from './command.ts';
 import { RunnerProblem } from './problem.ts';
@@ -28,15 +28,19 @@ export function describeProblem(error: unknown): DescribedProblem {
   const system = error as NodeJS.ErrnoException;
   if (typeof system?.code === 'string' && typeof system.syscall === 'string') {
     const where = system.path ?? system.syscall;
-    return described(
-      'system',
-      `${where}: the system answered ${system.code}. Check the place and its permissions.`,
-      1,
-    );
+    const said = `${reasonOf(error).replace(/\.$/, '')} (${system.code})`;
+    return described('system', `${where}: ${said}. ${ADVICE[system.code] ?? OTHER_ADVICE}`, 1);
   }
   const text = error instanceof Error ? error.message : String(error);
   return described('internal', `An error of Platebook's own: ${text}. Please report it with the command.`, 1);
 }
+
+const OTHER_ADVICE = 'Check the place and its permissions.';
+const ADVICE: Readonly<Record<string, string>> = {
+  ENOSPC: 'Make room, and repeat: what is finished is carried forward.',
+  EDQUOT: 'Make room, and repeat: what is finished is carried forward.',
+  EROFS: 'Name a place that can be written.',
+};
 
 function described(
   code: string,

@@ -1,6 +1,7 @@
 /** Errors of the runner. Each code has one row of advice here, used where a problem has no better of its own. Codes
  *  are append-only and never reused. */
 
+import { reasonOf } from '../ledger/problem.ts';
 import type { ExitStatus } from './command.ts';
 
 export const advice = {
@@ -53,6 +54,7 @@ export const advice = {
   // Recorded code.
   'code-not-kept': 'Leave out --as-recorded: the installed code computes, and what differs is said.',
   'code-not-restored': 'Leave out --as-recorded: the installed code computes, and what differs is said.',
+  'cannot-write': 'Mend that, and repeat: what is finished is carried forward.',
   'untrusted-code': 'Read the code in the bag; if you trust whose it is, repeat with --trust-code.',
   // Bags.
   'bad-call': 'See `platebook bag --help`.',
@@ -93,4 +95,10 @@ export class RunnerProblem extends Error {
     this.column = place.column ?? null;
     this.exitStatus = exitStatus;
   }
+}
+
+/** A file outside the book cannot be written. */
+export function cannotWriteOutside(file: string, cause: unknown): RunnerProblem {
+  const why = `${file}: cannot be written (${reasonOf(cause)}). ${advice['cannot-write']}`;
+  return new RunnerProblem('cannot-write', why, { file }, 1, { cause });
 }

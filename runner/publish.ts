@@ -13,6 +13,7 @@ import { readNumbers } from '../stages/formats/json.ts';
 import { convert } from '../stages/units.ts';
 import { type Job, type Outcome, upstreamOf } from './job.ts';
 import { formatNumbersJson, formatNumbersTex } from './numbers-files.ts';
+import { cannotWriteOutside } from './problem.ts';
 import type { Recipe } from './recipe/recipe.ts';
 
 export interface Plate {
@@ -184,6 +185,10 @@ export function layNumbers(
 }
 
 function layDown(path: string, bytes: Uint8Array): void {
-  mkdirSync(join(path, '..'), { recursive: true });
-  writeFileSync(path, bytes);
+  try {
+    mkdirSync(join(path, '..'), { recursive: true });
+    writeFileSync(path, bytes);
+  } catch (cause) {
+    throw cannotWriteOutside(path, cause);
+  }
 }

@@ -1,0 +1,14 @@
+/** What takes too long for every `npm test`: full and bad disks, many writers, the demonstration's bag. CI runs it. */
+
+import { defineConfig } from 'vitest/config';
+
+export default defineConfig({
+  test: {
+    include: ['test/long/**/*.test.ts'],
+    globalSetup: ['test/temporary-folder.ts'],
+    setupFiles: ['test/property-seed.ts'],
+    testTimeout: 600_000,
+    hookTimeout: 300_000,
+    maxWorkers: 2,
+  },
+});
