@@ -54,6 +54,11 @@ export function roundedNumber(
   };
 }
 
+/** A value with as many decimals as `like` shows, and one more. */
+export function roundedLike(value: number, like: string): string {
+  return value.toFixed(Math.min(6, (like.split('.')[1]?.length ?? 0) + 1));
+}
+
 function texNumber({ value, low, high, unit }: PublishedNumber): string {
   const rounded = roundNumber(value, low, high);
   const words = Number.isFinite(value) ? `{${rounded.value}}` : `\\mathrm{${rounded.value}}`;

@@ -4,6 +4,41 @@
 import type { Json } from '../ledger/entry.ts';
 import type { ParameterDeclaration } from '../stages/kind.ts';
 import { convert } from '../stages/units.ts';
+import { resolveFields } from './recipe/parameters.ts';
+import { problemList } from './recipe/recipe-problems.ts';
+import { sourceText } from './recipe/source-text.ts';
+
+/** The same, with the defaults of parameters that the kind has had only since, which are named. */
+export function filledParameters(
+  declarations: Readonly<Record<string, ParameterDeclaration>>,
+  recorded: Readonly<Record<string, Json>>,
+): { readonly parameters: Record<string, unknown>; readonly added: readonly string[] } {
+  const added: string[] = [];
+  const fill = (fields: typeof declarations, given: typeof recorded, path: string) => {
+    const plain = plainParameters(fields, given);
+    for (const [name, declaration] of Object.entries(fields)) {
+      const value = given[name];
+      if (value === undefined) {
+        const filled = defaultOf(name, declaration);
+        if (filled === undefined) continue;
+        plain[name] = filled;
+        added.push(`${path}${name}`);
+      } else if (declaration.type === 'group' && isRecord(value)) {
+        plain[name] = fill(declaration.fields, value, `${path}${name}.`);
+      }
+    }
+    return plain;
+  };
+  return { parameters: fill(declarations, recorded, ''), added };
+}
+
+/** Undefined for a parameter that may be left out, or has no default. */
+function defaultOf(name: string, declaration: ParameterDeclaration): unknown {
+  if (declaration.optional) return undefined;
+  const nowhere = { source: sourceText('', ''), offset: 0 };
+  const resolved = resolveFields({ [name]: declaration }, undefined, '', nowhere, problemList());
+  return (resolved?.value as Record<string, unknown> | undefined)?.[name];
+}
 
 /** Parameters as `compute` takes them. Parameters that the kind no longer declares are passed as they stand. */
 export function plainParameters(

@@ -4,7 +4,7 @@ import { relative } from 'node:path';
 import type { PublishedNumber } from '../ledger/entry.ts';
 import type { Io } from './command.ts';
 import type { RunOptions, RunSummary } from './commands/run.ts';
-import { roundedNumber } from './numbers-files.ts';
+import { roundedLike, roundedNumber } from './numbers-files.ts';
 import { wrapped } from './wrapped.ts';
 
 /** The whole text, ending in a line feed. */
@@ -34,11 +34,6 @@ function numbersTable(numbers: readonly PublishedNumber[]): string {
     return [number.name, value, interval, number.unit, ...(withTruth ? [truth] : []), String(number.entry)];
   });
   return `${alignedRows([head, ...rows], [false, true, false, false, withTruth, true])}\n`;
-}
-
-/** A value with as many decimals as `like` shows, and one more. */
-function roundedLike(value: number, like: string): string {
-  return value.toFixed(Math.min(6, (like.split('.')[1]?.length ?? 0) + 1));
 }
 
 function alignedRows(rows: readonly (readonly string[])[], right: readonly boolean[]): string {

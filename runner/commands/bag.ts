@@ -9,7 +9,7 @@ import { makeBag } from '../bag/make-bag.ts';
 import { openBag } from '../bag/open-bag.ts';
 import { badBagCall } from '../bag/problem.ts';
 import type { CommonOptions, ExitStatus, Io } from '../command.ts';
-import { writer } from '../configuration.ts';
+import { keyFile, writer } from '../configuration.ts';
 import { counted, roundSize } from '../text-table.ts';
 
 export interface BagOptions extends CommonOptions {
@@ -75,6 +75,7 @@ async function takeOver(words: readonly string[], options: BagOptions, io: Io): 
   const book = openBook(into, {
     by: await writer(io, options.by),
     create: true,
+    key: keyFile(io),
     announce: (text) => io.err(`${text}\n`),
   });
   try {

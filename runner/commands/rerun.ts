@@ -17,7 +17,7 @@ import type { Bag } from '../bag/open-bag.ts';
 import { codeOfKind } from '../code-digest.ts';
 import type { CommonOptions, ExitStatus, Io } from '../command.ts';
 import { type ComparedOutput, compareStage, overallVerdict } from '../compare-outputs.ts';
-import { writer } from '../configuration.ts';
+import { keyFile, writer } from '../configuration.ts';
 import { execute } from '../execute.ts';
 import type { Job, JobInput, Outcome, RestoredProgram } from '../job.ts';
 import { RunnerProblem } from '../problem.ts';
@@ -26,7 +26,7 @@ import { makeProgress } from '../progress.ts';
 import { untrustedCode, writersOf } from '../recorded-code/problem.ts';
 import { plainRecorded, recordedKind } from '../recorded-code/recorded-kind.ts';
 import { restorePrograms } from '../recorded-code/restore.ts';
-import { plainParameters } from '../recorded-parameters.ts';
+import { filledParameters } from '../recorded-parameters.ts';
 import {
   nearestEntry,
   nothingToRerun,
@@ -66,6 +66,7 @@ export async function rerunCommand(
 async function rerunInBook(words: readonly string[], options: RerunOptions, io: Io): Promise<ExitStatus> {
   const book = openBook(options.book, {
     by: await writer(io, options.by),
+    key: keyFile(io),
     announce: (text) => io.err(`${text}\n`),
   });
   try {
@@ -214,7 +215,13 @@ function jobOf(stage: StageEntry, { all, folder, book, program }: JobPlace): Job
     return { ...named, kind: recordedKind(stage), parameters, program };
   }
   const kind = findKind(stage);
-  return { ...named, kind, parameters: plainParameters(kind.parameters, stage.parameters) };
+  return { ...named, kind, parameters: filledParameters(kind.parameters, stage.parameters).parameters };
+}
+
+/** Parameters that the kind has had only since. */
+function addedSince(stage: StageEntry): readonly string[] {
+  const kind = stageKinds.find((each) => each.kind === stage.kind);
+  return kind === undefined ? [] : filledParameters(kind.parameters, stage.parameters).added;
 }
 
 function findKind(stage: StageEntry): StageKind {
@@ -235,6 +242,12 @@ function compare(subject: RerunSubject, outcomes: readonly Outcome[], book: Book
     if (outcome.codeDigest !== null && outcome.codeDigest !== stage.code.digest) {
       differences.push(
         `${stage.name}: the code or the runtime is not the recorded one (entry ${stage.number})`,
+      );
+    }
+    const added = addedSince(stage);
+    if (added.length > 0 && outcome.codeDigest !== stage.code.digest) {
+      differences.push(
+        `${stage.name}: the kind has had ${added.join(', ')} only since (entry ${stage.number}); the ${added.length === 1 ? 'default holds' : 'defaults hold'}`,
       );
     }
     if (outcome.error !== null) differences.push(`${stage.name}: ${outcome.error.message}`);

@@ -6,7 +6,7 @@ import { type Book, openBook } from '../../ledger/book.ts';
 import type { RunEntry, StoredFile } from '../../ledger/entry.ts';
 import { stageKinds } from '../../stages/kinds.ts';
 import type { CommonOptions, ExitStatus, Io } from '../command.ts';
-import { writer } from '../configuration.ts';
+import { keyFile, writer } from '../configuration.ts';
 import { execute } from '../execute.ts';
 import { isGood, type Job, type Outcome } from '../job.ts';
 import { kindsFolder, stageEngine } from '../program.ts';
@@ -43,6 +43,7 @@ export async function runCommand(recipePath: string, options: RunOptions, io: Io
   const book = openBook(options.book, {
     by: await writer(io, options.by),
     create: true,
+    key: keyFile(io),
     announce: (text) => io.err(`${text}\n`),
   });
   try {

@@ -5,7 +5,8 @@ import { isSigned } from '../../ledger/countersignature.ts';
 import type { Entry, RecordedInput, WithdrawalEntry } from '../../ledger/entry.ts';
 import type { Subject } from '../../ledger/subject.ts';
 import type { TraceDocument, TracedEntry } from '../../ledger/trace.ts';
-import { roundedNumber } from '../../stages/formats/drawing/rounding.ts';
+import { roundedNumber, roundNumber } from '../../stages/formats/drawing/rounding.ts';
+import { roundedLike } from '../numbers-files.ts';
 import { alignRows, counted, labelled, readableTime, thousands, wrapText } from '../text-table.ts';
 import { entryLines } from './entry-text.ts';
 import { entryColumns, signedThing } from './entry-title.ts';
@@ -54,7 +55,7 @@ function numberSentences({ number, run }: Extract<Subject, { type: 'number' }>):
   ];
   if (against !== null)
     sentences.push(
-      `The truth of this synthetic observation is ${against.value} ${against.unit}, entry ${against.entry}`,
+      `The truth of this synthetic observation is ${roundedLike(against.value, roundNumber(value, low, high).value)} ${against.unit}, entry ${against.entry}`,
     );
   return sentences;
 }

@@ -23,7 +23,7 @@ export async function platebook(cwd: string, words: readonly string[]): Promise<
     },
     errorStream: new PassThrough(),
     cwd,
-    env: { PLATEBOOK_BY: 'A. Tester' },
+    env: { PLATEBOOK_BY: 'A. Tester', PLATEBOOK_KEY: process.env.PLATEBOOK_KEY ?? '' },
     terminal: false,
     columns: 100,
   };

@@ -81,7 +81,7 @@ test('shows a published number with interval and truth', () => {
   expect(text).toContain(
     'ring-diameter = 42.10 +0.80 −0.80 uas, 68 % interval: published by run 1, diameter in output ring',
   );
-  expect(text).toContain('The truth of this synthetic observation is 42 uas, entry 1\n');
+  expect(text).toContain('The truth of this synthetic observation is 42.000 uas, entry 1\n');
 });
 
 test('shows a run with stages, plates and numbers', () => {
