@@ -27,7 +27,11 @@ export const compute = async (task: any): Promise<object> => {
 }
 
 /** Facts that are not those of the present program; `kept: false` for an entry from before code was kept. */
-export type More = Partial<RecordedCode> & { readonly kept?: boolean };
+export type More = Partial<RecordedCode> & {
+  readonly kept?: boolean;
+  /** The texts of package.json and the lock file. */
+  readonly texts?: { readonly package: string; readonly lock: string };
+};
 
 /** A record of code whose files are kept in the store. */
 export function recordCode(store: Store, sources: Record<string, string>, more: More = {}): RecordedCode {
@@ -40,8 +44,9 @@ export function recordCode(store: Store, sources: Record<string, string>, more: 
     runtime: more.runtime ?? process.version,
     version: 1,
   };
-  const packageFile = store.keepBytes('{ "type": "module" }\n');
-  const lock = more.lock === undefined ? {} : { lock: more.lock };
+  const packageFile = store.keepBytes(more.texts?.package ?? '{ "type": "module" }\n');
+  const lockFile = more.texts === undefined ? more.lock : store.keepBytes(more.texts.lock);
+  const lock = lockFile === undefined ? {} : { lock: lockFile };
   const kept = more.kept === false ? {} : { package: packageFile, ...lock };
   return { ...kept, ...facts, digest: sha256(canonicalJson(facts as unknown as Json)) };
 }
