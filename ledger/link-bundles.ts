@@ -115,7 +115,7 @@ export function dependantsOf(
     for (let at = 0; at < words.length; number += 1) {
       const head = words[at] as number;
       const end = at + 1 + (head >>> 2);
-      const step = settle(steps, number, words.subarray(at + 1, end));
+      const step = settle(steps, number, words, at + 1, end);
       const what = head & 3;
       if (what === RUN && (step > 0 || near.size > 0)) takeRun(number, step, words, at + 1, end);
       if (what === PLATE && step > 1) {
@@ -137,10 +137,10 @@ export function dependantsOf(
 }
 
 /** Puts down how many steps an entry is away, one more than the nearest of those that it names. */
-function settle(steps: Uint32Array, number: number, targets: Uint32Array): number {
+function settle(steps: Uint32Array, number: number, words: Uint32Array, at: number, end: number): number {
   let least = steps[number] as number;
-  for (let i = 0; i < targets.length; i += 1) {
-    const step = steps[targets[i] as number] as number;
+  for (let i = at; i < end; i += 1) {
+    const step = steps[words[i] as number] as number;
     if (step !== 0 && (least === 0 || step + 1 < least)) least = step + 1;
   }
   steps[number] = least;
