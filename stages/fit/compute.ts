@@ -7,8 +7,10 @@ import { writeSkyImage } from '../formats/sky-image.ts';
 import { readVisibilities } from '../formats/visibilities.ts';
 import { imageAt } from '../imaging/linear-model.ts';
 import { drawPosterior } from '../imaging/posterior-draws.ts';
+import { posteriorVariants } from '../imaging/posterior-variants.ts';
 import { runFit } from '../imaging/run-fit.ts';
-import { readSettings } from '../imaging/settings.ts';
+import { samplePosterior } from '../imaging/sampler.ts';
+import { isLinear, readSettings } from '../imaging/settings.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import { fluxNumbers } from './flux-numbers.ts';
 import { makeReport } from './report.ts';
@@ -18,15 +20,28 @@ export function compute(task: StageTask): StageReport {
   const visibilities = readVisibilities(task.inputs.visibilities[0]);
   const basis = readBasis(task.inputs.basis[0]);
   const settings = readSettings(task.parameters, visibilities, basis.components.length);
-  const result = runFit(visibilities, basis, settings, task.progress);
+  const result = runFit(visibilities, basis, settings, (fraction) => task.progress(fraction / 2));
   const { problem, best, at, gains } = result;
-  const posterior = drawPosterior(problem.model, best.x, best.curvature, settings.samples, settings.seed);
+  const sampled =
+    settings.posterior === 'sampled' && !isLinear(settings)
+      ? samplePosterior(problem, best, gains, settings.sampler, {
+          count: settings.samples,
+          seed: settings.seed,
+          progress: (fraction) => task.progress(0.5 + 0.45 * fraction),
+        })
+      : null;
+  const posterior =
+    sampled?.posterior ??
+    drawPosterior(problem.model, best.x, best.curvature, settings.samples, settings.seed);
   const residuals = makeResiduals(settings.data, problem.data, problem.sets, at, gains);
-  const report = makeReport(result, settings, posterior, residuals);
+  const report = makeReport(result, settings, posterior, residuals, sampled?.report ?? null);
   const { nx, ny, pixelRadians } = basis;
   const pixels = imageAt(problem.model, basis, best.x);
   writeSkyImage(task.outputs.image, { nx, ny, pixelRadians, pixels });
-  writePosterior(task.outputs.samples, posterior);
+  writePosterior(task.outputs.samples, posterior, {
+    ...(sampled ? { chain: sampled.posterior.chain } : {}),
+    variants: posteriorVariants(result, settings.seed),
+  });
   writeJson(task.outputs.residuals, residuals);
   writeJson(task.outputs.report, report);
   writeNumbers(task.outputs.flux, fluxNumbers(basis, posterior, report.posterior, visibilities.remark));

@@ -4,17 +4,18 @@ import type { StageKind } from '../kind.ts';
 
 export const fit = {
   kind: 'fit',
-  version: 2,
+  version: 3,
   doc:
     'Fits flux and coefficients of a basis to visibilities in the Fourier plane: image = flux * mean + sum of ' +
     'coefficient * component, the source at the resolution of the basis; the transform of its Gaussian is taken out of ' +
-    'the model. The optimum is searched by damped Gauss-Newton steps from several starts, the posterior ' +
-    'is the Gaussian of the curvature there; for complex visibilities with a fixed centroid and without positivity that ' +
-    'is exact.',
+    'the model. The optimum is searched by damped Gauss-Newton steps from several starts; the posterior ' +
+    'is sampled by Hamiltonian chains over flux, coefficients and gains. For complex visibilities with a fixed centroid ' +
+    'and without positivity it is a Gaussian in closed form.',
   source:
     'Thompson, Moran & Swenson, 3rd ed., sections 9.3 (amplitudes under noise), 10.3 (closures) and 11.4; marginalised ' +
     'nuisances: Golub & Pereyra 1973, SIAM J. Numer. Anal. 10, 413; choice by held-out data: Hastie, Tibshirani & ' +
-    'Friedman, The Elements of Statistical Learning, 2nd ed., section 7.10.',
+    'Friedman, The Elements of Statistical Learning, 2nd ed., section 7.10; sampler: Neal 2011, Handbook of Markov Chain ' +
+    'Monte Carlo, ch. 5; its diagnostics: Vehtari et al. 2021, Bayesian Analysis 16, 667.',
   inputs: {
     visibilities: {
       format: 'visibilities',
@@ -133,12 +134,76 @@ export const fit = {
       doc: 'Starts of the search: the mean of the prior, and the library images that agree best with the data.',
       why: 'Closure phases have false minima; starts that end elsewhere are reported.',
     },
+    posterior: {
+      type: 'word',
+      words: ['sampled', 'gaussian'],
+      default: 'sampled',
+      doc:
+        '`sampled`: by a Hamiltonian sampler over flux, coefficients and gains. `gaussian`: the Gaussian of the curvature at ' +
+        'the optimum, quick and too narrow where the posterior is bent. Where that is exact it is taken in any case.',
+      why: 'Positivity and amplitudes make the posterior no Gaussian.',
+    },
+    sampler: {
+      type: 'group',
+      doc: 'Chains of the sampler. It goes on in rounds until the targets are met, or says that they are not.',
+      default: {},
+      fields: {
+        chains: {
+          type: 'integer',
+          from: 2,
+          to: 64,
+          default: 4,
+          doc: 'Chains, from starts wider than the posterior.',
+          why: 'Four show whether they agree.',
+        },
+        warmUp: {
+          type: 'integer',
+          from: 20,
+          to: 100000,
+          default: 100,
+          doc: 'Trajectories of each chain before any counts.',
+          why: 'The coordinates are whitened beforehand, so that there is little to learn.',
+        },
+        draws: {
+          type: 'integer',
+          from: 10,
+          to: 100000,
+          default: 150,
+          doc: 'Trajectories of each chain in a round.',
+          why: 'Of well-mixed chains one round meets the targets.',
+        },
+        most: {
+          type: 'integer',
+          from: 10,
+          to: 1000000,
+          default: 600,
+          doc: 'Trajectories of each chain at most.',
+          why: 'Chains that do not agree by then have more than one mode to visit.',
+        },
+        rHat: {
+          type: 'number',
+          from: 1,
+          to: 2,
+          default: 1.02,
+          doc: 'Largest rank-normalised R-hat of flux and coefficients.',
+          why: 'Of some sixty quantities with some 600 draws the largest is 1.015 by chance alone.',
+        },
+        ess: {
+          type: 'number',
+          from: 1,
+          to: 1e6,
+          default: 200,
+          doc: 'Least effective number of draws, of the bulk and of the tails.',
+          why: 'The ends of a 68 % interval are then known to a tenth of a standard deviation.',
+        },
+      },
+    },
     samples: {
       type: 'integer',
       from: 2,
       to: 100000,
       default: 400,
-      doc: 'Draws from the posterior.',
+      doc: 'Draws that are written, evenly out of those of all chains.',
       why: 'The ends of a 68 % interval are then known to a tenth of a standard deviation.',
     },
     seed: { type: 'integer', from: 0, to: 2147483647, default: 1, doc: 'Seed of the draws.' },

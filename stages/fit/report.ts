@@ -5,7 +5,8 @@ import type { Posterior } from '../data.ts';
 import { placeAt, slopesAt } from '../imaging/centroid.ts';
 import { componentsOf, imageAt, type Slopes } from '../imaging/linear-model.ts';
 import type { FitResult } from '../imaging/run-fit.ts';
-import { type FitSettings, fitsCentroid } from '../imaging/settings.ts';
+import type { SamplerReport } from '../imaging/sampler.ts';
+import { type FitSettings, fitsCentroid, isLinear } from '../imaging/settings.ts';
 import { makeExpansion, mirror, type Term } from '../imaging/term.ts';
 import { cholesky, invertCholesky } from '../numerics/linear.ts';
 import { normalQuantile, quantiles } from '../numerics/statistics.ts';
@@ -35,11 +36,15 @@ export function makeReport(
   settings: FitSettings,
   posterior: Posterior,
   residuals: FitResiduals,
+  sampler: SamplerReport | null,
 ) {
   const { problem, selection, best, choice } = result;
   const terms = termReports(result);
   const negative = negativeFraction(imageAt(problem.model, problem.basis, best.x));
-  const warnings = findWarnings(result, settings, terms, posterior, negative);
+  const warnings = [
+    ...findWarnings(result, settings, terms, posterior, negative),
+    ...samplerWarnings(sampler),
+  ];
   return {
     data: settings.data,
     remark: problem.data.remark,
@@ -58,6 +63,7 @@ export function makeReport(
     },
     ...centroidReport(result),
     posterior: posteriorMethod(settings),
+    sampler,
     gains: {
       stations: result.stationGains,
       widened: result.widenings.map(({ station, median, from, to }) => ({ station, median, from, to })),
@@ -111,10 +117,25 @@ function termReport(term: Term, slopes: Slopes, at: FitResult['at'], covariance:
 }
 
 function posteriorMethod(settings: FitSettings): string {
-  const isLinear = settings.data === 'complex-visibilities' && !fitsCentroid(settings);
-  return isLinear && settings.positivity === 0
+  if (settings.posterior === 'sampled' && !isLinear(settings))
+    return 'sampled by Hamiltonian chains, gains among the parameters; the image is the maximum of the posterior';
+  return isLinear(settings)
     ? 'exact: the model is linear and errors and prior are Gaussian; the image is mean and maximum of the posterior'
     : 'Gaussian of the Gauss-Newton curvature at the maximum (Laplace); the image is the maximum of the posterior';
+}
+
+function samplerWarnings(sampler: SamplerReport | null): string[] {
+  if (sampler === null) return [];
+  const { rHat, essBulk, essTail, targets, met, divergences, draws } = sampler;
+  const warnings: string[] = [];
+  if (!met) {
+    warnings.push(
+      `the chains do not meet their targets after ${draws} draws: R-hat ${rHat.toFixed(3)} (at most ${targets.rHat}), ` +
+        `effective draws ${essBulk.toFixed(0)} of the bulk and ${essTail.toFixed(0)} of the tails (at least ${targets.ess})`,
+    );
+  }
+  if (divergences > 0) warnings.push(`${divergences} of ${draws} trajectories of the sampler went astray`);
+  return warnings;
 }
 
 /** Flux in negative pixels over the total. */

@@ -4,14 +4,17 @@ import type { ByteSink, ByteSource } from '../bytes.ts';
 import type { Posterior } from '../data.ts';
 import { requireFiniteColumn, requireFiniteValues, requireRepeat } from './column-rules.ts';
 import { openFits, requireTable } from './fits/hdu.ts';
-import { requireInteger } from './fits/header.ts';
-import { appendEmptyPrimary, appendTableHdu, readTable } from './fits/table.ts';
+import { requireInteger, requireText } from './fits/header.ts';
+import { appendEmptyPrimary, appendTableHdu, type NewColumn, readTable, type Table } from './fits/table.ts';
 
 const mostComponents = 1_000_000;
 
 /** Reads the draws. @throws InputProblem when the table is not of that layout or a value is not finite. */
 export function readPosterior(source: ByteSource): Posterior {
-  const table = readTable(source, requireTable(source, openFits(source), 'SAMPLES'));
+  return posteriorOf(readTable(source, requireTable(source, openFits(source), 'SAMPLES')));
+}
+
+function posteriorOf(table: Table): Posterior {
   const components = requireInteger(table.header, 'NCOMP', 0, mostComponents);
   const coefficients = table.column('COEFFICIENT');
   requireRepeat(coefficients, components, table.place);
@@ -23,18 +26,56 @@ export function readPosterior(source: ByteSource): Posterior {
   };
 }
 
+/** Other posteriors beside the main one, and what each is. */
+export interface PosteriorVariant {
+  /** `gains fixed`: with the gains held at the optimum. `components`: with another number of components. */
+  readonly role: 'gains fixed' | 'components';
+  readonly posterior: Posterior;
+}
+
+/** Reads the variants: tables VARIANT. */
+export function readVariants(source: ByteSource): PosteriorVariant[] {
+  return openFits(source)
+    .filter((hdu) => hdu.kind === 'table' && hdu.extname === 'VARIANT')
+    .map((hdu) => {
+      const table = readTable(source, hdu);
+      const role = requireText(table.header, 'ROLE');
+      return {
+        role: role === 'gains fixed' ? 'gains fixed' : 'components',
+        posterior: posteriorOf(table),
+      };
+    });
+}
+
 /** Writes the draws. @throws InternalError when the arrays have other lengths than they must or a value is not finite. */
-export function writePosterior(sink: ByteSink, posterior: Posterior): void {
+export function writePosterior(
+  sink: ByteSink,
+  posterior: Posterior,
+  { chain, variants = [] }: { chain?: Int32Array; variants?: readonly PosteriorVariant[] } = {},
+): void {
+  appendEmptyPrimary(sink);
+  appendDraws(sink, 'SAMPLES', posterior, [], chain);
+  for (const { role, posterior: draws } of variants) appendDraws(sink, 'VARIANT', draws, [['ROLE', role]]);
+}
+
+function appendDraws(
+  sink: ByteSink,
+  extname: string,
+  posterior: Posterior,
+  cards: readonly (readonly [string, string])[],
+  chain?: Int32Array,
+): void {
   requireFiniteValues(posterior.flux, 'writePosterior, flux');
   requireFiniteValues(posterior.coefficients, 'writePosterior, coefficients');
-  appendEmptyPrimary(sink);
+  const ofChain: NewColumn[] = chain === undefined ? [] : [{ name: 'CHAIN', form: '1J', values: [...chain] }];
   appendTableHdu(sink, {
-    extname: 'SAMPLES',
+    extname,
     rows: posterior.count,
     columns: [
       { name: 'FLUX', form: '1D', unit: 'Jy', values: posterior.flux },
       { name: 'COEFFICIENT', form: `${posterior.components}D`, unit: 'Jy', values: posterior.coefficients },
+      ...ofChain,
     ],
-    cards: [['NCOMP', posterior.components, 'components']],
+    cards: [['NCOMP', posterior.components, 'components'], ...cards],
   });
 }

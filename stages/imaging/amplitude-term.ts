@@ -25,7 +25,37 @@ export interface ScanGains {
 
 export interface AmplitudeTerm extends Term {
   gains(at: ModelVisibilities): ScanGains[];
+  /** The same term with the gains as parameters. */
+  explicit(): ExplicitGains;
   only(scans: ReadonlySet<number>): AmplitudeTerm;
+}
+
+/** Gains as parameters h, one per station and scan: the log gain over the standard deviation of its prior, which is not
+ *  part of the cost here. In the order of the scans and, in each, of its stations, as `gains` gives them. */
+export interface ExplicitGains {
+  readonly count: number;
+  /** From what `gains` gives. */
+  whitened(gains: readonly ScanGains[]): Float64Array;
+  /** The cost of the data; adds its derivatives by the visibilities, and by h from a place on. */
+  adjoint(
+    at: ModelVisibilities,
+    h: Float64Array,
+    from: number,
+    out: ModelVisibilities,
+    outGains: Float64Array,
+  ): number;
+  /** Residuals' derivatives by ln|V| of their row and by the gains of its two stations, for the curvature. */
+  visit(
+    at: ModelVisibilities,
+    h: Float64Array,
+    use: (
+      row: number,
+      slope: number,
+      first: number,
+      second: number,
+      scales: readonly [number, number],
+    ) => void,
+  ): void;
 }
 
 interface Scan {
@@ -105,6 +135,16 @@ function amplitudeTerm(
         expandScan(scan, solved, at, slopes, out);
         return scanCost(scan, solved, deviations);
       }),
+    adjoint: (at, out) =>
+      sumOver((scan) => {
+        const solved = solve(scan, at);
+        // At the gains' optimum the cost does not change with them.
+        scan.rows.forEach((r, m) => {
+          addAmplitudeSlope(out, at, r, solved.residuals[m] * solved.slopes[m]);
+        });
+        return scanCost(scan, solved, deviations);
+      }),
+    explicit: () => explicitGains(data, amplitudes, deviations, scans),
     only: (wanted) =>
       amplitudeTerm(
         data,
@@ -113,6 +153,74 @@ function amplitudeTerm(
         scans.filter(({ scan }) => wanted.has(scan)),
       ),
   };
+}
+
+function explicitGains(
+  data: Visibilities,
+  amplitudes: Float64Array,
+  deviations: Float64Array,
+  scans: readonly Scan[],
+): ExplicitGains {
+  const starts: number[] = [];
+  let count = 0;
+  for (const { stations } of scans) {
+    starts.push(count);
+    count += stations.length;
+  }
+  const { sigma } = data;
+  return {
+    count,
+    whitened(gains) {
+      const out: number[] = [];
+      for (const { stations, logGains } of gains) {
+        for (let i = 0; i < stations.length; i++) out.push(logGains[i] / deviations[stations[i]]);
+      }
+      return Float64Array.from(out);
+    },
+    adjoint(at, h, from, out, outGains) {
+      let cost = 0;
+      for (let s = 0; s < scans.length; s++) {
+        const { rows, stations, first, second } = scans[s];
+        for (let m = 0; m < rows.length; m++) {
+          const r = rows[m];
+          const i = from + starts[s] + first[m];
+          const j = from + starts[s] + second[m];
+          const [a, b] = [deviations[stations[first[m]]], deviations[stations[second[m]]]];
+          const size = Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r];
+          const nu = size * exp(a * h[i] + b * h[j]);
+          const [mean, slope] = riceMean(nu);
+          const residual = mean - amplitudes[r] / sigma[r];
+          const pull = residual * nu * slope;
+          cost += (residual * residual) / 2;
+          outGains[i] += a * pull;
+          outGains[j] += b * pull;
+          addAmplitudeSlope(out, at, r, pull);
+        }
+      }
+      return cost;
+    },
+    visit(at, h, use) {
+      for (let s = 0; s < scans.length; s++) {
+        const { rows, stations, first, second } = scans[s];
+        for (let m = 0; m < rows.length; m++) {
+          const r = rows[m];
+          const [i, j] = [starts[s] + first[m], starts[s] + second[m]];
+          const [a, b] = [deviations[stations[first[m]]], deviations[stations[second[m]]]];
+          const size = Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r];
+          const nu = size * exp(a * h[i] + b * h[j]);
+          use(r, nu * riceMean(nu)[1], i, j, [a, b]);
+        }
+      }
+    },
+  };
+}
+
+/** Adds pull * d ln|V|. */
+function addAmplitudeSlope(out: ModelVisibilities, at: ModelVisibilities, r: number, pull: number): void {
+  const square = at.re[r] * at.re[r] + at.im[r] * at.im[r];
+  if (!(square > 0)) return;
+  out.re[r] += (pull * at.re[r]) / square;
+  out.im[r] += (pull * at.im[r]) / square;
 }
 
 /** The gains that minimise the scan's cost, by damped Newton steps from zero. */

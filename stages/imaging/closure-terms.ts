@@ -10,7 +10,8 @@ import {
   logClosureAmplitude,
   wrapPhase,
 } from '../numerics/closures.ts';
-import { cholesky, solveLower } from '../numerics/linear.ts';
+import { atan2, ln } from '../numerics/elementary.ts';
+import { cholesky, solveLower, solveLowerTransposed } from '../numerics/linear.ts';
 import { InternalError } from '../problem.ts';
 import { addResidual, logDerivatives, type Term } from './term.ts';
 
@@ -117,6 +118,42 @@ function closureTerm(
         for (let t = 0; t < n; t++) addResidual(out, r[t], J, t * columns);
       }
       return chiSquare(at) / 2;
+    },
+    adjoint(at, out) {
+      let cost = 0;
+      const values = new Float64Array(at.re.length);
+      const sums = new Float64Array(at.re.length);
+      for (const block of blocks) {
+        // Each visibility is in several closures: its angle, or logarithm, is taken once.
+        for (const row of block.rows) {
+          const [re, im] = [at.re[row], at.im[row]];
+          values[row] = part === 'phase' ? atan2(im, re) : ln(re * re + im * im) / 2;
+        }
+        const differences = new Float64Array(block.closures.length);
+        for (let t = 0; t < differences.length; t++) {
+          const { rows, signs } = block.closures[t];
+          let sum = -block.observed[t];
+          for (let k = 0; k < rows.length; k++) sum += signs[k] * values[rows[k]];
+          differences[t] = wrap(sum);
+        }
+        const white = solveLower(block.L, differences);
+        for (const value of white) cost += (value * value) / 2;
+        const pull = solveLowerTransposed(block.L, white);
+        for (let t = 0; t < pull.length; t++) {
+          const { rows, signs } = block.closures[t];
+          for (let k = 0; k < rows.length; k++) sums[rows[k]] += signs[k] * pull[t];
+        }
+        for (const row of block.rows) {
+          const [re, im] = [at.re[row], at.im[row]];
+          const square = re * re + im * im;
+          const scale = square > 0 ? sums[row] / square : 0;
+          sums[row] = 0;
+          // d arg V = (re d im - im d re) / |V|^2, d ln|V| = (re d re + im d im) / |V|^2.
+          out.re[row] += part === 'phase' ? -scale * im : scale * re;
+          out.im[row] += part === 'phase' ? scale * re : scale * im;
+        }
+      }
+      return cost;
     },
     only: (scans) =>
       closureTerm(

@@ -42,6 +42,13 @@ export function makeComplexTerm(data: Visibilities, rows = allRows(data)): Term 
       }
       return chiSquare(at) / 2;
     },
+    adjoint(at, out) {
+      for (const r of rows) {
+        out.re[r] += (at.re[r] - data.re[r]) / (sigma[r] * sigma[r]);
+        out.im[r] += (at.im[r] - data.im[r]) / (sigma[r] * sigma[r]);
+      }
+      return chiSquare(at) / 2;
+    },
     only: (scans) =>
       makeComplexTerm(
         data,

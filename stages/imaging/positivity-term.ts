@@ -4,7 +4,8 @@
  *
  *  `reference` is a twentieth of the flux prior's mean spread over the effective number of pixels of the mean image,
  *  1 / sum mean^2; `share` is the pixel's solid angle over that of the resolution element, so that the cost does not
- *  depend on the pixel size. At weight 1, one resolution element at -reference costs half a unit of chi-square/2. */
+ *  depend on the pixel size. Of pixels finer than half a resolution element one in two (three, …) on either axis stands for
+ *  its neighbours: they hold nothing that it does not. At weight 1, one resolution element at -reference costs half a unit of chi-square/2. */
 
 import type { Basis } from '../data.ts';
 import type { LinearModel } from './linear-model.ts';
@@ -14,6 +15,8 @@ import { addResidual, type Expansion } from './term.ts';
 export interface PositivityTerm {
   cost(x: Float64Array): number;
   expand(x: Float64Array, out: Expansion): number;
+  /** Adds the gradient alone; returns the cost. */
+  adjoint(x: Float64Array, gradient: Float64Array): number;
 }
 
 /** Negative brightness that costs one unit, in mean brightness of the mean image. */
@@ -21,17 +24,20 @@ const REFERENCE_FRACTION = 0.05;
 
 /** @param resolutionRadians  FWHM; 0 counts as two pixels */
 export function makePositivityTerm(basis: Basis, model: LinearModel, weight: number): PositivityTerm {
-  const pixelCount = basis.mean.length;
+  const stride = strideOf(basis);
+  const chosen = everyNth(basis, stride);
+  const pixelCount = chosen.length;
   const columns = model.columns;
-  const root = Math.sqrt(weight) * whitening(basis, model.flux);
+  const root = stride * Math.sqrt(weight) * whitening(basis, model.flux);
   // One row per pixel, so that a negative pixel's derivatives lie together.
   const rows = new Float64Array(pixelCount * columns);
   const offset = new Float64Array(pixelCount);
   for (let p = 0; p < pixelCount; p++) {
-    offset[p] = root * model.flux * basis.mean[p];
-    rows[p * columns] = root * model.scales[0] * basis.mean[p];
+    const q = chosen[p];
+    offset[p] = root * model.flux * basis.mean[q];
+    rows[p * columns] = root * model.scales[0] * basis.mean[q];
     for (let k = 1; k < columns; k++) {
-      rows[p * columns + k] = root * model.scales[k] * basis.components[k - 1][p];
+      rows[p * columns + k] = root * model.scales[k] * basis.components[k - 1][q];
     }
   }
   const pixel = (x: Float64Array, p: number) => {
@@ -51,7 +57,35 @@ export function makePositivityTerm(basis: Basis, model: LinearModel, weight: num
     }
     return cost;
   };
-  return { cost: (x) => visit(x, null), expand: visit };
+  return {
+    cost: (x) => visit(x, null),
+    expand: visit,
+    adjoint(x, gradient) {
+      let cost = 0;
+      for (let p = 0; p < pixelCount; p++) {
+        const value = pixel(x, p);
+        if (!(value < 0)) continue;
+        cost += (value * value) / 2;
+        const start = p * columns;
+        for (let k = 0; k < x.length; k++) gradient[k] += value * rows[start + k];
+      }
+      return cost;
+    },
+  };
+}
+
+/** Pixels to half a resolution element, at least 1. */
+function strideOf({ pixelRadians, resolutionRadians }: Basis): number {
+  return Math.max(1, Math.floor(resolutionRadians / (2 * pixelRadians)));
+}
+
+/** Indices of every n-th pixel of every n-th row, the outermost left over on both sides alike. */
+function everyNth({ nx, ny }: Basis, n: number): number[] {
+  const places = (count: number) => {
+    const first = Math.floor(((count - 1) % n) / 2);
+    return Array.from({ length: Math.floor((count - 1 - first) / n) + 1 }, (_, k) => first + k * n);
+  };
+  return places(ny).flatMap((row) => places(nx).map((column) => row * nx + column));
 }
 
 function whitening(basis: Basis, flux: number): number {

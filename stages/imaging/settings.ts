@@ -2,6 +2,7 @@
 
 import type { Visibilities } from '../data.ts';
 import { InputProblem } from '../problem.ts';
+import type { SamplerSettings } from './sampler.ts';
 
 export type DataKind =
   | 'closure-phases-and-amplitudes'
@@ -23,6 +24,9 @@ export interface FitSettings {
   readonly centroid?: 'free' | 'fixed';
   readonly positivity: number;
   readonly starts: number;
+  /** `gaussian`: of the curvature at the optimum alone. */
+  readonly posterior: 'sampled' | 'gaussian';
+  readonly sampler: SamplerSettings;
   readonly samples: number;
   readonly seed: number;
 }
@@ -33,6 +37,11 @@ export const LEAST_AMPLITUDE_SNR = 4;
 /** Whether the centroid is a parameter of the fit: closures and amplitudes do not see it. */
 export function fitsCentroid({ data, centroid }: FitSettings): boolean {
   return data === 'complex-visibilities' && centroid === 'free';
+}
+
+/** Whether the model is linear and everything Gaussian: the posterior has a closed form. */
+export function isLinear(settings: FitSettings): boolean {
+  return settings.data === 'complex-visibilities' && !fitsCentroid(settings) && settings.positivity === 0;
 }
 
 export function readSettings(

@@ -19,6 +19,9 @@ export interface Term {
   cost(at: ModelVisibilities): number;
   /** Adds gradient and curvature by x; returns the cost. @param slopes  derivatives of `at` */
   expand(at: ModelVisibilities, slopes: Slopes, out: Expansion): number;
+  /** Adds the derivatives of the cost by real and imaginary part of every visibility; returns the cost. Nuisances are at
+   *  their optimum, as in `cost`. */
+  adjoint(at: ModelVisibilities, out: ModelVisibilities): number;
   /** The term on some of its scans. */
   only(scans: ReadonlySet<number>): Term;
   /** Chi-square of the measurements alone, without penalties of nuisances. */

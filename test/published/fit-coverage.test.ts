@@ -64,6 +64,8 @@ const SETTINGS: FitSettings = {
   minimumSnr: 2.5,
   positivity: 0,
   starts: 1,
+  posterior: 'gaussian',
+  sampler: { chains: 4, warmUp: 100, draws: 150, most: 600, rHat: 1.02, ess: 300 },
   samples: DRAWS,
   seed: 1,
 };

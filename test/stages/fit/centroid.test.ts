@@ -46,6 +46,8 @@ const SETTINGS: FitSettings = {
   centroid: 'free',
   positivity: 1,
   starts: 4,
+  posterior: 'gaussian',
+  sampler: { chains: 4, warmUp: 100, draws: 150, most: 600, rHat: 1.02, ess: 300 },
   samples: 400,
   seed: 1,
 };

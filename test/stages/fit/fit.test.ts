@@ -33,6 +33,8 @@ const SETTINGS: FitSettings = {
   minimumSnr: 2.5,
   positivity: 1,
   starts: 4,
+  posterior: 'gaussian',
+  sampler: { chains: 4, warmUp: 100, draws: 150, most: 600, rHat: 1.02, ess: 300 },
   samples: 100,
   seed: 1,
 };
@@ -58,7 +60,7 @@ function reportOf(result: FitResult, settings: FitSettings) {
   const { problem, best, at, gains } = result;
   const posterior = drawPosterior(problem.model, best.x, best.curvature, 200, 1);
   const residuals = makeResiduals(settings.data, problem.data, problem.sets, at, gains);
-  return makeReport(result, settings, posterior, residuals);
+  return makeReport(result, settings, posterior, residuals, null);
 }
 
 test('recovers diameter and orientation behind unknown phases and gains of 10 %', () => {

@@ -1,0 +1,226 @@
+/** A Hamiltonian sampler (Duane, Kennedy, Pendleton and Roweth 1987, Phys. Lett. B 195, 216; Neal 2011, Handbook of Markov
+ *  Chain Monte Carlo, ch. 5): leapfrog steps with momenta drawn anew for every trajectory, accepted by the change of energy.
+ *
+ *  Warm-up: the step size by dual averaging towards a stated acceptance (Hoffman and Gelman 2014, J. Mach. Learn. Res. 15,
+ *  1593, section 3.2); after half of it the scale of each coordinate (a diagonal mass) from the spread of the draws so
+ *  far, shrunk towards 1, and the step size anew. A trajectory's length is drawn from 0.6 to 1.4 quarter periods of a
+ *  standard normal, so that no coordinate resonates with it (Neal 2011, section 5.3.2). The target is best whitened first:
+ *  then all scales are near 1. */
+
+import { exp, ln, pow } from './elementary.ts';
+import { type RandomStream, randomStream } from './random.ts';
+
+export interface Target {
+  readonly dimension: number;
+  /** Returns -ln of the density but for a constant, infinite where it is 0; writes its gradient. */
+  evaluate(x: Float64Array, gradient: Float64Array): number;
+}
+
+export interface HamiltonianOptions {
+  readonly chains: number;
+  /** Trajectories before any is kept. */
+  readonly warmUp: number;
+  /** Trajectories of each chain in a round. */
+  readonly draws: number;
+  /** Trajectories of each chain at most. */
+  readonly most: number;
+  readonly seed: number;
+  /** Where a chain starts. */
+  readonly start: (random: RandomStream) => Float64Array;
+  /** Whether what there is suffices; asked after every round. Draws by chain. */
+  readonly suffices: (draws: readonly (readonly Float64Array[])[]) => boolean;
+  readonly progress?: (fraction: number) => void;
+}
+
+export interface HamiltonianRun {
+  /** By chain. */
+  readonly draws: readonly (readonly Float64Array[])[];
+  /** -ln of the density of each draw, by chain. */
+  readonly energies: readonly Float64Array[];
+  readonly stepSizes: readonly number[];
+  /** Mean probability of acceptance after the warm-up. */
+  readonly acceptance: number;
+  /** Trajectories after the warm-up whose energy went astray. */
+  readonly divergences: number;
+  readonly gradients: number;
+  /** False when the limit was reached first. */
+  readonly sufficed: boolean;
+}
+
+const ACCEPTANCE = 0.8;
+const QUARTER_PERIOD = Math.PI / 2;
+/** A change of energy that no step size in use gives: the integration has left the density's typical set. */
+const DIVERGENCE = 1000;
+/** Bounds the cost of a trajectory where the density has places that no step is small enough for. */
+const MOST_STEPS = 32;
+const SMALLEST_STEP = QUARTER_PERIOD / MOST_STEPS;
+/** Chains that accept less than this even with the smallest steps are stuck: more of the same shows nothing. */
+const HOPELESS = 0.3;
+/** Weight, in draws, of the belief that a coordinate's scale is 1. */
+const SHRINKAGE = 10;
+/** Hoffman and Gelman's constants. */
+const [GAMMA, T0, KAPPA] = [0.05, 10, 0.75];
+
+/** Draws from a target. Cost: some ten gradients a trajectory; fixed order, the same bits everywhere. */
+export function sampleHamiltonian(target: Target, options: HamiltonianOptions): HamiltonianRun {
+  const { chains: count, warmUp, draws, most, suffices, progress = () => {} } = options;
+  const chains = Array.from({ length: count }, (_, c) =>
+    makeChain(target, options, randomStream(options.seed, `chain ${c}`)),
+  );
+  const all = count * (warmUp + draws);
+  let done = 0;
+  const step = (work: () => void) => {
+    work();
+    done++;
+    if (done % 20 === 0) progress(Math.min(1, done / all));
+  };
+  for (const chain of chains) {
+    for (let k = 0; k < warmUp; k++) step(() => chain.warm(k, warmUp));
+  }
+  let sufficed = false;
+  for (let kept = 0; kept < most && !sufficed; ) {
+    const round = Math.min(draws, most - kept);
+    for (const chain of chains) for (let k = 0; k < round; k++) step(() => chain.keep());
+    kept += round;
+    sufficed = suffices(chains.map((chain) => chain.draws));
+    if (acceptanceOf(chains) < HOPELESS) break;
+  }
+  const sum = (value: (chain: Chain) => number) => chains.reduce((total, chain) => total + value(chain), 0);
+  return {
+    draws: chains.map((chain) => chain.draws),
+    energies: chains.map((chain) => Float64Array.from(chain.energies)),
+    stepSizes: chains.map((chain) => chain.stepSize()),
+    acceptance: acceptanceOf(chains),
+    divergences: sum((chain) => chain.divergences),
+    gradients: sum((chain) => chain.gradients),
+    sufficed,
+  };
+}
+
+function acceptanceOf(chains: readonly Chain[]): number {
+  const kept = chains.reduce((sum, chain) => sum + chain.draws.length, 0);
+  return chains.reduce((sum, chain) => sum + chain.accepted, 0) / kept;
+}
+
+interface Chain {
+  readonly draws: Float64Array[];
+  readonly energies: number[];
+  accepted: number;
+  divergences: number;
+  gradients: number;
+  warm(k: number, of: number): void;
+  keep(): void;
+  stepSize(): number;
+}
+
+function makeChain(target: Target, options: HamiltonianOptions, random: RandomStream): Chain {
+  const n = target.dimension;
+  let x = Float64Array.from(options.start(random));
+  let gradient = new Float64Array(n);
+  let energy = target.evaluate(x, gradient);
+  if (!Number.isFinite(energy))
+    throw new RangeError('sampleHamiltonian: a chain starts where the density is 0');
+  const scales = new Float64Array(n).fill(1);
+  const spread = { count: 0, sum: new Float64Array(n), squares: new Float64Array(n) };
+  let tuner = makeTuner(pow(n, -0.25));
+  const chain: Chain = {
+    draws: [],
+    energies: [],
+    accepted: 0,
+    divergences: 0,
+    gradients: 1,
+    stepSize: () => tuner.settled(),
+    warm(k, of) {
+      tuner.learn(trajectory(tuner.next()).probability);
+      const half = Math.floor(of / 2);
+      // The way to the typical set says nothing of the spread.
+      if (k >= half / 3 && k < half) addTo(spread, x);
+      if (k === half - 1) {
+        rescale(scales, spread);
+        tuner = makeTuner(tuner.settled());
+      }
+    },
+    keep() {
+      const { probability, diverged } = trajectory(tuner.settled());
+      chain.accepted += probability;
+      if (diverged) chain.divergences++;
+      chain.draws.push(x);
+      chain.energies.push(energy);
+    },
+  };
+
+  /** One trajectory of leapfrog steps; moves to its end or stays. */
+  function trajectory(size: number): { probability: number; diverged: boolean } {
+    const momentum = Float64Array.from({ length: n }, () => random.normal());
+    const length = QUARTER_PERIOD * random.between(0.6, 1.4);
+    const steps = Math.min(MOST_STEPS, Math.max(1, Math.round(length / size)));
+    const at = Float64Array.from(x);
+    const slope = Float64Array.from(gradient);
+    const before = energy + kinetic(momentum);
+    let [now, change] = [energy, 0];
+    for (let k = 0; k < steps; k++) {
+      for (let i = 0; i < n; i++) {
+        momentum[i] -= (size / 2) * scales[i] * slope[i];
+        at[i] += size * scales[i] * momentum[i];
+      }
+      now = target.evaluate(at, slope);
+      chain.gradients++;
+      for (let i = 0; i < n; i++) momentum[i] -= (size / 2) * scales[i] * slope[i];
+      change = now + kinetic(momentum) - before;
+      if (!(change < DIVERGENCE)) break;
+    }
+    const diverged = !(change < DIVERGENCE);
+    const probability = diverged ? 0 : Math.min(1, exp(-change));
+    if (random.uniform() < probability) {
+      x = at;
+      gradient = slope;
+      energy = now;
+    }
+    return { probability, diverged };
+  }
+  return chain;
+}
+
+function kinetic(momentum: Float64Array): number {
+  let sum = 0;
+  for (const p of momentum) sum += p * p;
+  return sum / 2;
+}
+
+/** Dual averaging of the logarithm of the step size. */
+function makeTuner(first: number) {
+  const centre = ln(10 * first);
+  let [m, error, log, average] = [0, 0, ln(first), ln(first)];
+  return {
+    next: () => exp(log),
+    settled: () => exp(average),
+    learn(probability: number) {
+      m++;
+      error += (ACCEPTANCE - probability - error) / (m + T0);
+      log = centre - (Math.sqrt(m) / GAMMA) * error;
+      // A trajectory needs at least one step.
+      log = Math.max(ln(SMALLEST_STEP), Math.min(log, ln(QUARTER_PERIOD)));
+      const weight = pow(m, -KAPPA);
+      average = weight * log + (1 - weight) * average;
+    },
+  };
+}
+
+type Spread = { count: number; readonly sum: Float64Array; readonly squares: Float64Array };
+
+function addTo(spread: Spread, x: Float64Array): void {
+  spread.count++;
+  for (let i = 0; i < x.length; i++) {
+    spread.sum[i] += x[i];
+    spread.squares[i] += x[i] * x[i];
+  }
+}
+
+/** Standard deviations of the coordinates, shrunk towards 1. */
+function rescale(scales: Float64Array, { count, sum, squares }: Spread): void {
+  if (count < 2) return;
+  for (let i = 0; i < scales.length; i++) {
+    const variance = Math.max(0, squares[i] - (sum[i] * sum[i]) / count) / (count - 1);
+    scales[i] = Math.sqrt((count * variance + SHRINKAGE) / (count + SHRINKAGE));
+  }
+}
