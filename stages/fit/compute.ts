@@ -5,6 +5,7 @@ import { writeJson, writeNumbers } from '../formats/json.ts';
 import { writePosterior } from '../formats/posterior.ts';
 import { writeSkyImage } from '../formats/sky-image.ts';
 import { readVisibilities } from '../formats/visibilities.ts';
+import { compareModels } from '../imaging/geometric/compare-models.ts';
 import { imageAt } from '../imaging/linear-model.ts';
 import { drawPosterior } from '../imaging/posterior-draws.ts';
 import { posteriorVariants } from '../imaging/posterior-variants.ts';
@@ -44,8 +45,11 @@ export function compute(task: StageTask): StageReport {
   });
   writeJson(task.outputs.residuals, residuals);
   writeJson(task.outputs.report, report);
+  const models = compareModels(problem, best.x);
+  writeJson(task.outputs.models, models);
   writeNumbers(task.outputs.flux, fluxNumbers(basis, posterior, report.posterior, visibilities.remark));
   for (const term of report.terms) task.note(`chi-square of ${term.term}`, { ...term });
+  task.note('models', { preferred: models.preferred, ...models.margin });
   task.note('fitted', { components: report.components, steps: best.steps, converged: best.converged });
   return { warnings: report.warnings };
 }

@@ -221,6 +221,12 @@ export const fit = {
     },
     residuals: { format: 'json', doc: 'Data with model and error, row by row and closure by closure.' },
     report: { format: 'json', doc: 'Chi-squares, choice of components, gains, starts, what was assumed.' },
+    models: {
+      format: 'json',
+      doc:
+        'Geometric models fitted to the same data terms (ring, elliptical ring, crescent, disc, Gaussian, double), compared by ' +
+        'an information criterion and by held-out scans: whether the data prefer a dark centre.',
+    },
     flux: {
       format: 'numbers',
       doc:

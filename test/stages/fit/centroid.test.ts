@@ -79,7 +79,7 @@ function fitted(settings: FitSettings) {
   const sinks = [memorySink(), memorySink()];
   writeVisibilities(sinks[0], data);
   writeBasis(sinks[1], basis);
-  const names = ['image', 'samples', 'residuals', 'report', 'flux'] as const;
+  const names = ['image', 'samples', 'residuals', 'report', 'models', 'flux'] as const;
   const outputs = Object.fromEntries(names.map((name) => [name, memorySink()]));
   const stage = compute({
     inputs: { visibilities: [sourceOf(sinks[0].bytes())], basis: [sourceOf(sinks[1].bytes())] },

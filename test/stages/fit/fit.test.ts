@@ -160,11 +160,11 @@ test('leaves out baselines that are too short or too long, and says so', () => {
   expect(report.warnings.join()).toContain('rows were left out: their baselines see finer structure');
 });
 
-test('writes its five outputs, twice the same bytes', () => {
+test('writes its six outputs, twice the same bytes', () => {
   const [visibilities, basisBytes] = [memorySink(), memorySink()];
   writeVisibilities(visibilities, good);
   writeBasis(basisBytes, basis);
-  const names = ['image', 'samples', 'residuals', 'report', 'flux'] as const;
+  const names = ['image', 'samples', 'residuals', 'report', 'models', 'flux'] as const;
   const once = () => {
     const outputs = Object.fromEntries(names.map((name) => [name, memorySink()]));
     compute({
