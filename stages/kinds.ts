@@ -7,6 +7,7 @@ import { figure } from './figure/figure.ts';
 import { fit } from './fit/fit.ts';
 import { imageLibrary } from './image-library/image-library.ts';
 import { ingest } from './ingest/ingest.ts';
+import { injection } from './injection/injection.ts';
 import type { StageKind } from './kind.ts';
 import { simulate } from './simulate/simulate.ts';
 
@@ -17,6 +18,7 @@ export const stageKinds: readonly StageKind[] = [
   imageLibrary,
   basisBuild,
   fit,
+  injection,
   features,
   figure,
 ];

@@ -1,10 +1,12 @@
 /** The computation of `features`: measures every draw and writes numbers and report. */
 
+import type { Basis } from '../data.ts';
 import { readBasis } from '../formats/basis.ts';
 import { writeJson, writeNumbers } from '../formats/json.ts';
-import { readPosterior } from '../formats/posterior.ts';
+import { readPosterior, readVariants } from '../formats/posterior.ts';
 import { readSkyImage } from '../formats/sky-image.ts';
-import { measureDraws } from '../imaging/measure-draws.ts';
+import { errorParts } from '../imaging/error-parts.ts';
+import { type MeasuredDraws, measureDraws } from '../imaging/measure-draws.ts';
 import {
   type Calibration,
   LEAST_RINGS,
@@ -14,22 +16,43 @@ import {
   widthViolated,
 } from '../imaging/ring-numbers.ts';
 import type { StageReport, StageTask } from '../kind.ts';
+import { makeDrawing } from '../numerics/draw.ts';
+import { blurredRing } from '../numerics/named-models.ts';
 import { measureRing, RING_LIMITS, type RingMeasurement } from '../numerics/ring.ts';
+import { median } from '../numerics/statistics.ts';
+import { type ModelsVerdict, readBias, readModels, readOthers } from './other-inputs.ts';
 
 export function compute(task: StageTask): StageReport {
   const basis = readBasis(task.inputs.basis[0]);
   const posterior = readPosterior(task.inputs.samples[0]);
   const draws = measureDraws(basis, posterior, task.progress);
-  const numbers = makeRingNumbers(draws, task.parameters as Calibration, basis.resolutionRadians);
-  const warnings = findWarnings(ringFraction(draws), widthViolated(numbers));
+  const bias = task.inputs.bias ? readBias(task.inputs.bias[0]) : null;
+  const models = task.inputs.models ? readModels(task.inputs.models[0]) : null;
+  const parts = errorParts(draws, {
+    basis,
+    variants: readVariants(task.inputs.samples[0]),
+    others: readOthers(task.inputs.otherBasis ?? [], task.inputs.otherSamples ?? []),
+    bias: bias?.diameter ?? null,
+  });
+  const numbers = makeRingNumbers(draws, task.parameters as Calibration, {
+    resolutionRadians: basis.resolutionRadians,
+    bias,
+    models,
+    parts,
+    deepest: deepestDepression(draws, basis),
+  });
+  const warnings = findWarnings(ringFraction(draws), widthViolated(numbers), models);
   const image = task.inputs.image?.[0];
   writeNumbers(task.outputs.ring, numbers);
   writeJson(task.outputs.report, {
-    verdict: ringFraction(draws) >= LEAST_RINGS ? 'ring' : 'no ring',
+    verdict: 'diameter' in numbers.values ? 'ring' : 'no ring',
     draws: draws.count,
     withRing: draws.rings.length,
     reasonsAgainst: draws.reasons,
     limits: RING_LIMITS,
+    models,
+    bias,
+    diameterErrors: parts,
     image: image ? inMicroarcsec(measureRing(readSkyImage(image))) : null,
     measures: draws.rings.map(inMicroarcsec),
     warnings,
@@ -38,10 +61,11 @@ export function compute(task: StageTask): StageReport {
   return { warnings };
 }
 
-function findWarnings(fraction: number, violated: string | null): string[] {
+function findWarnings(fraction: number, violated: string | null, models: ModelsVerdict | null): string[] {
   const warnings = violated === null ? [] : [violated];
   const percent = (100 * fraction).toFixed(0);
   if (!(fraction >= LEAST_RINGS)) return [`no ring: only ${percent} % of the draws have one`];
+  if (models && !models.ringPreferred) return [`no ring: ${models.sentence}`];
   return fraction < 0.95 ? [...warnings, `only ${percent} % of the draws have a ring`] : warnings;
 }
 
@@ -64,4 +88,15 @@ function inMicroarcsec(ring: RingMeasurement) {
     missingInner: ring.missingInner,
     missingOuter: ring.missingOuter,
   };
+}
+
+/** The depression of a ring without light inside, of the diameter and width that were measured; null without a ring. */
+function deepestDepression({ rings }: MeasuredDraws, { nx, ny, pixelRadians }: Basis): number | null {
+  const widths = rings.flatMap(({ width }) => width ?? []);
+  if (widths.length === 0) return null;
+  const width = median(widths);
+  const diameter = median(rings.map((ring) => ring.thinRingDiameter ?? ring.diameter));
+  const pixels = new Float64Array(nx * ny);
+  makeDrawing({ nx, ny, pixelRadians })(pixels, blurredRing(diameter, width));
+  return measureRing({ nx, ny, pixelRadians, pixels }).centralDepression;
 }

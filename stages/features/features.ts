@@ -4,10 +4,11 @@ import type { StageKind } from '../kind.ts';
 
 export const features = {
   kind: 'features',
-  version: 1,
+  version: 2,
   doc:
     'Measures the ring in every image of a posterior: diameter, width, asymmetry and position angle, central ' +
-    'depression, roundness; medians with 68 % and 95 % intervals. Says `no ring` when most images have none. With a ' +
+    "depression, roundness; medians with 68 % and 95 % intervals, corrected for the method's bias where it is known, and " +
+    'the parts of the error. Says `no ring` when most images have none or a model without one explains the data. With a ' +
     'calibration alpha it gives the angular gravitational radius, with a distance the mass, and what both assume.',
   source:
     'Definitions: stages/numerics/ring.ts and blurred-ring.ts. Quantiles: Hyndman & Fan 1996, Am. Stat. 50, 361, type 7. ' +
@@ -21,6 +22,28 @@ export const features = {
       optional: true,
       doc: "The fit's image; measured too, for comparison in the report.",
     },
+    bias: {
+      format: 'json',
+      optional: true,
+      doc: 'The bias that a stage of kind `injection` found: values are corrected by it, and its errors enter the intervals.',
+    },
+    models: {
+      format: 'json',
+      optional: true,
+      doc: "The fit's comparison of geometric models: where it prefers none with a dark centre, there is no ring.",
+    },
+    otherBasis: {
+      format: 'basis',
+      optional: true,
+      many: true,
+      doc: 'Bases of other libraries in which the same data were fitted, in the order of `otherSamples`.',
+    },
+    otherSamples: {
+      format: 'fits-table',
+      optional: true,
+      many: true,
+      doc: 'Draws of these fits: between them and the main one lies the part of the error that the library makes.',
+    },
   },
   parameters: {
     alpha: {
@@ -32,6 +55,13 @@ export const features = {
         'Ring diameter over angular gravitational radius, for this definition of the diameter and this method. ' +
         '10.392 is the photon capture diameter of a body without spin; a ring of light need not lie there.',
     },
+    alphaError: {
+      type: 'number',
+      from: 0,
+      to: 50,
+      optional: true,
+      doc: 'Standard deviation of alpha; exact when absent.',
+    },
     distance: {
       type: 'quantity',
       unit: 'pc',
@@ -39,6 +69,14 @@ export const features = {
       to: 1e11,
       optional: true,
       doc: 'Distance; with alpha it gives the mass.',
+    },
+    distanceError: {
+      type: 'quantity',
+      unit: 'pc',
+      from: 0,
+      to: 1e11,
+      optional: true,
+      doc: 'Standard deviation of the distance; exact when absent.',
     },
   },
   outputs: {
@@ -53,6 +91,13 @@ export const features = {
         'central-depression',
         'roundness',
         'thin-ring-diameter',
+        'diameter-uncorrected',
+        'diameter-error-noise',
+        'diameter-error-calibration',
+        'diameter-error-components',
+        'diameter-error-library',
+        'diameter-error-method',
+        'deepest-depression',
         'ring-fraction',
         'gravitational-radius',
         'mass',

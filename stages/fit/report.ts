@@ -47,6 +47,8 @@ export function makeReport(
   ];
   return {
     data: settings.data,
+    /** What a fit of like data needs to be made the same way. */
+    settings: usedSettings(result, settings),
     remark: problem.data.remark,
     rows: { fitted: selection.data.count, tooShort: selection.tooShort, tooLong: selection.tooLong },
     resolutionRadians: problem.basis.resolutionRadians,
@@ -76,6 +78,27 @@ export function makeReport(
     },
     stationResiduals: stationResiduals(residuals),
     warnings,
+  };
+}
+
+/** The settings as they were in the end: so many components, that flux, priors as they were widened. */
+function usedSettings({ problem, best }: FitResult, settings: FitSettings) {
+  const stations = Object.fromEntries(
+    problem.data.stations
+      .map(({ name }, k) => [name, problem.deviations[k]] as const)
+      .filter(([, deviation]) => deviation !== settings.gainPriors.usual),
+  );
+  return {
+    data: settings.data,
+    components: componentsOf(problem.model, best.x),
+    priorWidth: settings.priorWidth,
+    flux: problem.model.flux,
+    fluxPrior: settings.fluxPrior,
+    shortest: settings.shortest,
+    gainPriors: { usual: settings.gainPriors.usual, stations },
+    minimumSnr: settings.minimumSnr,
+    centroid: settings.centroid ?? 'fixed',
+    positivity: settings.positivity,
   };
 }
 

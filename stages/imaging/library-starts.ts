@@ -21,16 +21,18 @@ const MOST_IMAGES = 4000;
 /** Relative error added to amplitudes: two gains of 10 %. */
 const GAIN_SPREAD = 0.15;
 
-/** Returns library images in the order of their agreement, the best first. @param sets  closures of `data` */
+/** Returns library images in the order of their agreement, the best first. @param sets  closures of `data`
+ *  @param libraryStride  one image in so many is tried */
 export function matchLibrary(
   basis: Basis,
   visibilities: BasisVisibilities,
   data: Visibilities,
   sets: readonly ClosureSet[],
+  libraryStride = 1,
 ): LibraryMatch[] {
   const K = visibilities.columns - 1;
   const images = basis.families.length;
-  const stride = Math.max(1, Math.ceil(images / MOST_IMAGES));
+  const stride = Math.max(libraryStride, Math.ceil(images / MOST_IMAGES));
   const amplitudes = prepareAmplitudes(data);
   const phases = preparePhases(data, sets);
   const matches: LibraryMatch[] = [];

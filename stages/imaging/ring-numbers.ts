@@ -1,15 +1,32 @@
 /** From measured draws to numbers with credible intervals, definitions and remarks. */
 
 import type { Numbers, NumberValue } from '../data.ts';
+import { randomStream } from '../numerics/random.ts';
 import type { RingMeasurement } from '../numerics/ring.ts';
-import { angleDifference, circularMean, quantiles } from '../numerics/statistics.ts';
+import { angleDifference, circularMean, median, quantiles } from '../numerics/statistics.ts';
+import type { ErrorParts } from './error-parts.ts';
 import { massInSuns } from './gravitational-radius.ts';
 import type { MeasuredDraws } from './measure-draws.ts';
+import { type BiasOfQuantity, correctionAt, type MethodBias } from './method-bias.ts';
 
 export interface Calibration {
   readonly alpha?: number;
+  readonly alphaError?: number;
   /** pc */
   readonly distance?: number;
+  readonly distanceError?: number;
+}
+
+/** What is known besides the draws. */
+export interface Knowledge {
+  readonly resolutionRadians?: number;
+  /** The method's bias, from injections. */
+  readonly bias?: MethodBias | null;
+  /** Whether geometric models prefer a dark centre, and the sentence that says so. */
+  readonly models?: { readonly ringPreferred: boolean; readonly sentence: string } | null;
+  readonly parts?: ErrorParts;
+  /** The least depression that the resolution allows a ring of this size to show. */
+  readonly deepest?: number | null;
 }
 
 /** Microarcseconds per radian. */
@@ -18,11 +35,10 @@ export const UAS_PER_RADIAN = 206264806247.09637;
 export const LEAST_RINGS = 0.5;
 
 const INTERVAL = 'Median of the posterior draws that have a ring, with 68 % and 95 % intervals. ';
-const NO_BIAS = " The interval does not hold the method's own bias.";
 
 const DEFINITIONS = {
-  diameter: `Twice the mean radius of the ridge (largest brightness along each ray) over position angle.${NO_BIAS}`,
-  width: `Mean full width at half maximum along the rays from the centre.${NO_BIAS}`,
+  diameter: `Twice the mean radius of the ridge (largest brightness along each ray) over position angle.`,
+  width: `Mean full width at half maximum along the rays from the centre.`,
   asymmetry:
     'First Fourier mode of the brightness on the ridge: |sum I e^{i chi}| / sum I, 0 for an even ring.',
   'position-angle':
@@ -34,11 +50,21 @@ const DEFINITIONS = {
   roundness: 'Short axis over long axis of the ridge, from the second Fourier mode of its radii.',
   'thin-ring-diameter':
     'Diameter of a thin ring that, blurred by a Gaussian, has this ridge and width; the blur makes the ridge smaller by ' +
-    `about w^2/(4 ln2 d).${NO_BIAS}`,
+    `about w^2/(4 ln2 d).`,
 } as const;
 
 const DARK_CENTRE =
   'The dark centre is a measured contrast. It is no picture of a horizon and no proof of one.';
+const PARTS: Readonly<Record<keyof ErrorParts, string>> = {
+  noise:
+    'Part of the error of the diameter that noise alone makes: standard deviation while the gains are held.',
+  calibration: 'Part that the gains of the stations add to that of the noise, in quadrature.',
+  components: 'Spread between the numbers of components that held-out data admit.',
+  library: 'Spread between fits in other libraries.',
+  method: "What is not known of the method's bias: scatter of injected rings and error of the correction.",
+};
+/** Draws that stand for one, where an error is folded in. */
+const COPIES = 8;
 const BIAS =
   "The intervals are those of the posterior. They do not hold the method's own bias, which is measured by injecting " +
   'known sources into the same coverage.';
@@ -53,7 +79,7 @@ export function ringFraction({ count, rings }: MeasuredDraws): number {
 export function makeRingNumbers(
   draws: MeasuredDraws,
   calibration: Calibration,
-  resolutionRadians = 0,
+  { resolutionRadians = 0, bias = null, models = null, parts = {}, deepest = null }: Knowledge = {},
 ): Numbers {
   const fraction: NumberValue = {
     value: ringFraction(draws),
@@ -61,25 +87,75 @@ export function makeRingNumbers(
     definition:
       'Fraction of the posterior draws that have a ring: both half-maxima on most rays, radius scatter below a tenth, a dark centre.',
   };
-  if (!(ringFraction(draws) >= LEAST_RINGS)) {
-    return {
-      values: { 'ring-fraction': fraction },
-      remarks: [
-        `No ring: ${draws.rings.length} of ${draws.count} draws have one, so no number of a ring is given.`,
-      ],
-    };
-  }
-  const measured = ringValues(draws.rings);
+  const against = reasonAgainst(draws, models);
+  if (against !== null) return { values: { 'ring-fraction': fraction }, remarks: [against] };
+  const { values, diameters } = ringValues(draws.rings, bias);
   return {
-    values: { ...measured, 'ring-fraction': fraction, ...calibrated(measured.diameter, calibration) },
+    values: {
+      ...values,
+      'ring-fraction': fraction,
+      ...partValues(parts),
+      ...deepestValue(deepest),
+      ...calibrated(diameters, calibration),
+    },
     remarks: [
       DARK_CENTRE,
-      BIAS,
+      bias === null ? BIAS : correctedRemark(bias),
       WIDTH_BOUND,
+      ...(models === null ? [] : [models.sentence]),
       ...resolutionRemarks(resolutionRadians),
       ...calibrationRemarks(calibration),
     ],
   };
+}
+
+/** Why no number of a ring is given; null when they are. */
+function reasonAgainst(draws: MeasuredDraws, models: Knowledge['models']): string | null {
+  if (!(ringFraction(draws) >= LEAST_RINGS))
+    return `No ring: ${draws.rings.length} of ${draws.count} draws have one, so no number of a ring is given.`;
+  if (models && !models.ringPreferred) return `No ring: ${models.sentence} So no number of a ring is given.`;
+  return null;
+}
+
+function correctedRemark({ diameter, width }: MethodBias): string {
+  const shown = ({ offset, scatter }: BiasOfQuantity) =>
+    `${(-offset).toFixed(2)} uas with a scatter of ${scatter.toFixed(2)} uas`;
+  return (
+    `Values are corrected for the method's own bias, measured on ${diameter.trials} rings injected into the same coverage: ` +
+    `the diameter by ${shown(diameter)}, the width by ${shown(width)}. The intervals hold the error of the correction and ` +
+    'the scatter; `-uncorrected` stands beside the diameter.'
+  );
+}
+
+/** Draws with the bias taken out and its error put in: each stands for several, spread as the error is. */
+function corrected(
+  values: readonly number[],
+  bias: BiasOfQuantity | undefined,
+  name: string,
+): readonly number[] {
+  if (bias === undefined) return values;
+  const { shift, deviation } = correctionAt(bias, median(values));
+  const random = randomStream(1, `method bias of the ${name}`);
+  return values.flatMap((value) =>
+    Array.from({ length: COPIES }, () => value - shift + deviation * random.normal()),
+  );
+}
+
+function partValues(parts: ErrorParts): Record<string, NumberValue> {
+  return Object.fromEntries(
+    Object.entries(parts).map(([part, value]) => [
+      `diameter-error-${part}`,
+      { value: value as number, unit: 'uas', definition: PARTS[part as keyof ErrorParts] },
+    ]),
+  );
+}
+
+function deepestValue(deepest: number | null): Record<string, NumberValue> {
+  if (deepest === null) return {};
+  const definition =
+    'Central depression that a ring without any light inside would show at this diameter, width and resolution: the ' +
+    'instrument can see none deeper.';
+  return { 'deepest-depression': { value: deepest, unit: '', definition } };
 }
 
 function resolutionRemarks(resolutionRadians: number): string[] {
@@ -91,44 +167,75 @@ function resolutionRemarks(resolutionRadians: number): string[] {
   ];
 }
 
-function ringValues(rings: readonly RingMeasurement[]): Record<string, NumberValue> {
+function ringValues(
+  rings: readonly RingMeasurement[],
+  bias: MethodBias | null,
+): { values: Record<string, NumberValue>; diameters: readonly number[] } {
   const lengths = (pick: (ring: RingMeasurement) => number | null) =>
     rings
       .map(pick)
       .filter((value) => value !== null)
       .map((value) => value * UAS_PER_RADIAN);
   const thin = lengths((ring) => ring.thinRingDiameter);
-  return {
-    diameter: interval(
-      lengths((ring) => ring.diameter),
-      'uas',
-      DEFINITIONS.diameter,
-    ),
-    width: interval(
+  const raw = lengths((ring) => ring.diameter);
+  const diameters = corrected(raw, bias?.diameter, 'diameter');
+  const own = <T extends 'width' | 'asymmetry' | 'central-depression'>(
+    name: T,
+    values: readonly number[],
+    unit: string,
+  ) => interval(corrected(values, bias?.[name], name), unit, DEFINITIONS[name]);
+  const depressions = rings.map((ring) => ring.centralDepression);
+  const values = {
+    diameter: interval(diameters, 'uas', DEFINITIONS.diameter),
+    ...(bias === null
+      ? {}
+      : {
+          'diameter-uncorrected': interval(
+            raw,
+            'uas',
+            `${DEFINITIONS.diameter} Without correction for the method's bias.`,
+          ),
+        }),
+    width: own(
+      'width',
       lengths((ring) => ring.width),
       'uas',
-      DEFINITIONS.width,
     ),
-    asymmetry: interval(
+    asymmetry: own(
+      'asymmetry',
       rings.map((ring) => ring.asymmetry),
       '',
-      DEFINITIONS.asymmetry,
     ),
-    'position-angle': angleInterval(rings.map((ring) => ring.positionAngleDegrees)),
-    'central-depression': interval(
-      rings.map((ring) => ring.centralDepression),
-      '',
-      DEFINITIONS['central-depression'],
+    'position-angle': angleInterval(
+      corrected(
+        unwrapped(rings.map((ring) => ring.positionAngleDegrees)),
+        bias?.['position-angle'],
+        'position angle',
+      ),
     ),
+    'central-depression': own('central-depression', depressions, ''),
     roundness: interval(
       rings.map((ring) => ring.roundness),
       '',
       DEFINITIONS.roundness,
     ),
     ...(thin.length > rings.length / 2
-      ? { 'thin-ring-diameter': interval(thin, 'uas', DEFINITIONS['thin-ring-diameter']) }
+      ? {
+          'thin-ring-diameter': interval(
+            corrected(thin, bias?.diameter, 'thin ring'),
+            'uas',
+            DEFINITIONS['thin-ring-diameter'],
+          ),
+        }
       : {}),
   };
+  return { values, diameters };
+}
+
+/** Angles about their mean, so that they can be moved and spread. */
+function unwrapped(degrees: readonly number[]): number[] {
+  const centre = circularMean(degrees).degrees;
+  return degrees.map((angle) => centre + angleDifference(angle, centre));
 }
 
 function interval(values: readonly number[], unit: string, definition: string): NumberValue {
@@ -143,31 +250,32 @@ function angleInterval(degrees: readonly number[]): NumberValue {
   return { value: centre, unit: 'deg', low, high, low95, high95, definition: DEFINITIONS['position-angle'] };
 }
 
-function calibrated(diameter: NumberValue, { alpha, distance }: Calibration): Record<string, NumberValue> {
+/** Angle and mass with the errors of calibration and distance drawn beside those of the diameter. */
+function calibrated(
+  diameters: readonly number[],
+  { alpha, alphaError = 0, distance, distanceError = 0 }: Calibration,
+): Record<string, NumberValue> {
   if (alpha === undefined) return {};
-  const angle = scaled(
-    diameter,
-    1 / alpha,
+  const random = randomStream(1, 'calibration and distance');
+  const angles = diameters.map((diameter) => diameter / positive(alpha, alphaError * random.normal()));
+  const ofAlpha = alphaError > 0 ? `${alpha} ± ${alphaError}` : `${alpha}, taken as exact`;
+  const angle = interval(
+    angles,
     'uas',
-    `Angular gravitational radius G M / (c^2 D): diameter over alpha = ${alpha}.`,
+    `Angular gravitational radius G M / (c^2 D): diameter over alpha = ${ofAlpha}.`,
   );
   if (distance === undefined) return { 'gravitational-radius': angle };
-  const perUas = massInSuns(1 / UAS_PER_RADIAN, distance);
-  const mass = scaled(angle, perUas, 'solMass', `Mass at a distance of ${distance} pc, taken as exact.`);
+  const perUas = massInSuns(1 / UAS_PER_RADIAN, 1);
+  const masses = angles.map((theta) => theta * perUas * positive(distance, distanceError * random.normal()));
+  const ofDistance =
+    distanceError > 0 ? `${distance} ± ${distanceError} pc` : `${distance} pc, taken as exact`;
+  const mass = interval(masses, 'solMass', `Mass at a distance of ${ofDistance}.`);
   return { 'gravitational-radius': angle, mass };
 }
 
-function scaled(number: NumberValue, factor: number, unit: string, definition: string): NumberValue {
-  const times = (value: number | undefined) => (value === undefined ? undefined : value * factor);
-  return {
-    value: number.value * factor,
-    unit,
-    low: times(number.low),
-    high: times(number.high),
-    low95: times(number.low95),
-    high95: times(number.high95),
-    definition,
-  };
+/** A quantity that cannot be negative, moved by its error, kept above a tenth. */
+function positive(value: number, step: number): number {
+  return Math.max(value / 10, value + step);
 }
 
 function calibrationRemarks({ alpha, distance }: Calibration): string[] {

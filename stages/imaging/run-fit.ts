@@ -51,36 +51,44 @@ const FIRST_COMPONENTS = 20;
 /** A library image's flux is uncertain by its fit; the median of so many of the best is the prior's mean. */
 const FLUX_MATCHES = 10;
 
+/** What a fit of like data has computed already, and how much of the library is looked at. */
+export interface FitHints {
+  /** Of the basis at the (u,v) of the rows that enter: the same for other data on the same rows. */
+  readonly visibilities?: BasisVisibilities;
+  /** One image in so many of the library is tried as a start. Default 1. */
+  readonly libraryStride?: number;
+}
+
 export function runFit(
   visibilities: Visibilities,
   basis: Basis,
   settings: FitSettings,
   progress: (fraction: number) => void = () => {},
+  { visibilities: known, libraryStride = 1 }: FitHints = {},
 ): FitResult {
   const longest = longestBaseline(basis.resolutionRadians);
   const selection = selectRows(visibilities, settings.shortest * 1e9, longest);
   const sets = fitClosures(selection.data, settings.minimumSnr);
-  const B = basisVisibilities(basis, selection.data.u, selection.data.v);
-  const matches = matchLibrary(basis, B, selection.data, sets);
+  const B = known ?? basisVisibilities(basis, selection.data.u, selection.data.v);
+  const matches = matchLibrary(basis, B, selection.data, sets, libraryStride);
   progress(0.1);
   const { flux, fluxSource } = fluxPrior(settings, selection, matches);
   const problem = makeProblem(selection.data, sets, basis, B, flux, settings);
   const picked = pickStarts(matches, settings.starts - 1);
   const first = firstColumns(settings, basis);
-  const settled = settleGains(problem, placesOf(makeStarts(problem, picked, first)), settings);
+  const firstStarts = makeStarts(problem, picked, first);
+  const firstSolved = solveFrom(problem, placesOf(firstStarts));
+  const settled = settleGains(problem, [firstSolved.best.x], settings);
   progress(0.2);
   const choice =
     settings.components === 'by-data'
       ? chooseComponents(settled.problem, settled.best.x, (fraction) => progress(0.2 + 0.6 * fraction))
       : null;
-  const columns = choice ? 1 + choice.components : first;
-  const before = {
-    start: 'fit before the choice',
-    x: resized(settled.problem.model, settled.best.x, columns),
-  };
-  const starts = [...makeStarts(settled.problem, picked, columns), before];
-  const { best: bestStart, minima } = solveFrom(settled.problem, placesOf(starts));
-  const last = settleGains(settled.problem, [bestStart.x], settings, settled.widenings);
+  const again = choice === null ? null : searchAgain(settled, picked, 1 + choice.components);
+  const starts = again?.starts ?? firstStarts;
+  const minima = again?.minima ?? firstSolved.minima;
+  const last =
+    again === null ? settled : settleGains(settled.problem, [again.best.x], settings, settled.widenings);
   progress(0.95);
   return {
     selection,
@@ -90,6 +98,16 @@ export function runFit(
     at: predict(last.problem.model, last.best.x),
     starts: minima.map((minimum, k) => outcomeOf(starts[k].start, minimum)),
   };
+}
+
+/** The search with the number of components that was chosen, from all starts and from the fit before. */
+function searchAgain(settled: Settled, picked: readonly LibraryMatch[], columns: number) {
+  const before = {
+    start: 'fit before the choice',
+    x: resized(settled.problem.model, settled.best.x, columns),
+  };
+  const starts = [...makeStarts(settled.problem, picked, columns), before];
+  return { starts, ...solveFrom(settled.problem, placesOf(starts)) };
 }
 
 interface Start {

@@ -11,6 +11,12 @@ const MOST_STEPS = 30;
 const MOST_IDLE_STEPS = 4;
 /** Pixels; the centre's error that is let stand. */
 const CENTRE_TOLERANCE = 1e-4;
+/** A ridge whose radii scatter by less needs no second search: the limit of what is called a ring. */
+const EVEN = 0.1;
+/** The grid of the second search: places to either side, their distance as a part of the image, rays from each. */
+const GRID_STEPS = 2;
+const GRID_DIVISOR = 14;
+const FEW_RAYS = 16;
 /** Pixels between samples along a ray. */
 export const RAY_STEP = 0.5;
 
@@ -52,16 +58,58 @@ export function brightnessCentroid(nx: number, ny: number, pixels: Float64Array)
   return [sumX / sum, sumY / sum];
 }
 
+/** A centre with the ridge about it. */
+export interface Centre {
+  readonly column: number;
+  readonly row: number;
+  readonly ridge: Ridge;
+}
+
+/** The centre about which the ridge is most even: searched from a start, and where that ends at an uneven ridge, as it may
+ *  where one side is much brighter, from other places as well. */
+export function findCentre(spline: SplineImage, start: [number, number], rays: Rays): Centre {
+  const found = searchCentre(spline, start, rays);
+  if (unevenness(found.ridge) < EVEN) return found;
+  const other = searchCentre(spline, mostEvenPlace(spline, start), rays);
+  return unevenness(other.ridge) < unevenness(found.ridge) ? other : found;
+}
+
+/** Scatter of the radii over their mean; 1 where there is no ridge but a peak. */
+function unevenness({ mean, scatter }: Ridge): number {
+  return mean > RAY_STEP ? Math.min(1, scatter / mean) : 1;
+}
+
+/** Of a grid of places about a start, that with the most even ridge by few rays. */
+function mostEvenPlace(spline: SplineImage, [column, row]: [number, number]): [number, number] {
+  const rays = makeRays(FEW_RAYS);
+  const step = Math.min(spline.nx, spline.ny) / GRID_DIVISOR;
+  let best: [number, number] = [column, row];
+  let least = Number.POSITIVE_INFINITY;
+  for (let j = -GRID_STEPS; j <= GRID_STEPS; j++) {
+    for (let i = -GRID_STEPS; i <= GRID_STEPS; i++) {
+      const at: [number, number] = [
+        clamp(column + i * step, 2, spline.nx - 3),
+        clamp(row + j * step, 2, spline.ny - 3),
+      ];
+      const uneven = unevenness(findRidge(spline, at[0], at[1], rays));
+      if (uneven < least) {
+        least = uneven;
+        best = at;
+      }
+    }
+  }
+  return best;
+}
+
 /** Moves the centre by the first Fourier mode of the ridge radii (the Gauss-Newton step of a circle through the ridge)
  *  and keeps the centre of least scatter. */
-export function findCentre(spline: SplineImage, start: [number, number], rays: Rays) {
+function searchCentre(spline: SplineImage, start: [number, number], rays: Rays): Centre {
   let [column, row] = start;
-  let best: { column: number; row: number; ridge: Ridge } | undefined;
+  let best: Centre | undefined;
   let idle = 0;
   for (let step = 0; step < MOST_STEPS; step++) {
     const ridge = findRidge(spline, column, row, rays);
-    const relative = ridge.scatter / Math.max(ridge.mean, RAY_STEP);
-    if (!best || relative < best.ridge.scatter / Math.max(best.ridge.mean, RAY_STEP)) {
+    if (!best || unevenness(ridge) < unevenness(best.ridge)) {
       best = { column, row, ridge };
       idle = 0;
     } else if (++idle >= MOST_IDLE_STEPS) break;
@@ -71,7 +119,7 @@ export function findCentre(spline: SplineImage, start: [number, number], rays: R
     column = clamp(column - east, 2, spline.nx - 3);
     row = clamp(row + north, 2, spline.ny - 3);
   }
-  return best as { column: number; row: number; ridge: Ridge };
+  return best as Centre;
 }
 
 function findRidge(spline: SplineImage, column: number, row: number, rays: Rays): Ridge {

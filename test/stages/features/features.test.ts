@@ -8,7 +8,9 @@ import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readJson, readNumbers } from '../../../stages/formats/json.ts';
 import { writePosterior } from '../../../stages/formats/posterior.ts';
 import { writeSkyImage } from '../../../stages/formats/sky-image.ts';
+import { errorParts } from '../../../stages/imaging/error-parts.ts';
 import { measureDraws } from '../../../stages/imaging/measure-draws.ts';
+import type { MethodBias } from '../../../stages/imaging/method-bias.ts';
 import { makeRingNumbers, widthViolated } from '../../../stages/imaging/ring-numbers.ts';
 import { blurredRingImage, imageOf, UAS } from '../numerics/ring-images.ts';
 
@@ -157,4 +159,76 @@ test('refuses samples of another basis', () => {
   expect(() => measureDraws(basis, draws([0]))).toThrow(
     'input samples: too-few-draws: expected at least two draws, got 1. Raise the parameter `samples` of the fit.',
   );
+});
+
+/** A bias that is the same for every size. */
+function steadyBias(offset: number, scatter: number): MethodBias {
+  const none = { offset: 0, slope: 0, centre: 40, covariance: [0, 0, 0] as const, scatter: 0, trials: 12 };
+  const ofDiameter = { ...none, offset, scatter };
+  return {
+    diameter: ofDiameter,
+    width: none,
+    asymmetry: none,
+    'position-angle': { ...none, centre: 0 },
+    'central-depression': none,
+  };
+}
+
+// Identity: a known bias comes out of the value and its scatter goes into the interval, in quadrature.
+test("corrects for the method's bias and folds its error in", () => {
+  const posterior = draws(new Array(100).fill(0));
+  const measured = measureDraws(between(ring({}), gaussian), posterior);
+  const { values, remarks } = makeRingNumbers(measured, {}, { bias: steadyBias(-0.8, 0.5) });
+  const raw = values['diameter-uncorrected'].value;
+  // Of 800 values the median is known to 0.5 * 1.25 / sqrt(800) = 0.02, the ends of the interval to 0.03.
+  expect(Math.abs(values.diameter.value - raw - 0.8)).toBeLessThan(0.08);
+  const half = ((values.diameter.high ?? 0) - (values.diameter.low ?? 0)) / 2;
+  expect(Math.abs(half - 0.5 * 0.994)).toBeLessThan(0.08);
+  expect(remarks.join(' ')).toContain('measured on 12 rings injected into the same coverage');
+  expect(remarks.join(' ')).not.toContain("do not hold the method's own bias");
+});
+
+test('has no ring where a model without a dark centre explains the data', () => {
+  const measured = measureDraws(between(ring({}), gaussian), draws(new Array(10).fill(0)));
+  const models = { ringPreferred: false, sentence: 'The data do not prefer a dark centre: invented.' };
+  const { values, remarks } = makeRingNumbers(measured, {}, { models });
+  expect(Object.keys(values)).toEqual(['ring-fraction']);
+  expect(remarks.join()).toContain('No ring: The data do not prefer a dark centre');
+});
+
+// ring.gravitational (check-values, section 8): M = 5e6 suns at 9000 pc (invented) has theta_g = 5.483682618760565 uas.
+test('carries the errors of alpha and distance', () => {
+  const measured = measureDraws(between(ring({}), gaussian), draws(new Array(200).fill(0)));
+  const diameter = makeRingNumbers(measured, {}).values.diameter.value;
+  const alpha = diameter / 5.483682618760565;
+  const { values } = makeRingNumbers(measured, {
+    alpha,
+    alphaError: 0.05 * alpha,
+    distance: 9000,
+    distanceError: 900,
+  });
+  expect(values['gravitational-radius'].value).toBeCloseTo(5.483682618760565, 0);
+  const half = (name: string) =>
+    ((values[name].high ?? 0) - (values[name].low ?? 0)) / 2 / values[name].value;
+  expect(Math.abs(half('gravitational-radius') - 0.05)).toBeLessThan(0.015);
+  // 5 % and 10 % in quadrature.
+  expect(Math.abs(half('mass') - Math.hypot(0.05, 0.1))).toBeLessThan(0.03);
+  expect(Math.abs(values.mass.value / 5e6 - 1)).toBeLessThan(0.03);
+});
+
+test('tells the parts of the error of the diameter', () => {
+  const basis = between(ring({ diameter: 40 }), ring({ diameter: 44 }));
+  const mixed = measureDraws(basis, draws([0, 0.2, 0.4, 0.6, 0.8, 1]));
+  const variants = [
+    { role: 'gains fixed' as const, posterior: draws([0.4, 0.45, 0.5, 0.55, 0.6]) },
+    { role: 'components' as const, posterior: draws([0.9, 0.9]) },
+  ];
+  const others = [{ basis, posterior: draws([0.1, 0.1]) }];
+  const parts = errorParts(mixed, { basis, variants, others, bias: steadyBias(0, 0.3).diameter });
+  expect(Object.keys(parts)).toEqual(['noise', 'calibration', 'components', 'library', 'method']);
+  expect(parts.noise).toBeLessThan(parts.calibration ?? 0);
+  expect(parts.method).toBeCloseTo(0.3, 6);
+  expect(parts.components).toBeGreaterThan(0.3);
+  const { values } = makeRingNumbers(mixed, {}, { parts });
+  expect(values['diameter-error-noise'].unit).toBe('uas');
 });

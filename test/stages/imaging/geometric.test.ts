@@ -54,14 +54,15 @@ test('finds the ring that was put in', () => {
   expect(found.ringPreferred).toBe(true);
   expect(found.sentence).toMatch(/^The data prefer a dark centre: .* \(ring\)/);
   const fitted = found.models.find(({ model }) => model === 'ring');
-  expect(fitted?.converged).toBe(true);
+  if (fitted === undefined) throw new Error('no ring among the models');
+  expect(fitted.converged).toBe(true);
   for (const [name, expected] of [
     ['diameter', 46],
     ['width', 12],
     ['asymmetry', 0.25],
     ['position-angle', 150],
   ] as const) {
-    const { value, deviation } = fitted?.parameters[name] as { value: number; deviation: number };
+    const { value, deviation } = fitted.parameters[name];
     expect(Math.abs(value - expected)).toBeLessThan(5 * deviation);
     expect(Math.abs(value / expected - 1)).toBeLessThan(0.06);
     expect(deviation).toBeGreaterThan(0);

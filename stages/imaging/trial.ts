@@ -1,0 +1,111 @@
+/** A trial: a known source is observed through the rows of given data, fitted and measured as those were. What comes out,
+ *  less what went in, is the method's error. */
+
+import type { Basis, SkyImage, Visibilities } from '../data.ts';
+import { makeDrawing } from '../numerics/draw.ts';
+import type { Model } from '../numerics/models.ts';
+import { measureRing, type RingMeasurement } from '../numerics/ring.ts';
+import { circularMean, median, quantiles } from '../numerics/statistics.ts';
+import { measureDraws } from './measure-draws.ts';
+import { drawPosterior } from './posterior-draws.ts';
+import { UAS_PER_RADIAN } from './ring-numbers.ts';
+import { type FitHints, type FitResult, runFit } from './run-fit.ts';
+import type { FitSettings } from './settings.ts';
+import { observe } from './synthetic.ts';
+
+/** Quantities of a ring: lengths in uas, angles in degrees. */
+export const QUANTITIES = ['diameter', 'width', 'asymmetry', 'position-angle', 'central-depression'] as const;
+export type Quantity = (typeof QUANTITIES)[number];
+
+/** Median and half of the 68 % interval over the draws with a ring; for the position angle about its circular mean. */
+export type Measured = Readonly<Record<Quantity, { readonly value: number; readonly deviation: number }>>;
+
+export interface Trial {
+  /** The truth at the basis's resolution; null where it has no ring. */
+  readonly truth: Readonly<Record<Quantity, number>> | null;
+  readonly measured: Measured | null;
+  readonly ringFraction: number;
+  /** By quantity, of every draw with a ring. */
+  readonly draws: Readonly<Record<Quantity, readonly number[]>>;
+  readonly result: FitResult;
+}
+
+export interface TrialOptions {
+  readonly seed: number;
+  readonly gainDeviations: Float64Array;
+  /** Draws of the Gaussian posterior. */
+  readonly draws: number;
+  readonly noiseFactor?: number;
+  readonly hints?: FitHints;
+}
+
+/** @param source  of the flux that is wanted, Jy; its centroid at the origin */
+export function runTrial(
+  template: Visibilities,
+  basis: Basis,
+  source: Model,
+  settings: FitSettings,
+  { seed, gainDeviations, draws: count, noiseFactor = 1, hints }: TrialOptions,
+): Trial {
+  const data = observe(template, source, { gainDeviations, seed, noiseFactor });
+  const result = runFit(data, basis, settings, () => {}, hints);
+  const posterior = drawPosterior(result.problem.model, result.best.x, result.best.curvature, count, seed);
+  const { rings } = measureDraws(basis, posterior);
+  const draws = Object.fromEntries(
+    QUANTITIES.map((name) => [name, rings.flatMap((ring) => quantityOf(ring, name) ?? [])]),
+  ) as unknown as Trial['draws'];
+  const truth = measureRing(imageAtResolution(source, basis));
+  return {
+    truth: truth.ring ? truthOf(truth) : null,
+    measured: rings.length >= 2 ? (summary(draws) as Measured) : null,
+    ringFraction: rings.length / count,
+    draws,
+    result,
+  };
+}
+
+/** A model as the basis would show it: on its grid, at its resolution. */
+export function imageAtResolution(source: Model, basis: Basis): SkyImage {
+  const { nx, ny, pixelRadians, resolutionRadians } = basis;
+  const pixels = new Float64Array(nx * ny);
+  const blur = Math.sqrt(source.blur * source.blur + resolutionRadians * resolutionRadians);
+  makeDrawing({ nx, ny, pixelRadians })(pixels, { ...source, blur });
+  return { nx, ny, pixelRadians, pixels };
+}
+
+/** Null where a measurement lacks it. */
+export function quantityOf(ring: RingMeasurement, name: Quantity): number | null {
+  switch (name) {
+    case 'diameter':
+      return ring.diameter * UAS_PER_RADIAN;
+    case 'width':
+      return ring.width === null ? null : ring.width * UAS_PER_RADIAN;
+    case 'asymmetry':
+      return ring.asymmetry;
+    case 'position-angle':
+      return ring.positionAngleDegrees;
+    case 'central-depression':
+      return ring.centralDepression;
+  }
+}
+
+function truthOf(ring: RingMeasurement): Record<Quantity, number> {
+  return Object.fromEntries(QUANTITIES.map((name) => [name, quantityOf(ring, name) ?? 0])) as Record<
+    Quantity,
+    number
+  >;
+}
+
+function summary(draws: Trial['draws']) {
+  return Object.fromEntries(
+    QUANTITIES.map((name) => {
+      const values = draws[name];
+      if (name !== 'position-angle') {
+        const [low, high] = quantiles(values, [0.16, 0.84]);
+        return [name, { value: median(values), deviation: (high - low) / 2 }];
+      }
+      const { degrees, deviationDegrees } = circularMean(values);
+      return [name, { value: degrees, deviation: deviationDegrees }];
+    }),
+  );
+}

@@ -1,0 +1,121 @@
+/** The method's bias: recovered where it is known, and taken out of a measurement. */
+
+import { expect, test } from 'vitest';
+import { memorySink, sourceOf } from '../../../stages/bytes.ts';
+import { compute as computeFit } from '../../../stages/fit/compute.ts';
+import { fit } from '../../../stages/fit/fit.ts';
+import { writeBasis } from '../../../stages/formats/basis.ts';
+import { readJson } from '../../../stages/formats/json.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { biasOf, correctionAt } from '../../../stages/imaging/method-bias.ts';
+import { observe as observeAgain } from '../../../stages/imaging/synthetic.ts';
+import { QUANTITIES, type Trial } from '../../../stages/imaging/trial.ts';
+import { compute } from '../../../stages/injection/compute.ts';
+import { ellipticalGaussian } from '../../../stages/numerics/named-models.ts';
+import { randomStream } from '../../../stages/numerics/random.ts';
+import { mean, standardDeviation } from '../../../stages/numerics/statistics.ts';
+import { defaultParameters } from '../default-parameters.ts';
+import { crescentImage, makeLibraryBasis, observe, withFlux } from '../fit/synthetic-data.ts';
+import { UAS } from '../numerics/ring-images.ts';
+
+/** Trials whose measurements are off by a known line, with errors of the posterior and a scatter beyond. */
+function knownTrials(count: number, offset: number, slope: number, scatter: number, error: number): Trial[] {
+  const random = randomStream(4, 'trials');
+  return Array.from({ length: count }, () => {
+    const value = random.between(35, 45);
+    const off = offset + slope * (value - 40) + scatter * random.normal() + error * random.normal();
+    const all = <T>(make: (name: string) => T) =>
+      Object.fromEntries(QUANTITIES.map((name) => [name, make(name)]));
+    return {
+      truth: all(() => value - off),
+      measured: all(() => ({ value, deviation: error })),
+      ringFraction: 1,
+    } as unknown as Trial;
+  });
+}
+
+test('finds offset, slope and scatter that were put in', () => {
+  const bias = biasOf(knownTrials(400, -0.8, 0.05, 0.3, 0.4));
+  const { offset, slope, scatter, centre, covariance } = (bias as NonNullable<typeof bias>).diameter;
+  const atForty = offset + slope * (40 - centre);
+  expect(Math.abs(atForty + 0.8)).toBeLessThan(5 * Math.sqrt(covariance[0]));
+  expect(Math.abs(slope - 0.05)).toBeLessThan(5 * Math.sqrt(covariance[1]));
+  // The scatter of 400 is known to 1/sqrt(800) of the whole, 0.5: 0.018 in quadrature.
+  expect(Math.abs(scatter - 0.3)).toBeLessThan(0.09);
+  // Standard error of the mean of 400 errors of 0.5.
+  expect(Math.sqrt(covariance[0])).toBeCloseTo(0.5 / 20, 2);
+});
+
+test('claims no scatter where the posterior explains all, and knows less of few trials', () => {
+  const many = biasOf(knownTrials(200, 1, 0, 0, 0.5));
+  expect(many?.diameter.scatter).toBeLessThan(0.2);
+  const few = biasOf(knownTrials(6, 1, 0, 0.3, 0.5));
+  expect(correctionAt((few as NonNullable<typeof few>).diameter, 40).deviation).toBeGreaterThan(
+    2 * correctionAt((many as NonNullable<typeof many>).diameter, 40).deviation,
+  );
+  expect(biasOf(knownTrials(3, 1, 0, 0, 0.5))).toBeNull();
+});
+
+// Identity: noise of the stated size, a correlation of 1 with what was sent.
+test('observes a source again with its noise, gains and station phases', () => {
+  const template = observe(withFlux(crescentImage({ diameter: 44, blur: 14, b: 0.2, angle: 70 }), 0.8), {
+    scans: 10,
+  });
+  const source = ellipticalGaussian(10 * UAS);
+  const still = observeAgain(template, source, { gainDeviations: new Float64Array(8), seed: 3 });
+  const amplitude = (k: number) => Math.hypot(still.re[k], still.im[k]);
+  const expected = (k: number) =>
+    Math.exp((-(Math.PI * Math.PI) / (4 * Math.LN2)) * (10 * UAS) ** 2 * (still.u[k] ** 2 + still.v[k] ** 2));
+  const off = Array.from({ length: still.count }, (_, k) => (amplitude(k) - expected(k)) / still.sigma[k]);
+  expect(Math.abs(standardDeviation(off) - 1)).toBeLessThan(4 / Math.sqrt(2 * still.count));
+  const loud = observeAgain(template, source, { gainDeviations: new Float64Array(8).fill(0.1), seed: 3 });
+  const ratios = Array.from({ length: loud.count }, (_, k) =>
+    Math.log(Math.hypot(loud.re[k], loud.im[k]) / expected(k)),
+  );
+  // Two gains of 10 % on every baseline.
+  expect(Math.abs(standardDeviation(ratios) - 0.1 * Math.SQRT2)).toBeLessThan(0.03);
+  expect(Math.abs(mean(ratios))).toBeLessThan(0.05);
+});
+
+test('injects about the ring of a fit, and writes the same bytes twice', async () => {
+  const basis = makeLibraryBasis(30, 160);
+  const data = observe(withFlux(crescentImage({ diameter: 50, blur: 9, b: 0.2, angle: 70 }), 0.8), {
+    scans: 14,
+    gains: 0.05,
+    stationPhases: true,
+    noise: 0.005,
+  });
+  const [visibilities, basisBytes] = [memorySink(), memorySink()];
+  writeVisibilities(visibilities, data);
+  writeBasis(basisBytes, basis);
+  const quiet = { note: () => {}, progress: () => {} };
+  const inputs = { visibilities: [sourceOf(visibilities.bytes())], basis: [sourceOf(basisBytes.bytes())] };
+  const names = ['image', 'samples', 'residuals', 'report', 'models', 'flux'];
+  const outputs = Object.fromEntries(names.map((name) => [name, memorySink()]));
+  const parameters = { ...defaultParameters(fit), components: 30, posterior: 'gaussian' };
+  await computeFit({ inputs, parameters, outputs, ...quiet });
+  const once = async () => {
+    const bias = memorySink();
+    await compute({
+      inputs: {
+        ...inputs,
+        image: [sourceOf(outputs.image.bytes())],
+        report: [sourceOf(outputs.report.bytes())],
+      },
+      parameters: { count: 6, starts: 1, seed: 1 },
+      outputs: { bias },
+      ...quiet,
+    });
+    return bias.bytes();
+  };
+  const bytes = await once();
+  expect(Buffer.from(await once()).equals(Buffer.from(bytes))).toBe(true);
+  const found = readJson(sourceOf(bytes)) as {
+    injected: number;
+    used: number;
+    bias: Record<string, { offset: number }>;
+  };
+  expect(found.injected).toBe(6);
+  expect(found.used).toBeGreaterThanOrEqual(4);
+  expect(Math.abs(found.bias.diameter?.offset ?? 99)).toBeLessThan(4);
+});
