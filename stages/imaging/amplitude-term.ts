@@ -36,14 +36,8 @@ export interface ExplicitGains {
   readonly count: number;
   /** From what `gains` gives. */
   whitened(gains: readonly ScanGains[]): Float64Array;
-  /** The cost of the data; adds its derivatives by the visibilities, and by h from a place on. */
-  adjoint(
-    at: ModelVisibilities,
-    h: Float64Array,
-    from: number,
-    out: ModelVisibilities,
-    outGains: Float64Array,
-  ): number;
+  /** The cost of the data; adds its derivatives by the visibilities and by h. */
+  adjoint(at: ModelVisibilities, h: Float64Array, out: ModelVisibilities, outGains: Float64Array): number;
   /** Residuals' derivatives by ln|V| of their row and by the gains of its two stations, for the curvature. */
   visit(
     at: ModelVisibilities,
@@ -161,57 +155,67 @@ function explicitGains(
   deviations: Float64Array,
   scans: readonly Scan[],
 ): ExplicitGains {
-  const starts: number[] = [];
-  let count = 0;
-  for (const { stations } of scans) {
-    starts.push(count);
-    count += stations.length;
-  }
+  const links = linksOf(scans, deviations);
+  const { count, row, first, second, scales } = links;
   const { sigma } = data;
+  const factors = new Float64Array(count);
   return {
     count,
-    whitened(gains) {
-      const out: number[] = [];
-      for (const { stations, logGains } of gains) {
-        for (let i = 0; i < stations.length; i++) out.push(logGains[i] / deviations[stations[i]]);
-      }
-      return Float64Array.from(out);
-    },
-    adjoint(at, h, from, out, outGains) {
+    whitened: (gains) =>
+      Float64Array.from(
+        gains.flatMap(({ stations, logGains }) =>
+          stations.map((station, i) => logGains[i] / deviations[station]),
+        ),
+      ),
+    adjoint(at, h, out, outGains) {
+      for (let i = 0; i < count; i++) factors[i] = exp(scales[i] * h[i]);
       let cost = 0;
-      for (let s = 0; s < scans.length; s++) {
-        const { rows, stations, first, second } = scans[s];
-        for (let m = 0; m < rows.length; m++) {
-          const r = rows[m];
-          const i = from + starts[s] + first[m];
-          const j = from + starts[s] + second[m];
-          const [a, b] = [deviations[stations[first[m]]], deviations[stations[second[m]]]];
-          const size = Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r];
-          const nu = size * exp(a * h[i] + b * h[j]);
-          const [mean, slope] = riceMean(nu);
-          const residual = mean - amplitudes[r] / sigma[r];
-          const pull = residual * nu * slope;
-          cost += (residual * residual) / 2;
-          outGains[i] += a * pull;
-          outGains[j] += b * pull;
-          addAmplitudeSlope(out, at, r, pull);
-        }
+      for (let m = 0; m < row.length; m++) {
+        const r = row[m];
+        const i = first[m];
+        const j = second[m];
+        const size = Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r];
+        const nu = size * factors[i] * factors[j];
+        const [mean, slope] = riceMean(nu);
+        const residual = mean - amplitudes[r] / sigma[r];
+        const pull = residual * nu * slope;
+        cost += (residual * residual) / 2;
+        outGains[i] += scales[i] * pull;
+        outGains[j] += scales[j] * pull;
+        addAmplitudeSlope(out, at, r, pull);
       }
       return cost;
     },
     visit(at, h, use) {
-      for (let s = 0; s < scans.length; s++) {
-        const { rows, stations, first, second } = scans[s];
-        for (let m = 0; m < rows.length; m++) {
-          const r = rows[m];
-          const [i, j] = [starts[s] + first[m], starts[s] + second[m]];
-          const [a, b] = [deviations[stations[first[m]]], deviations[stations[second[m]]]];
-          const size = Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r];
-          const nu = size * exp(a * h[i] + b * h[j]);
-          use(r, nu * riceMean(nu)[1], i, j, [a, b]);
-        }
+      for (let m = 0; m < row.length; m++) {
+        const [r, i, j] = [row[m], first[m], second[m]];
+        const size = Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r];
+        const nu = size * exp(scales[i] * h[i] + scales[j] * h[j]);
+        use(r, nu * riceMean(nu)[1], i, j, [scales[i], scales[j]]);
       }
     },
+  };
+}
+
+/** Rows with the numbers of their two gains; and of each gain the standard deviation of its prior. */
+function linksOf(scans: readonly Scan[], deviations: Float64Array) {
+  const row: number[] = [];
+  const first: number[] = [];
+  const second: number[] = [];
+  const scales: number[] = [];
+  for (const scan of scans) {
+    const start = scales.length;
+    row.push(...scan.rows);
+    for (const place of scan.first) first.push(start + place);
+    for (const place of scan.second) second.push(start + place);
+    for (const station of scan.stations) scales.push(deviations[station]);
+  }
+  return {
+    count: scales.length,
+    row: Int32Array.from(row),
+    first: Int32Array.from(first),
+    second: Int32Array.from(second),
+    scales: Float64Array.from(scales),
   };
 }
 

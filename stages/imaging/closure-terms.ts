@@ -11,8 +11,9 @@ import {
   wrapPhase,
 } from '../numerics/closures.ts';
 import { atan2, ln } from '../numerics/elementary.ts';
-import { cholesky, solveLower, solveLowerTransposed } from '../numerics/linear.ts';
+import { applyInverse, applyInverseTransposed, cholesky, profileOf, solveLower } from '../numerics/linear.ts';
 import { InternalError } from '../problem.ts';
+import type { ModelVisibilities } from './linear-model.ts';
 import { addResidual, logDerivatives, type Term } from './term.ts';
 
 /** The closures of one kind in one scan, ready for use. */
@@ -25,6 +26,12 @@ interface Block {
   readonly rows: readonly number[];
   /** L^-1 A, closures by rows: turns derivatives of phases or log amplitudes into those of whitened residuals. */
   readonly whitening: Float64Array;
+  /** Of L, for solving in place. */
+  readonly profile: Int32Array;
+  /** Visibilities to a closure; their places in `rows` and their signs, closure by closure. */
+  readonly arity: number;
+  readonly places: Int32Array;
+  readonly signs: Float64Array;
 }
 
 export function makeClosurePhaseTerm(data: Visibilities, sets: readonly ClosureSet[]): Term {
@@ -68,7 +75,22 @@ function makeBlock(
       whitening[t * rows.length + m] = value;
     });
   });
-  return { scan, closures, observed: Float64Array.from(closures, observe), L, rows, whitening };
+  const place = new Map(rows.map((row, m) => [row, m]));
+  return {
+    scan,
+    closures,
+    observed: Float64Array.from(closures, observe),
+    L,
+    rows,
+    whitening,
+    profile: profileOf(L, n),
+    arity: closures[0].rows.length,
+    places: Int32Array.from(
+      closures.flatMap((closure) => closure.rows),
+      (row) => place.get(row) ?? -1,
+    ),
+    signs: Float64Array.from(closures.flatMap((closure) => closure.signs)),
+  };
 }
 
 function closureTerm(
@@ -119,42 +141,8 @@ function closureTerm(
       }
       return chiSquare(at) / 2;
     },
-    adjoint(at, out) {
-      let cost = 0;
-      const values = new Float64Array(at.re.length);
-      const sums = new Float64Array(at.re.length);
-      for (const block of blocks) {
-        // Each visibility is in several closures: its angle, or logarithm, is taken once.
-        for (const row of block.rows) {
-          const [re, im] = [at.re[row], at.im[row]];
-          values[row] = part === 'phase' ? atan2(im, re) : ln(re * re + im * im) / 2;
-        }
-        const differences = new Float64Array(block.closures.length);
-        for (let t = 0; t < differences.length; t++) {
-          const { rows, signs } = block.closures[t];
-          let sum = -block.observed[t];
-          for (let k = 0; k < rows.length; k++) sum += signs[k] * values[rows[k]];
-          differences[t] = wrap(sum);
-        }
-        const white = solveLower(block.L, differences);
-        for (const value of white) cost += (value * value) / 2;
-        const pull = solveLowerTransposed(block.L, white);
-        for (let t = 0; t < pull.length; t++) {
-          const { rows, signs } = block.closures[t];
-          for (let k = 0; k < rows.length; k++) sums[rows[k]] += signs[k] * pull[t];
-        }
-        for (const row of block.rows) {
-          const [re, im] = [at.re[row], at.im[row]];
-          const square = re * re + im * im;
-          const scale = square > 0 ? sums[row] / square : 0;
-          sums[row] = 0;
-          // d arg V = (re d im - im d re) / |V|^2, d ln|V| = (re d re + im d im) / |V|^2.
-          out.re[row] += part === 'phase' ? -scale * im : scale * re;
-          out.im[row] += part === 'phase' ? scale * re : scale * im;
-        }
-      }
-      return cost;
-    },
+    adjoint: (at, out) =>
+      blocks.reduce((cost, block) => cost + addBlockSlope(block, at, out, wrap, part === 'phase'), 0),
     only: (scans) =>
       closureTerm(
         name,
@@ -164,6 +152,49 @@ function closureTerm(
         part,
       ),
   };
+}
+
+/** Adds a block's derivatives by its visibilities; returns its cost. Each visibility is in several closures: its angle, or
+ *  logarithm, is taken once. */
+function addBlockSlope(
+  block: Block,
+  at: ModelVisibilities,
+  out: ModelVisibilities,
+  wrap: (value: number) => number,
+  isPhase: boolean,
+): number {
+  const { rows, arity, places, signs, observed, L, profile } = block;
+  const values = new Float64Array(rows.length);
+  for (let m = 0; m < rows.length; m++) {
+    const re = at.re[rows[m]];
+    const im = at.im[rows[m]];
+    values[m] = isPhase ? atan2(im, re) : ln(re * re + im * im) / 2;
+  }
+  const pull = new Float64Array(observed.length);
+  for (let t = 0; t < pull.length; t++) {
+    let sum = -observed[t];
+    for (let k = t * arity; k < (t + 1) * arity; k++) sum += signs[k] * values[places[k]];
+    pull[t] = wrap(sum);
+  }
+  applyInverse(L, pull, profile);
+  let cost = 0;
+  for (let t = 0; t < pull.length; t++) cost += (pull[t] * pull[t]) / 2;
+  applyInverseTransposed(L, pull, profile);
+  values.fill(0);
+  for (let t = 0; t < pull.length; t++) {
+    for (let k = t * arity; k < (t + 1) * arity; k++) values[places[k]] += signs[k] * pull[t];
+  }
+  for (let m = 0; m < rows.length; m++) {
+    const row = rows[m];
+    const re = at.re[row];
+    const im = at.im[row];
+    const square = re * re + im * im;
+    const scale = square > 0 ? values[m] / square : 0;
+    // d arg V = (re d im - im d re) / |V|^2, d ln|V| = (re d re + im d im) / |V|^2.
+    out.re[row] += isPhase ? -scale * im : scale * re;
+    out.im[row] += isPhase ? scale * re : scale * im;
+  }
+  return cost;
 }
 
 /** J[t] += whitening[t, m] * slope for every closure t. */

@@ -120,20 +120,58 @@ export function predict(model: LinearModel, x: Float64Array): ModelVisibilities 
 
 /** Returns the visibilities of the image with its centroid at the phase centre. @param x  flux and coefficients */
 export function predictUnmoved(model: LinearModel, x: Float64Array): ModelVisibilities {
-  const re = Float64Array.from(model.offsetRe);
-  const im = Float64Array.from(model.offsetIm);
-  for (let r = 0; r < model.count; r++) {
-    const start = r * model.columns;
-    let a = re[r];
-    let b = im[r];
-    for (let k = 0; k < x.length; k++) {
-      a += model.re[start + k] * x[k];
-      b += model.im[start + k] * x[k];
+  const re = new Float64Array(model.count);
+  const im = new Float64Array(model.count);
+  writePrediction(model, x, { re, im });
+  return { re, im };
+}
+
+/** The same into arrays at hand. Two rows at a time, so that their sums run side by side. */
+export function writePrediction(model: LinearModel, x: Float64Array, { re, im }: ModelVisibilities): void {
+  const { count, columns, re: D, im: E, offsetRe, offsetIm } = model;
+  const n = x.length;
+  for (let r = 0; r < count; r += 2) {
+    const next = r + 1 < count ? r + 1 : r;
+    const p = r * columns;
+    const q = next * columns;
+    let a = offsetRe[r];
+    let b = offsetIm[r];
+    let c = offsetRe[next];
+    let d = offsetIm[next];
+    for (let k = 0; k < n; k++) {
+      const value = x[k];
+      a += D[p + k] * value;
+      b += E[p + k] * value;
+      c += D[q + k] * value;
+      d += E[q + k] * value;
     }
     re[r] = a;
     im[r] = b;
+    re[next] = c;
+    im[next] = d;
   }
-  return { re, im };
+}
+
+/** slope += D^T pull, over the first columns. Two rows at a time. */
+export function addPull(
+  slope: Float64Array,
+  { columns: stride, re: D, im: E }: Slopes,
+  { re, im }: ModelVisibilities,
+  columns: number,
+): void {
+  const count = re.length;
+  for (let r = 0; r < count; r += 2) {
+    const isPair = r + 1 < count;
+    const p = r * stride;
+    const q = isPair ? p + stride : p;
+    const a = re[r];
+    const b = im[r];
+    const c = isPair ? re[r + 1] : 0;
+    const d = isPair ? im[r + 1] : 0;
+    for (let k = 0; k < columns; k++) {
+      slope[k] += a * D[p + k] + b * E[p + k] + (c * D[q + k] + d * E[q + k]);
+    }
+  }
 }
 
 /** Number of components that parameters hold. */

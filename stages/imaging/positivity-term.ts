@@ -40,38 +40,61 @@ export function makePositivityTerm(basis: Basis, model: LinearModel, weight: num
       rows[p * columns + k] = root * model.scales[k] * basis.components[k - 1][q];
     }
   }
-  const pixel = (x: Float64Array, p: number) => {
-    let sum = offset[p];
-    const start = p * columns;
-    for (let k = 0; k < x.length; k++) sum += rows[start + k] * x[k];
-    return sum;
-  };
-  const visit = (x: Float64Array, out: Expansion | null) => {
+  const values = new Float64Array(pixelCount);
+  const visit = (x: Float64Array, use: (value: number, start: number) => void) => {
+    brightness(values, rows, offset, columns, x);
     let cost = 0;
     for (let p = 0; p < pixelCount; p++) {
-      const value = pixel(x, p);
-      if (value < 0) {
-        cost += (value * value) / 2;
-        if (out) addResidual(out, value, rows, p * columns);
-      }
+      const value = values[p];
+      if (!(value < 0)) continue;
+      cost += (value * value) / 2;
+      use(value, p * columns);
     }
     return cost;
   };
   return {
-    cost: (x) => visit(x, null),
-    expand: visit,
-    adjoint(x, gradient) {
-      let cost = 0;
-      for (let p = 0; p < pixelCount; p++) {
-        const value = pixel(x, p);
-        if (!(value < 0)) continue;
-        cost += (value * value) / 2;
-        const start = p * columns;
+    cost: (x) => visit(x, () => {}),
+    expand: (x, out) => visit(x, (value, start) => addResidual(out, value, rows, start)),
+    adjoint: (x, gradient) =>
+      visit(x, (value, start) => {
         for (let k = 0; k < x.length; k++) gradient[k] += value * rows[start + k];
-      }
-      return cost;
-    },
+      }),
   };
+}
+
+/** out[p] = offset[p] + rows[p] . x. Four pixels at a time, so that their sums run side by side. */
+function brightness(
+  out: Float64Array,
+  rows: Float64Array,
+  offset: Float64Array,
+  columns: number,
+  x: Float64Array,
+): void {
+  const [n, count] = [x.length, out.length];
+  let p = 0;
+  for (; p + 3 < count; p += 4) {
+    const i = p * columns;
+    let a = offset[p];
+    let b = offset[p + 1];
+    let c = offset[p + 2];
+    let d = offset[p + 3];
+    for (let k = 0; k < n; k++) {
+      const value = x[k];
+      a += rows[i + k] * value;
+      b += rows[i + columns + k] * value;
+      c += rows[i + 2 * columns + k] * value;
+      d += rows[i + 3 * columns + k] * value;
+    }
+    out[p] = a;
+    out[p + 1] = b;
+    out[p + 2] = c;
+    out[p + 3] = d;
+  }
+  for (; p < count; p++) {
+    let sum = offset[p];
+    for (let k = 0; k < n; k++) sum += rows[p * columns + k] * x[k];
+    out[p] = sum;
+  }
 }
 
 /** Pixels to half a resolution element, at least 1. */

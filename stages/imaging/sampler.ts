@@ -6,14 +6,21 @@
 import { type ChainDiagnostics, diagnose } from '../numerics/chain-diagnostics.ts';
 import type { Minimum } from '../numerics/gauss-newton.ts';
 import { type HamiltonianRun, sampleHamiltonian, type Target } from '../numerics/hamiltonian.ts';
-import { cholesky, solveLower, solveLowerTransposed } from '../numerics/linear.ts';
+import { applyInverse, applyInverseTransposed, cholesky, profileOf } from '../numerics/linear.ts';
 import type { RandomStream } from '../numerics/random.ts';
 import { InternalError } from '../problem.ts';
-import type { ScanGains } from './amplitude-term.ts';
+import type { ExplicitGains, ScanGains } from './amplitude-term.ts';
 import { linearPart, type Place, placeAt, slopesAt } from './centroid.ts';
 import { amplitudeTermOf, type FitProblem } from './fit-problem.ts';
 import { jointCurvature } from './joint-curvature.ts';
-import { componentsOf, fluxAndCoefficients, type LinearModel, predict, type Slopes } from './linear-model.ts';
+import {
+  addPull,
+  componentsOf,
+  fluxAndCoefficients,
+  type LinearModel,
+  predict,
+  writePrediction,
+} from './linear-model.ts';
 import type { PlacedPosterior } from './posterior-draws.ts';
 
 export interface SamplerSettings {
@@ -122,57 +129,73 @@ function makeDensity(problem: FitProblem, best: Minimum, gains: readonly ScanGai
   const explicit = amplitudes?.explicit() ?? null;
   const others = problem.terms.filter((term) => term !== amplitudes);
   const columns = best.x.length;
-  const centre = Float64Array.of(...best.x, ...(explicit?.whitened(gains) ?? []));
-  const n = centre.length;
-  const L = cholesky(jointCurvature(problem, best.x, gains), n);
-  if (!L) throw new InternalError('samplePosterior', 'the curvature is not positive definite');
-  const position = (y: Float64Array) => {
-    const step = solveLowerTransposed(L, y);
-    for (let k = 0; k < n; k++) step[k] += centre[k];
-    return step;
-  };
-  const pull = { re: new Float64Array(model.count), im: new Float64Array(model.count) };
+  const white = whiten(problem, best, gains, explicit);
+  const n = white.dimension;
+  const z = new Float64Array(n);
   const slope = new Float64Array(n);
-  return {
-    position,
-    target: {
-      dimension: n,
-      evaluate(y, gradient) {
-        const z = position(y);
-        const x = z.subarray(0, columns);
-        const at = predict(model, x);
-        pull.re.fill(0);
-        pull.im.fill(0);
-        let energy = 0;
-        for (let k = 0; k < n; k++) {
-          slope[k] = z[k];
-          energy += (z[k] * z[k]) / 2;
-        }
-        for (const term of others) energy += term.adjoint(at, pull);
-        if (explicit) energy += explicit.adjoint(at, z.subarray(columns), 0, pull, slope.subarray(columns));
-        if (positivity) {
-          const linear = linearPart(model, x);
-          energy += positivity.adjoint(linear, slope.subarray(0, linear.length));
-        }
-        addPull(slope, slopesAt(model, x, at), pull, columns);
-        gradient.set(solveLower(L, slope));
-        return energy;
-      },
-    },
+  const [x, h] = [z.subarray(0, columns), z.subarray(columns)];
+  const [slopeX, slopeH] = [slope.subarray(0, columns), slope.subarray(columns)];
+  const [linear, slopeLinear] = [linearPart(model, x), linearPart(model, slopeX)];
+  const room = () => ({ re: new Float64Array(model.count), im: new Float64Array(model.count) });
+  const [own, pull] = [room(), room()];
+  const evaluate = (y: Float64Array, gradient: Float64Array) => {
+    white.position(y, z);
+    const at = model.ramp ? predict(model, x) : own;
+    if (!model.ramp) writePrediction(model, x, own);
+    pull.re.fill(0);
+    pull.im.fill(0);
+    let energy = 0;
+    for (let k = 0; k < n; k++) energy += (z[k] * z[k]) / 2;
+    slope.set(z);
+    for (const term of others) energy += term.adjoint(at, pull);
+    if (explicit) energy += explicit.adjoint(at, h, pull, slopeH);
+    if (positivity) energy += positivity.adjoint(linear, slopeLinear);
+    addPull(slopeX, slopesAt(model, x, at), pull, columns);
+    white.gradient(slope, gradient);
+    return energy;
   };
+  const position = (y: Float64Array) => {
+    const out = new Float64Array(n);
+    white.position(y, out);
+    return out;
+  };
+  return { position, target: { dimension: n, evaluate } };
 }
 
-/** slope += D^T pull. */
-function addPull(
-  slope: Float64Array,
-  { columns: stride, re, im }: Slopes,
-  pull: { readonly re: Float64Array; readonly im: Float64Array },
-  columns: number,
-): void {
-  for (let r = 0; r < pull.re.length; r++) {
-    const [a, b, start] = [pull.re[r], pull.im[r], r * stride];
-    for (let k = 0; k < columns; k++) slope[k] += a * re[start + k] + b * im[start + k];
-  }
+/** Coordinates y with (h, x) = optimum + L^-T y. The gains stand first: those of different scans meet only through x, so
+ *  that hardly any of their part of L is other than 0. */
+function whiten(
+  problem: FitProblem,
+  best: Minimum,
+  gains: readonly ScanGains[],
+  explicit: ExplicitGains | null,
+) {
+  const columns = best.x.length;
+  const centre = Float64Array.of(...best.x, ...(explicit?.whitened(gains) ?? []));
+  const n = centre.length;
+  const count = n - columns;
+  const H = jointCurvature(problem, best.x, gains);
+  const place = (k: number) => (k < count ? columns + k : k - count);
+  const turned = Float64Array.from(H, (_, k) => H[place(Math.floor(k / n)) * n + place(k % n)]);
+  const L = cholesky(turned, n);
+  if (!L) throw new InternalError('samplePosterior', 'the curvature is not positive definite');
+  const profile = profileOf(L, n);
+  const scratch = new Float64Array(n);
+  return {
+    dimension: n,
+    position(y: Float64Array, z: Float64Array): void {
+      scratch.set(y);
+      applyInverseTransposed(L, scratch, profile);
+      z.set(scratch.subarray(count), 0);
+      z.set(scratch.subarray(0, count), columns);
+      for (let k = 0; k < n; k++) z[k] += centre[k];
+    },
+    gradient(slope: Float64Array, out: Float64Array): void {
+      out.set(slope.subarray(columns), 0);
+      out.set(slope.subarray(0, columns), count);
+      applyInverse(L, out, profile);
+    },
+  };
 }
 
 /** Draws spread evenly over those of all chains, chain by chain. */

@@ -46,6 +46,37 @@ export function solveLowerTransposed(L: Float64Array, b: Float64Array): Float64A
   return x;
 }
 
+/** For each row of L the column of its first number that is not 0: what stands before it is skipped below. */
+export function profileOf(L: Float64Array, n: number): Int32Array {
+  return Int32Array.from({ length: n }, (_, i) => {
+    let k = 0;
+    while (k < i && L[i * n + k] === 0) k++;
+    return k;
+  });
+}
+
+/** x := L^-1 x. @param profile  of `profileOf`. Cost: two for each number of the profile */
+export function applyInverse(L: Float64Array, x: Float64Array, profile: Int32Array): void {
+  const n = x.length;
+  for (let i = 0; i < n; i++) {
+    const row = i * n;
+    let sum = x[i];
+    for (let k = profile[i]; k < i; k++) sum -= L[row + k] * x[k];
+    x[i] = sum / L[row + i];
+  }
+}
+
+/** x := L^-T x, row after row of L. */
+export function applyInverseTransposed(L: Float64Array, x: Float64Array, profile: Int32Array): void {
+  const n = x.length;
+  for (let i = n - 1; i >= 0; i--) {
+    const row = i * n;
+    const value = x[i] / L[row + i];
+    x[i] = value;
+    for (let k = profile[i]; k < i; k++) x[k] -= L[row + k] * value;
+  }
+}
+
 /** Returns x with L L^T x = b. Cost 2 n^2. */
 export function solveCholesky(L: Float64Array, b: Float64Array): Float64Array {
   return solveLowerTransposed(L, solveLower(L, b));

@@ -81,11 +81,11 @@ test('gives the slopes of amplitudes by explicit gains, and of positivity, as di
   const h = Float64Array.from({ length: explicit.count }, (_, k) => ((k % 5) - 2) / 3);
   const scratch = () => ({ re: new Float64Array(data.count), im: new Float64Array(data.count) });
   const slopes = new Float64Array(h.length);
-  explicit.adjoint(at, h, 0, scratch(), slopes);
+  explicit.adjoint(at, h, scratch(), slopes);
   const costAt = (k: number, step: number) => {
     const moved = Float64Array.from(h);
     moved[k] += step;
-    return explicit.adjoint(at, moved, 0, scratch(), new Float64Array(h.length));
+    return explicit.adjoint(at, moved, scratch(), new Float64Array(h.length));
   };
   for (let k = 0; k < h.length; k += 5) {
     const slope = (costAt(k, 1e-5) - costAt(k, -1e-5)) / 2e-5;

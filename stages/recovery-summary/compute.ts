@@ -1,0 +1,171 @@
+/** The computation of `recovery-summary`. */
+
+import { z } from 'zod';
+import type { ByteSource } from '../bytes.ts';
+import type { NumberValue } from '../data.ts';
+import { readJson, writeJson, writeNumbers } from '../formats/json.ts';
+import type { StageReport, StageTask } from '../kind.ts';
+import { InputProblem } from '../problem.ts';
+import { type FamilySummary, judge, type Suite, summarise } from './summarise.ts';
+
+const quantity = z.object({
+  truth: z.number(),
+  measured: z.number(),
+  corrected: z.number(),
+  low: z.number(),
+  high: z.number(),
+  low95: z.number(),
+  high95: z.number(),
+  rank: z.number(),
+});
+const schema = z.object({
+  noise: z.number(),
+  components: z.number(),
+  injected: z.number(),
+  trials: z.array(
+    z.object({
+      family: z.string(),
+      isRing: z.boolean(),
+      isFound: z.boolean(),
+      hasTruth: z.boolean(),
+      quantities: z
+        .object({
+          diameter: quantity,
+          width: quantity,
+          asymmetry: quantity,
+          'position-angle': quantity,
+          'central-depression': quantity,
+        })
+        .nullable(),
+    }),
+  ),
+  pulls: z.array(
+    z.object({
+      family: z.string(),
+      truth: z.number().nullable(),
+      withRings: z.number().nullable(),
+      withoutRings: z.number().nullable(),
+    }),
+  ),
+});
+
+export function compute(task: StageTask): StageReport {
+  const { biasTarget, least } = task.parameters as { biasTarget: number; least: number };
+  const suites: Suite[] = task.inputs.trials.map(readSuite);
+  const summary = summarise(suites);
+  const verdicts = judge(summary, biasTarget, least);
+  const missed = verdicts.filter(({ met }) => met === false);
+  writeNumbers(task.outputs.numbers, { values: valuesOf(summary), remarks: remarksOf(summary, missed) });
+  writeJson(task.outputs.report, { ...summary, verdicts });
+  return { warnings: missed.map(({ target, found }) => `target missed: ${target}; found ${found}`) };
+}
+
+function readSuite(source: ByteSource): Suite {
+  const result = schema.safeParse(readJson(source));
+  if (result.success) return result.data;
+  throw new InputProblem({
+    code: 'wrong-document',
+    place: `${source.name}, ${result.error.issues[0]?.path.join('.') || 'the document'}`,
+    expected: 'the output `trials` of a stage of kind truth-recovery',
+    found: result.error.issues[0]?.message ?? 'something else',
+    advice: 'Refer to the right output.',
+  });
+}
+
+function valuesOf(summary: ReturnType<typeof summarise>): Record<string, NumberValue> {
+  const { all, families, noRing, uniformity, pull, observations } = summary;
+  const plain = (value: number, unit: string, definition: string): NumberValue => ({
+    value,
+    unit,
+    definition,
+  });
+  const values: Record<string, NumberValue> = {
+    observations: plain(observations, '', 'Synthetic observations in the suite.'),
+    'rings-found': proportion(all.found, 'Part of the resolved rings that are called one.'),
+    ...(noRing === null
+      ? {}
+      : {
+          'no-ring-right': proportion(noRing, 'Part of the sources that are no ring and are not called one.'),
+        }),
+    ...familyValues('', all),
+    ...(uniformity === null
+      ? {}
+      : {
+          'rank-probability': plain(
+            uniformity.probability,
+            '',
+            'Probability of ranks of true diameters as uneven as found, were they uniform.',
+          ),
+        }),
+    ...(pull === null
+      ? {}
+      : {
+          'library-pull': {
+            value: pull.mean,
+            unit: 'uas',
+            low: pull.mean - pull.error,
+            high: pull.mean + pull.error,
+            definition: `Mean shift of the uncorrected diameter when the library holds no rings, ${pull.count} observations.`,
+          },
+        }),
+  };
+  for (const family of families) Object.assign(values, familyValues(`-${family.family}`, family));
+  return values;
+}
+
+function familyValues(
+  suffix: string,
+  { quantities, coverage68, coverage95 }: FamilySummary,
+): Record<string, NumberValue> {
+  const { diameter, width, 'position-angle': angle, 'central-depression': depression } = quantities;
+  if (diameter === undefined || width === undefined || angle === undefined || depression === undefined)
+    return {};
+  const bias = ({ bias: value, error }: typeof diameter, unit: string, what: string): NumberValue => ({
+    value,
+    unit,
+    low: value - error,
+    high: value + error,
+    definition: `Mean of corrected less true ${what}, with its standard error.`,
+  });
+  const scatter = ({ scatter: value }: typeof diameter, unit: string, what: string): NumberValue => ({
+    value,
+    unit,
+    definition: `Standard deviation of corrected less true ${what}.`,
+  });
+  return {
+    [`diameter-bias${suffix}`]: bias(diameter, 'uas', 'diameters'),
+    [`diameter-scatter${suffix}`]: scatter(diameter, 'uas', 'diameters'),
+    [`width-bias${suffix}`]: bias(width, 'uas', 'widths'),
+    [`position-angle-bias${suffix}`]: bias(angle, 'deg', 'position angles'),
+    [`depression-bias${suffix}`]: bias(depression, '', 'central depressions'),
+    [`coverage-68${suffix}`]: proportion(
+      coverage68,
+      'Part of the 68 % intervals of the diameter that hold the truth.',
+    ),
+    [`coverage-95${suffix}`]: proportion(
+      coverage95,
+      'Part of the 95 % intervals of the diameter that hold the truth.',
+    ),
+  };
+}
+
+function proportion(
+  found: { value: number; low: number; high: number; of: number },
+  definition: string,
+): NumberValue {
+  const { value, low, high, of } = found;
+  return { value, unit: '', low, high, definition: `${definition} Of ${of}; interval of 68 % by Wilson.` };
+}
+
+function remarksOf(
+  summary: ReturnType<typeof summarise>,
+  missed: readonly { target: string; found: string }[],
+): string[] {
+  return [
+    `${summary.observations} synthetic observations of invented sources, none of which is in the library; ${summary.unresolved} rings that the ` +
+      'resolution does not show as such are left out of bias and coverage.',
+    missed.length === 0
+      ? 'Every target is met.'
+      : `${missed.length} targets are missed: ${missed.map(({ target, found }) => `${target} (${found})`).join('; ')}.`,
+  ];
+}

@@ -1,0 +1,115 @@
+/** The kind `combine`: the mean of sets that agree and of sets that do not. */
+
+import { expect, test } from 'vitest';
+import { memorySink, sourceOf } from '../../../stages/bytes.ts';
+import { combineSets } from '../../../stages/combine/combine-sets.ts';
+import { compute } from '../../../stages/combine/compute.ts';
+import type { NumberValue } from '../../../stages/data.ts';
+import { readNumbers, writeNumbers } from '../../../stages/formats/json.ts';
+import { randomStream } from '../../../stages/numerics/random.ts';
+
+// By hand from DerSimonian and Laird 1986: weights 4 and 4, Q = 2, tau^2 = (2 - 1) / (8 - 32/8) = 1/4, weights 2 and 2.
+// Probability of a chi-square above 2 with one degree of freedom: Abramowitz and Stegun, table 26.7, 0.15730.
+test('combines two sets as by hand', () => {
+  const found = combineSets([
+    { value: 1, deviation: 0.5 },
+    { value: 2, deviation: 0.5 },
+  ]);
+  expect(found).toMatchObject({
+    value: 1.5,
+    deviation: 0.5,
+    between: 0.5,
+    chiSquare: 2,
+    degreesOfFreedom: 1,
+  });
+  expect(found.probability).toBeCloseTo(0.1573, 4);
+  expect(found.sets.map(({ weight }) => weight)).toEqual([0.5, 0.5]);
+});
+
+// By hand: equal sets have no variance between them, and weights 100 and 25.
+test('is the plain weighted mean where sets agree', () => {
+  const found = combineSets([
+    { value: 40, deviation: 0.1 },
+    { value: 40.1, deviation: 0.2 },
+  ]);
+  expect(found.between).toBe(0);
+  expect(found.value).toBeCloseTo(40.02, 10);
+  expect(found.deviation).toBeCloseTo(1 / Math.sqrt(125), 12);
+});
+
+// Identity: sets drawn with a known variance between them; the result covers the truth as often as it says.
+test('covers the truth where the sets scatter', () => {
+  const random = randomStream(8, 'sets');
+  let inside = 0;
+  const trials = 400;
+  for (let k = 0; k < trials; k++) {
+    const sets = Array.from({ length: 12 }, () => {
+      const deviation = random.between(0.2, 0.6);
+      return { value: 42 + 0.5 * random.normal() + deviation * random.normal(), deviation };
+    });
+    const { value, deviation } = combineSets(sets);
+    if (Math.abs(value - 42) < deviation) inside++;
+  }
+  // Binomial: 0.68 of 400 within four standard deviations, less what the estimate of the variance costs (common practice).
+  expect(inside / trials).toBeGreaterThan(0.58);
+  expect(inside / trials).toBeLessThan(0.78);
+});
+
+const number = (value: number, half: number, unit: string): NumberValue => ({
+  value,
+  unit,
+  low: value - half,
+  high: value + half,
+  low95: value - 2 * half,
+  high95: value + 2 * half,
+  definition: 'invented',
+});
+
+function combined(names: readonly string[], documents: readonly Record<string, NumberValue>[]) {
+  const sources = documents.map((values, k) => {
+    const sink = memorySink();
+    writeNumbers(sink, { values, remarks: ['invented data'] });
+    return sourceOf(sink.bytes(), `set ${k + 1}`);
+  });
+  const outputs = { numbers: memorySink(), report: memorySink() };
+  const report = compute({
+    inputs: { numbers: sources },
+    parameters: { names },
+    outputs,
+    note: () => {},
+    progress: () => {},
+  });
+  return { report, numbers: readNumbers(sourceOf(outputs.numbers.bytes())) };
+}
+
+test('takes angles round the circle, and warns of sets that disagree', () => {
+  const { numbers, report } = combined(
+    ['position-angle', 'diameter'],
+    [
+      { 'position-angle': number(355, 8, 'deg'), diameter: number(40, 0.2, 'uas') },
+      { 'position-angle': number(7, 8, 'deg'), diameter: number(42, 0.2, 'uas') },
+    ],
+  );
+  expect(numbers.values['position-angle'].value).toBeCloseTo(1, 6);
+  expect(numbers.values.diameter.value).toBeCloseTo(41, 6);
+  expect((numbers.values.diameter.high ?? 0) - 41).toBeGreaterThan(0.9);
+  expect(numbers.remarks).toEqual(['invented data']);
+  expect(report.warnings).toEqual([
+    expect.stringMatching(/^diameter: the sets disagree beyond their errors/),
+  ]);
+});
+
+test('refuses what cannot be combined', () => {
+  const one = { diameter: number(40, 1, 'uas') };
+  expect(() => combined(['diameter'], [one])).toThrow('two documents or more');
+  expect(() => combined(['width'], [one, one])).toThrow(
+    'set 1, width: cannot-combine: expected a number of that name, got diameter',
+  );
+  expect(() => combined(['diameter'], [one, { diameter: number(40, 1, 'mas') }])).toThrow(
+    'expected the unit uas, as in set 1, got mas',
+  );
+  const { low: _, ...bare } = number(40, 1, 'uas');
+  expect(() => combined(['diameter'], [one, { diameter: bare }])).toThrow(
+    'expected a number with a 68 % interval',
+  );
+});
