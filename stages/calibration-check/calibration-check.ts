@@ -27,7 +27,7 @@ function limits(doc: string, marginal: number, limit: number, why: string): Para
 
 export const calibrationCheck = {
   kind: 'calibration-check',
-  version: 1,
+  version: 2,
   doc:
     'Checks the calibration on what must agree whatever the source looks like: triangles with two co-located stations ' +
     'close to zero, co-located stations see the same far baselines, and closures agree between bands or hands. Estimates ' +
@@ -97,8 +97,11 @@ export const calibrationCheck = {
       0.5,
       'Two stations good to 10 % give 0.14.',
     ),
-    statedNoise: scatterLimits(
+    statedNoise: limits(
       'Scatter inside scans over the stated noise, the median over baselines and scans; needs the input `report`.',
+      1.4,
+      1.8,
+      'Noise understated by a factor of 2 gives 2; of some hundred averages the median of sound data is 1 within a few per cent.',
     ),
     otherAgreement: scatterLimits(
       'Closure phases and log closure amplitudes less those of the input `other`, over the errors of both: the largest ' +

@@ -2,7 +2,7 @@
  *  parameters; draws x + L^-T z with H = L L^T and z standard normal. */
 
 import type { Posterior } from '../data.ts';
-import { cholesky, solveLowerTransposed } from '../numerics/linear.ts';
+import { choleskyNearby, solveLowerTransposed } from '../numerics/linear.ts';
 import { randomStream } from '../numerics/random.ts';
 import { InternalError } from '../problem.ts';
 import { type Place, placeAt } from './centroid.ts';
@@ -21,7 +21,8 @@ export function drawPosterior(
   seed: number,
 ): PlacedPosterior {
   const columns = x.length;
-  const L = cholesky(curvature, columns);
+  // A model visibility beside a null makes the curvature of its phase as large as doubles go.
+  const L = choleskyNearby(curvature, columns);
   if (!L) throw new InternalError('drawPosterior', 'the curvature is not positive definite');
   const random = randomStream(seed, 'posterior');
   const flux = new Float64Array(count);

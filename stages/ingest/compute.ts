@@ -34,7 +34,12 @@ export function compute(task: StageTask): StageReport {
   writeJson(task.outputs.report, reportOf(observation, timetable, result, present, choices, warnings));
   task.note('averaged', { scans: timetable.scans.length, visibilities: result.averages.count });
   task.progress(1);
-  return { findings: findingsOf(observation), warnings };
+  const exchanged = (observation.uv.exchanged ?? []).map((k) => observation.stations[k].name);
+  const stop =
+    exchanged.length === 0
+      ? {}
+      : { stop: `The antenna table has ${exchanged.join(' and ')} exchanged: correct their positions.` };
+  return { findings: findingsOf(observation), warnings, ...stop };
 }
 
 /** Tells the format from the content and reads it. */
@@ -59,6 +64,10 @@ function isFits(source: ByteSource): boolean {
   const mark = 'SIMPLE  =';
   return source.size >= mark.length && Buffer.from(source.read(0, mark.length)).toString('latin1') === mark;
 }
+
+/** Seconds. A time mark at the start of a 10 s record instead of its middle makes 5 s. */
+const MARGINAL_CLOCK = 0.3;
+const LARGEST_CLOCK = 0.95;
 
 /** MJD of the year 4596: beyond it, or before 1858, a time is no date of an observation. */
 const LATEST_MJD = 1e6;
@@ -147,22 +156,39 @@ function visibilitiesOf(
   };
 }
 
-function findingsOf({ uv }: Observation): Finding[] {
+function findingsOf({ uv, stations }: Observation): Finding[] {
   if (uv.largest === null) return [];
-  const finding =
-    uv.largest <= GOOD_AGREEMENT
-      ? 'within limits'
-      : uv.largest <= POOR_AGREEMENT
-        ? 'marginal'
-        : 'out of limits';
-  return [
-    {
-      check: 'u and v against station positions',
-      finding,
-      value: uv.largest,
-      marginal: GOOD_AGREEMENT,
-      limit: POOR_AGREEMENT,
-      detail: `Largest difference over the longest baseline, ${uv.rows} rows: ${uv.finding}.`,
-    },
-  ];
+  const names = (uv.exchanged ?? []).map((k) => stations[k].name);
+  const detail =
+    names.length === 0
+      ? `Largest difference over the longest baseline, ${uv.rows} rows: ${uv.finding}.`
+      : `Largest difference over the longest baseline, ${uv.rows} rows: they agree once the positions of ${names.join(' and ')} are exchanged.`;
+  const agreement: Finding = {
+    check: 'u and v against station positions',
+    finding: judged(uv.largest, GOOD_AGREEMENT, POOR_AGREEMENT),
+    value: uv.largest,
+    marginal: GOOD_AGREEMENT,
+    limit: POOR_AGREEMENT,
+    detail,
+  };
+  return uv.clock ? [agreement, clockFinding(uv.clock)] : [agreement];
+}
+
+/** Times against (u,v). What is below 0.9 s may be the difference of UT1 and UTC, which the file need not know. */
+function clockFinding({ seconds, error }: { readonly seconds: number; readonly error: number }): Finding {
+  const value = Math.abs(seconds);
+  const late = seconds < 0 ? 'late' : 'early';
+  return {
+    check: 'clock',
+    // An offset that its own error explains is none.
+    finding: judged(value > 4 * error ? value : 0, MARGINAL_CLOCK, LARGEST_CLOCK),
+    value,
+    marginal: MARGINAL_CLOCK,
+    limit: LARGEST_CLOCK,
+    detail: `Seconds by which the times of all stations are ${late} for their (u,v): ${seconds.toFixed(3)} ± ${error.toFixed(3)}.`,
+  };
+}
+
+function judged(value: number, marginal: number, limit: number): Finding['finding'] {
+  return value <= marginal ? 'within limits' : value <= limit ? 'marginal' : 'out of limits';
 }

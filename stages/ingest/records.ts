@@ -142,6 +142,10 @@ export interface UvAgreement {
   readonly finding: string;
   /** What the reader did with u and v. */
   readonly applied: string;
+  /** Two stations that stand exchanged in the table, by index. */
+  readonly exchanged?: readonly [number, number] | null;
+  /** Seconds by which the times are early, with the error; null when not checked. */
+  readonly clock?: { readonly seconds: number; readonly error: number } | null;
 }
 
 /** One observation as a reader hands it over. */

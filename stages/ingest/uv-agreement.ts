@@ -61,6 +61,10 @@ export interface Comparison extends Candidate {
   readonly precession: number;
   readonly statedJ2000: boolean;
   readonly fileHasSidereal: boolean;
+  /** Two stations without whose exchange (u,v) do not agree, by index; null when none explains it, or nothing needs to be. */
+  readonly exchanged: readonly [number, number] | null;
+  /** Seconds by which the times must be moved for (u,v) to agree best, with its standard error from the scatter that is left. */
+  readonly clock: { readonly seconds: number; readonly error: number };
 }
 
 /** The best account of (u,v): of the candidates with the file's sidereal time, else of all.
@@ -82,7 +86,64 @@ export function compareUv(rows: UvRows, geometry: Geometry): Comparison | undefi
     precession: precessionShift(geometry, epoch),
     statedJ2000: geometry.statedJ2000,
     fileHasSidereal: geometry.siderealTime !== undefined,
+    exchanged: all.largest < POOR_AGREEMENT ? null : exchangedStations(rows, geometry, epoch, longest),
+    clock: clockOf(rows, geometry, best, epoch),
   };
+}
+
+/** The pair of stations after whose exchange (u,v) agree; null when there is none. */
+function exchangedStations(
+  rows: UvRows,
+  geometry: Geometry,
+  epoch: number,
+  longest: number,
+): readonly [number, number] | null {
+  const step = Math.max(1, Math.floor(rows.count / TRIAL_ROWS));
+  const { positions } = geometry;
+  const plain = candidates(geometry).filter(({ mirrored }) => !mirrored);
+  for (let i = 0; i < positions.length; i++) {
+    for (let j = i + 1; j < positions.length; j++) {
+      const exchanged = positions.map((xyz, k) => (k === i ? positions[j] : k === j ? positions[i] : xyz));
+      const agree = plain.some(
+        (candidate) =>
+          measure(rows, { ...geometry, positions: exchanged }, candidate, epoch, longest, step).largest <
+          GOOD_AGREEMENT,
+      );
+      if (agree) return [i, j];
+    }
+  }
+  return null;
+}
+
+/** Radians of sidereal time in a second of UT (Aoki et al. 1982, A&A 105, 359). */
+const SIDEREAL_RATE = (2 * Math.PI * 1.00273790935) / 86400;
+
+/** Least squares for one time offset: the difference of (u,v) along their motion with the rotation of the Earth. */
+function clockOf(rows: UvRows, geometry: Geometry, candidate: Candidate, epoch: number) {
+  const [ra, dec] = directionOf(geometry, candidate.coordinates, epoch);
+  const sidereal = candidate.sidereal === 'of the file' ? (geometry.siderealTime ?? gmst1982) : gmst1982;
+  const mirror = candidate.mirrored ? -1 : 1;
+  const scale = candidate.sign * rows.unitsPerMetre;
+  const step = Math.max(1, Math.floor(rows.count / TRIAL_ROWS));
+  let [along, motion, squares, count] = [0, 0, 0, 0];
+  for (let k = 0; k < rows.count; k += step) {
+    const a = geometry.positions[rows.station1[k]];
+    const b = geometry.positions[rows.station2[k]];
+    const baseline: Triple = [a[0] - b[0], mirror * (a[1] - b[1]), a[2] - b[2]];
+    const hourAngle = sidereal(rows.timeMjd[k]) - ra;
+    const [u, v] = uvwRotation(hourAngle, dec)(baseline);
+    const [later, laterV] = uvwRotation(hourAngle + SIDEREAL_RATE, dec)(baseline);
+    const [du, dv] = [rows.u[k] - scale * u, rows.v[k] - scale * v];
+    const [mu, mv] = [scale * (later - u), scale * (laterV - v)];
+    along += du * mu + dv * mv;
+    motion += mu * mu + mv * mv;
+    squares += du * du + dv * dv;
+    count++;
+  }
+  if (!(motion > 0)) return { seconds: 0, error: 0 };
+  const seconds = along / motion;
+  const left = Math.max(0, squares - seconds * along) / Math.max(1, 2 * count - 1);
+  return { seconds, error: Math.sqrt(left / motion) };
 }
 
 function longestOf(rows: UvRows): number {

@@ -39,6 +39,8 @@ export function judgeUv(
     rows: comparison?.rows ?? 0,
     finding: findingOf(comparison, fits),
     applied,
+    exchanged: comparison?.exchanged ?? null,
+    clock: fits ? comparison.clock : null,
   };
   return { agreement, turn, warnings };
 }
@@ -51,7 +53,8 @@ function refuse(comparison: Comparison | undefined, fits: boolean, place: string
   if (fits && comparison.sign < 0) throw wrongSign(comparison, place);
   if (!must) return;
   if (fits && comparison.mirrored) throw mirrored(place);
-  if (!fits) throw disagreement(comparison, place);
+  // Stations that stand exchanged are a finding that stops the run: it names them.
+  if (!fits && comparison.exchanged === null) throw disagreement(comparison, place);
 }
 
 function uncheckable(place: string): InputProblem {

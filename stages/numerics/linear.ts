@@ -22,6 +22,21 @@ export function cholesky(A: Float64Array, n: number): Float64Array | null {
   return L;
 }
 
+/** The same of a matrix that is positive definite but for rounding: where it is not, the diagonal is raised by as little as
+ *  helps, from 1e-14 to 1e-6 of itself; null when that does not help. */
+export function choleskyNearby(A: Float64Array, n: number): Float64Array | null {
+  for (let raise = 0; raise <= MOST_RAISE; raise = raise === 0 ? LEAST_RAISE : raise * 100) {
+    const raised = Float64Array.from(A);
+    for (let k = 0; k < n; k++) raised[k * n + k] *= 1 + raise;
+    const L = cholesky(raised, n);
+    if (L) return L;
+  }
+  return null;
+}
+
+const LEAST_RAISE = 1e-14;
+const MOST_RAISE = 1e-6;
+
 /** Returns x with L x = b. Cost n^2. */
 export function solveLower(L: Float64Array, b: Float64Array): Float64Array {
   const n = b.length;

@@ -99,20 +99,39 @@ function uvRequest(simulation: Simulation, tracks: Tracks, hands: Hands): UvWrit
     remark: REMARK,
     frequencyHz: simulation.frequency,
     bandwidthHz: simulation.bandwidth,
-    stations: simulation.stations,
+    stations: writtenStations(simulation),
     referenceDate: julianDateOfMjd(Math.floor(simulation.startMjd)),
     gst0Degrees,
     degreesPerDay: SIDEREAL_DEGREES_PER_DAY,
     count,
     station1,
     station2,
-    timeJd: tracks.timeMjd.map(julianDateOfMjd),
+    timeJd: tracks.timeMjd.map((mjd) => julianDateOfMjd(mjd + clockOffset(simulation) / 86400)),
     u,
     v,
     w,
     integrationSeconds: new Float64Array(count).fill(simulation.record),
     ...hands,
   };
+}
+
+/** Stations as the antenna table has them: two of them may be exchanged. */
+function writtenStations({ stations, faults }: Simulation): Simulation['stations'] {
+  let written = stations;
+  for (const { fault, station, other } of faults) {
+    if (fault !== 'stations-swapped') continue;
+    const place = (name: string | undefined) => stations.find((each) => each.name === name)?.xyz;
+    written = written.map((each) => {
+      const from = each.name === station ? place(other) : each.name === other ? place(station) : undefined;
+      return from === undefined ? each : { ...each, xyz: from };
+    });
+  }
+  return written;
+}
+
+/** Seconds by which all times are late. */
+function clockOffset({ faults }: Simulation): number {
+  return faults.reduce((sum, { fault, value }) => (fault === 'clock-offset' ? sum + value : sum), 0);
 }
 
 function warningsOf({ stations }: Simulation, tracks: Tracks): string[] {

@@ -22,13 +22,15 @@ export function observe(simulation: Simulation, tracks: Tracks, re: Float64Array
   const baseline = drawBaselineErrors(simulation, tracks.scans);
   const noise = randomStream(simulation.seed, 'thermal noise');
   const n = simulation.stations.length;
+  const planted = plantedFaults(simulation);
   const hands = makeHands(count);
   for (let k = 0; k < count; k++) {
     const [i, j] = [station1[k], station2[k]];
     const [a, b] = [scan[k] * n + i, scan[k] * n + j];
     const pair = (scan[k] * n + i) * n + j;
-    const gain = exp(station.logGain[a] + station.logGain[b] + baseline.logGain[pair]);
-    const phase = station.phase[a] - station.phase[b] + baseline.phase[pair];
+    const fault = planted(tracks.timeMjd[k], i, j);
+    const gain = exp(station.logGain[a] + station.logGain[b] + baseline.logGain[pair] + fault.logGain);
+    const phase = station.phase[a] - station.phase[b] + baseline.phase[pair] + fault.phase;
     const [c, s] = [gain * cos(phase), gain * sin(phase)];
     const vRe = c * re[k] - s * im[k];
     const vIm = s * re[k] + c * im[k];
@@ -41,6 +43,24 @@ export function observe(simulation: Simulation, tracks: Tracks, re: Float64Array
     }
   }
   return hands;
+}
+
+/** What planted faults add to the log gain and the phase of a baseline at a time. */
+function plantedFaults({ faults, stations, startMjd }: Simulation) {
+  const index = (name: string | undefined) => stations.findIndex((station) => station.name === name);
+  const active = faults.map((fault) => ({ ...fault, a: index(fault.station), b: index(fault.other) }));
+  return (mjd: number, i: number, j: number) => {
+    let [logGain, phase] = [0, 0];
+    const hours = (mjd - startMjd) * 24;
+    for (const { fault, from, duration, value, a, b } of active) {
+      if (hours < from || hours >= from + duration) continue;
+      if (fault === 'gain-drop' && (a === i || a === j)) logGain += ln(value);
+      if (fault === 'non-closing-phase' && ((a === i && b === j) || (a === j && b === i))) {
+        phase += (a === i ? 1 : -1) * ((value * Math.PI) / 180);
+      }
+    }
+    return { logGain, phase };
+  };
 }
 
 function rowSigma(simulation: Simulation, i: number, j: number): number {

@@ -35,6 +35,16 @@ export interface RingTruth {
   readonly pixels: number;
 }
 
+/** A planted fault, as declared: hours since the start, degrees or seconds. */
+export interface Fault {
+  readonly fault: 'gain-drop' | 'non-closing-phase' | 'stations-swapped' | 'clock-offset';
+  readonly station?: string;
+  readonly other?: string;
+  readonly from: number;
+  readonly duration: number;
+  readonly value: number;
+}
+
 export interface Simulation {
   readonly target: { readonly name: string; readonly raDegrees: number; readonly decDegrees: number };
   readonly frequency: number;
@@ -52,6 +62,7 @@ export interface Simulation {
   /** Standard deviations: of the log amplitude, of the phase in radians. */
   readonly nonClosing: { readonly amplitude: number; readonly phase: number };
   readonly noiseFactor: number;
+  readonly faults: readonly Fault[];
   readonly truth: RingTruth | undefined;
   /** Jy, radians. */
   readonly extended: { readonly flux: number; readonly fwhm: number } | undefined;
@@ -75,6 +86,7 @@ interface Declared {
   readonly phaseErrors: 'unknown' | 'none';
   readonly nonClosing: { readonly amplitude: number; readonly phase: number };
   readonly noiseFactor: number;
+  readonly faults?: readonly Fault[];
   readonly truth?: RingTruth;
   readonly extended?: { readonly flux: number; readonly fwhm: number };
   readonly resolution: number;
@@ -127,6 +139,7 @@ export function readParameters(parameters: Readonly<Record<string, unknown>>): S
       phase: declared.nonClosing.phase * RADIANS_PER_DEGREE,
     },
     noiseFactor: declared.noiseFactor,
+    faults: requireFaults(declared),
     truth: truth && truthInRadians(truth),
     extended: extended && { flux: extended.flux, fwhm: extended.fwhm * RADIANS_PER_UAS },
     resolution: declared.resolution * RADIANS_PER_UAS,
@@ -201,6 +214,36 @@ function requireSchedule({ record, scan, interval, duration }: Declared): void {
       'Lengthen what is too short.',
     );
   }
+}
+
+/** How many stations a fault is about. */
+const STATIONS_OF = {
+  'gain-drop': 1,
+  'non-closing-phase': 2,
+  'stations-swapped': 2,
+  'clock-offset': 0,
+} as const;
+
+function requireFaults({ faults = [], stations }: Declared): readonly Fault[] {
+  const known = stations.map(({ name }) => name);
+  for (const [k, { fault, station, other, value }] of faults.entries()) {
+    const named = [station, other].filter((name) => name !== undefined);
+    const place = `faults, number ${k + 1}`;
+    if (named.length !== STATIONS_OF[fault] || new Set(named).size !== named.length) {
+      throw parameterProblem(
+        place,
+        `${STATIONS_OF[fault]} different stations for ${fault}`,
+        named.join(' and ') || 'none',
+        'Name them as `station` and `other`.',
+      );
+    }
+    const unknown = named.find((name) => !known.includes(name));
+    if (unknown !== undefined)
+      throw parameterProblem(place, `stations among ${known.join(', ')}`, unknown, 'Correct the name.');
+    if (fault === 'gain-drop' && !(value > 0))
+      throw parameterProblem(place, 'a factor above 0', `${value}`, 'Half the gain is 0.5.');
+  }
+  return faults;
 }
 
 function requireUniqueNames(stations: readonly DeclaredStation[]): void {

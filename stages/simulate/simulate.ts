@@ -159,6 +159,54 @@ export const simulate = {
         'of that resolution shows it. The data and the truth image are not convolved.',
       why: 'Without it the truth is measured as it is.',
     },
+    faults: {
+      type: 'list',
+      of: {
+        type: 'group',
+        doc: 'A fault to plant, to see whether the checks find it.',
+        fields: {
+          fault: {
+            type: 'word',
+            words: ['gain-drop', 'non-closing-phase', 'stations-swapped', 'clock-offset'],
+            doc:
+              '`gain-drop`: the gain of `station` times `value` for a while. `non-closing-phase`: `value` degrees on the baseline ' +
+              'of `station` and `other`. `stations-swapped`: the positions of the two exchanged in the antenna table. ' +
+              '`clock-offset`: all times late by `value` seconds. (Noise that is understated: `noiseFactor`.)',
+          },
+          station: { type: 'text', optional: true, doc: 'Name of a station.' },
+          other: { type: 'text', optional: true, doc: 'Name of a second one.' },
+          from: {
+            type: 'quantity',
+            unit: 'h',
+            from: 0,
+            to: 1000,
+            default: '0 h',
+            doc: 'Since the start.',
+            why: 'From the start.',
+          },
+          duration: {
+            type: 'quantity',
+            unit: 'h',
+            from: 0,
+            to: 1000,
+            default: '1000 h',
+            doc: 'How long.',
+            why: 'To the end.',
+          },
+          value: {
+            type: 'number',
+            from: -1e4,
+            to: 1e4,
+            default: 1,
+            doc: 'How much.',
+            why: 'A gain of 1 is no fault.',
+          },
+        },
+      },
+      default: [],
+      doc: 'Faults that are planted.',
+      why: 'A sound observation has none.',
+    },
     seed: {
       type: 'integer',
       from: 0,

@@ -372,10 +372,10 @@ describe('The stated noise', () => {
     const { finding } = await check(observe(1, ONE_PAIR), {}, report(4));
     expect(finding('statedNoise')).toEqual({
       check: 'statedNoise',
-      finding: 'marginal',
+      finding: 'out of limits',
       value: 2,
-      marginal: 1.5,
-      limit: 2.5,
+      marginal: 1.4,
+      limit: 1.8,
       detail: 'Median scatter of records inside 400 averages, over the stated noise.',
     });
   });
