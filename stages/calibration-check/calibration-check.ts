@@ -42,6 +42,16 @@ export const calibrationCheck = {
       optional: true,
       doc: 'The report of `ingest`: with it the scatter inside scans is checked against the stated noise.',
     },
+    fitReport: {
+      format: 'json',
+      optional: true,
+      doc: 'The report of a fit to these visibilities: with it the gain of every station is checked against time.',
+    },
+    residuals: {
+      format: 'json',
+      optional: true,
+      doc: 'The residuals of that fit: with them baselines are found whose phases do not close.',
+    },
     other: {
       format: 'visibilities',
       optional: true,
@@ -107,6 +117,18 @@ export const calibrationCheck = {
       'Closure phases and log closure amplitudes less those of the input `other`, over the errors of both: the largest ' +
         'of the robust scatter of all about zero, and that of the worst baseline less what the largest of so many may ' +
         'have above 1 by chance.',
+    ),
+    gainsOverTime: limits(
+      "Log gains of the fit less their station's median: the largest of all stations and scans; needs the input `fitReport`.",
+      0.4,
+      0.55,
+      'Of 200 gains good to 10 % the largest is 0.3 off; half the gain is 0.69 off.',
+    ),
+    baselinePhases: limits(
+      'Degrees of the phase of one baseline that does not close, where it is more than four of its errors; needs the input `residuals`.',
+      3,
+      4.5,
+      'The image takes up about half of such a phase: of 10 deg on one baseline 4.8 are left.',
     ),
     uvDifference: {
       type: 'number',

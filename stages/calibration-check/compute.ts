@@ -6,6 +6,7 @@ import { readVisibilities, writeVisibilities } from '../formats/visibilities.ts'
 import type { Finding, StageReport, StageTask } from '../kind.ts';
 import { closureSets } from '../numerics/closures.ts';
 import { exp } from '../numerics/elementary.ts';
+import { checkAfterFit } from './after-fit.ts';
 import { agreement } from './agreement.ts';
 import { type Measured, measure, type Outcome, runChecks } from './checks.ts';
 import { type ErrorBudget, estimateBudget, withBudget } from './error-budget.ts';
@@ -26,6 +27,7 @@ export function compute(task: StageTask): StageReport {
     ...runChecks(visibilities, measured, parameters),
     ...checkStatedNoise(task.inputs.report?.[0], parameters),
     ...(other ? checkOther(other, parameters) : []),
+    ...checkAfterFit(task.inputs.fitReport?.[0], task.inputs.residuals?.[0], parameters),
   ];
   const errorBudget = estimateBudget(measured, other, parameters);
   const findings = outcomes.filter((outcome): outcome is Finding => 'finding' in outcome);

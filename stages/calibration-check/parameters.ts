@@ -16,6 +16,8 @@ export const CHECKS = [
   'gainScatter',
   'statedNoise',
   'otherAgreement',
+  'gainsOverTime',
+  'baselinePhases',
 ] as const;
 
 export type CheckName = (typeof CHECKS)[number];
