@@ -31,6 +31,7 @@ export interface Choices {
   readonly completeness: number;
   readonly leastSnr?: number;
   readonly uvSign: 'check' | 'as-written' | 'reversed';
+  readonly rules?: 'enforce' | 'ignore';
   readonly checksums: 'verify' | 'ignore';
   readonly columns?: Readonly<Record<string, string | { readonly column: string; readonly unit?: string }>>;
   readonly timeOrigin: number;

@@ -4,6 +4,7 @@
 import type { ByteSource } from '../bytes.ts';
 import type { Station } from '../data.ts';
 import { readOifits } from '../formats/oifits.ts';
+import { requireValidOifits } from '../formats/oifits-strict.ts';
 import type { Oifits, OiVis } from '../formats/oifits-types.ts';
 import { weightOfSigma } from '../formats/visibility-table.ts';
 import { cos, sin } from '../numerics/elementary.ts';
@@ -28,6 +29,7 @@ const DEGREE = Math.PI / 180;
 
 /** @throws InputProblem */
 export function observationOfOifits(source: ByteSource, choices: Choices): Observation {
+  if (choices.rules !== 'ignore') requireValidOifits(source);
   const oifits = readOifits(source);
   const tables = requireVis(oifits, source);
   const target = chooseTarget(oifits, choices.target, source.name);

@@ -111,6 +111,15 @@ export const ingest = {
         'stage stops; `as-written`: as its format says, whatever the positions say; `reversed`: the other way round.',
       why: 'A wrong sign turns the picture by 180°, and the data alone never betray it.',
     },
+    rules: {
+      type: 'word',
+      words: ['enforce', 'ignore'],
+      default: 'enforce',
+      doc:
+        'Only for OIFITS: whether a file that breaks a rule of the standard without which it can still be read is refused: a ' +
+        'mandatory keyword or column that is missing, a negative error, wavelengths out of order, a wrong revision.',
+      why: 'A file that breaks one rule may break others that nobody sees.',
+    },
     checksums: {
       type: 'word',
       words: ['verify', 'ignore'],
