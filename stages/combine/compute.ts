@@ -10,6 +10,11 @@ import { type Combined, combineSets, type SetValue } from './combine-sets.ts';
 const UNITS_OF_CIRCLE = ['deg'];
 /** Probability of the disagreement below which a warning is given. */
 const INCONSISTENT = 0.05;
+/** Half a 68 % interval of a normal distribution, as its ends are defined (16 % and 84 %), in standard deviations. */
+const HALF = normalQuantile(0.84);
+const INDEPENDENT =
+  'Combined numbers count their sets as independent: an error that all of them share, such as that of a distance, of a ' +
+  "calibration or of the method's bias, is not made smaller by combining, and the intervals do not hold it in full.";
 
 export function compute(task: StageTask): StageReport {
   const { names } = task.parameters as { names: readonly string[] };
@@ -18,7 +23,7 @@ export function compute(task: StageTask): StageReport {
   const results = names.map((name) => combineNamed(name, sets));
   writeNumbers(task.outputs.numbers, {
     values: Object.fromEntries(results.map(({ name, number }) => [name, number])),
-    remarks: [...new Set(sets.flatMap(({ numbers }) => numbers.remarks))],
+    remarks: [INDEPENDENT, ...new Set(sets.flatMap(({ numbers }) => numbers.remarks))],
   });
   writeJson(task.outputs.report, {
     sets: sets.length,
@@ -71,10 +76,13 @@ function combineNamed(
   const values = found.map(
     ({ value, low, high }): SetValue => ({
       value: place(value),
-      deviation: ((high as number) - (low as number)) / 2,
+      deviation: ((high as number) - (low as number)) / 2 / HALF,
     }),
   );
-  const combined = combineSets(values);
+  const inPlace = combineSets(values);
+  // A position angle is given in [0, 360); its interval may run beyond.
+  const turn = isAngle ? 360 * Math.floor(inPlace.value / 360) : 0;
+  const combined = { ...inPlace, value: inPlace.value - turn };
   const part = (p: number) => combined.value + normalQuantile(p) * combined.deviation;
   return {
     name,

@@ -5,7 +5,7 @@ import { readBasis } from '../formats/basis.ts';
 import { writeJson, writeNumbers } from '../formats/json.ts';
 import { readPosterior, readVariants } from '../formats/posterior.ts';
 import { readSkyImage } from '../formats/sky-image.ts';
-import { errorParts } from '../imaging/error-parts.ts';
+import { errorParts, partsRemark } from '../imaging/error-parts.ts';
 import { type MeasuredDraws, measureDraws } from '../imaging/measure-draws.ts';
 import {
   type Calibration,
@@ -34,13 +34,15 @@ export function compute(task: StageTask): StageReport {
     others: readOthers(task.inputs.otherBasis ?? [], task.inputs.otherSamples ?? []),
     bias: bias?.diameter ?? null,
   });
-  const numbers = makeRingNumbers(draws, task.parameters as Calibration, {
+  const found = makeRingNumbers(draws, task.parameters as Calibration, {
     resolutionRadians: basis.resolutionRadians,
     bias,
     models,
     parts,
     deepest: deepestDepression(draws, basis),
   });
+  const numbers =
+    'diameter' in found.values ? { ...found, remarks: [...found.remarks, partsRemark(parts)] } : found;
   const warnings = findWarnings(ringFraction(draws), widthViolated(numbers), models);
   const image = task.inputs.image?.[0];
   writeNumbers(task.outputs.ring, numbers);

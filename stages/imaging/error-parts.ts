@@ -61,6 +61,17 @@ export function errorParts(draws: MeasuredDraws, { basis, variants, others, bias
   return Object.fromEntries(Object.entries(parts).filter(([, value]) => value !== undefined));
 }
 
+/** What the intervals do not hold, or cannot tell. */
+export function partsRemark({ noise, components, library }: ErrorParts): string {
+  const besides = (name: string, part: number | undefined, unknown: string) =>
+    part === undefined ? unknown : `that of the ${name} is ${part.toFixed(2)} uas`;
+  return (
+    'Of the error of the diameter the intervals do not hold the parts of the choice of components and of the library: ' +
+    `${besides('components', components, noise === undefined ? 'the first was not looked at' : 'held-out data admit no other number of components, or none was asked for')}; ` +
+    `${besides('library', library, 'the second is not known, since no fit in another library was given')}.`
+  );
+}
+
 function diametersOf({ rings }: MeasuredDraws): number[] {
   return rings.map(({ diameter }) => diameter * UAS_PER_RADIAN);
 }

@@ -24,7 +24,11 @@ export function compute(task: StageTask): StageReport {
   task.note('read', { format: observation.format, rows: observation.rows });
   requireDates(observation);
   task.progress(0.6);
-  const timetable = findScans(observation.records, choices.gap, choices.averaging);
+  const timetable = findScans(
+    observation.records,
+    choices.gap,
+    observation.phaseErrorOf === undefined ? choices.averaging : 'none',
+  );
   const result = average(observation.records, timetable, choices, observation.tally);
   requireSome(observation, result);
   const present = presentStations(result);
@@ -152,7 +156,11 @@ function visibilitiesOf(
     re: averages.re.slice(0, count),
     im: averages.im.slice(0, count),
     sigma: averages.sigma.slice(0, count),
-    sigmaPhase: averages.sigma.slice(0, count).map((sigma, k) => Math.min(Math.PI, sigma / amplitude(k))),
+    sigmaPhase: averages.sigma.slice(0, count).map((sigma, k) => {
+      const { phaseErrorOf } = observation;
+      if (phaseErrorOf) return phaseErrorOf(averages.timeMjd[k], averages.station1[k], averages.station2[k]);
+      return Math.min(Math.PI, sigma / amplitude(k));
+    }),
   };
 }
 

@@ -1,5 +1,5 @@
-/** From OIFITS to an observation: the complex visibilities of OI_VIS. OI_VIS2 and OI_T3 hold no complex visibilities and
- *  are not read in this version. */
+/** From OIFITS to an observation: the complex visibilities of OI_VIS. Where a file has none, from-optical.ts takes OI_VIS2 and
+ *  OI_T3. */
 
 import type { ByteSource } from '../bytes.ts';
 import type { Station } from '../data.ts';
@@ -11,6 +11,7 @@ import { cos, sin } from '../numerics/elementary.ts';
 import { InputProblem } from '../problem.ts';
 import { convert } from '../units.ts';
 import type { Choices } from './choices.ts';
+import { observationOfOptical } from './from-optical.ts';
 import {
   addRecord,
   drop,
@@ -31,8 +32,10 @@ const DEGREE = Math.PI / 180;
 export function observationOfOifits(source: ByteSource, choices: Choices): Observation {
   if (choices.rules !== 'ignore') requireValidOifits(source);
   const oifits = readOifits(source);
-  const tables = requireVis(oifits, source);
   const target = chooseTarget(oifits, choices.target, source.name);
+  if (oifits.vis.length === 0 && oifits.vis2.length > 0)
+    return observationOfOptical(oifits, source, target, choices);
+  const tables = requireVis(oifits, source);
   const bands = chosenNumbers(choices.bands, oifits.wavelengths.length, 'bands');
   const channels = chooseChannels(oifits, bands, choices);
   const { frequencyHz, bandwidthHz } = middleFrequency(oifits, bands, channels, source.name);

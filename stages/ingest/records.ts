@@ -170,5 +170,7 @@ export interface Observation {
   readonly hands: { both: number; one: number; identical: number } | null;
   readonly leftOut: readonly string[];
   readonly uv: UvAgreement;
+  /** Radians, where phases have errors of their own, that is, in optical data; these are not averaged. */
+  readonly phaseErrorOf?: (timeMjd: number, station1: number, station2: number) => number;
   readonly warnings: readonly string[];
 }

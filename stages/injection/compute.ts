@@ -6,7 +6,7 @@ import { writeJson } from '../formats/json.ts';
 import { readSkyImage } from '../formats/sky-image.ts';
 import { readVisibilities } from '../formats/visibilities.ts';
 import { gainDeviations } from '../imaging/fit-problem.ts';
-import { type AboutRing, injectedRings } from '../imaging/injected-rings.ts';
+import type { AboutRing } from '../imaging/injected-rings.ts';
 import { basisVisibilities } from '../imaging/linear-model.ts';
 import { biasOf } from '../imaging/method-bias.ts';
 import { longestBaseline, selectRows } from '../imaging/select-rows.ts';
@@ -14,6 +14,7 @@ import { runTrial, type Trial } from '../imaging/trial.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import { measureRing } from '../numerics/ring.ts';
 import { readUsedSettings } from './used-settings.ts';
+import { visibleRings } from './visible-rings.ts';
 
 /** Draws of each trial's posterior: their 68 % interval is then good to a sixth. */
 const DRAWS = 30;
@@ -40,7 +41,7 @@ export function compute(task: StageTask): StageReport {
   const trials: Trial[] = [];
   const flux = image.pixels.reduce((sum, value) => sum + value, 0);
   if (about !== null) {
-    injectedRings(about, flux, count, seed).forEach((source, k) => {
+    visibleRings(basis, { about, flux, count, seed }).forEach((source, k) => {
       const options = { seed: seed + k, gainDeviations: deviations, draws: DRAWS, hints };
       trials.push(runTrial(visibilities, basis, source, settings, options));
       task.progress((k + 1) / count);
@@ -59,12 +60,23 @@ export function compute(task: StageTask): StageReport {
     trials: trials.map(({ truth, measured, ringFraction }) => ({ truth, measured, ringFraction })),
   });
   task.note('injected', { trials: trials.length, used: bias?.diameter.trials ?? 0, lost: lost.length });
-  return { warnings: warningsOf(about, bias === null, trials.length, lost.length) };
+  return {
+    warnings: warningsOf(about, bias === null, { wanted: count, injected: trials.length, lost: lost.length }),
+  };
 }
 
-function warningsOf(about: AboutRing | null, isWithout: boolean, injected: number, lost: number): string[] {
+function warningsOf(
+  about: AboutRing | null,
+  isWithout: boolean,
+  { wanted, injected, lost }: { wanted: number; injected: number; lost: number },
+): string[] {
   if (about === null) return ["the fit's image has no ring, so nothing was injected and no bias is known"];
-  if (isWithout) return [`of ${injected} injected rings too few came out as rings: no bias is known`];
+  if (isWithout) {
+    return [
+      `of ${wanted} rings ${injected} could be injected (the others are none at the basis's resolution) and ` +
+        `${injected - lost} came out as rings: too few, no bias is known`,
+    ];
+  }
   return lost > injected / 4 ? [`${lost} of ${injected} injected rings did not come out as rings`] : [];
 }
 

@@ -8,7 +8,7 @@ import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readJson, readNumbers } from '../../../stages/formats/json.ts';
 import { writePosterior } from '../../../stages/formats/posterior.ts';
 import { writeSkyImage } from '../../../stages/formats/sky-image.ts';
-import { errorParts } from '../../../stages/imaging/error-parts.ts';
+import { errorParts, partsRemark } from '../../../stages/imaging/error-parts.ts';
 import { measureDraws } from '../../../stages/imaging/measure-draws.ts';
 import type { MethodBias } from '../../../stages/imaging/method-bias.ts';
 import { makeRingNumbers, widthViolated } from '../../../stages/imaging/ring-numbers.ts';
@@ -231,4 +231,8 @@ test('tells the parts of the error of the diameter', () => {
   expect(parts.components).toBeGreaterThan(0.3);
   const { values } = makeRingNumbers(mixed, {}, { parts });
   expect(values['diameter-error-noise'].unit).toBe('uas');
+  expect(partsRemark(parts)).toMatch(
+    /that of the components is \d\.\d\d uas; that of the library is \d\.\d\d uas\.$/,
+  );
+  expect(partsRemark({})).toContain('was not looked at; the second is not known');
 });

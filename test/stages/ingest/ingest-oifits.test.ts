@@ -43,9 +43,9 @@ describe('OIFITS', () => {
     expect(runIngest(fixture('double.oifits'), { channels: [1, 2] }).report.samples.read).toBe(12);
   });
 
-  it('without complex visibilities is refused, clearly', () => {
+  it('with several targets asks which one', () => {
     expect(problemOf(fixture('two-arrays.oifits')).message).toContain(
-      'no-complex-visibilities: expected a table OI_VIS with complex visibilities, got',
+      'several-targets: expected one target, or the parameter target, got ALPHA, BETA',
     );
   });
 

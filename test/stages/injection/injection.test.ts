@@ -2,17 +2,22 @@
 
 import { expect, test } from 'vitest';
 import { memorySink, sourceOf } from '../../../stages/bytes.ts';
+import type { Basis } from '../../../stages/data.ts';
 import { compute as computeFit } from '../../../stages/fit/compute.ts';
 import { fit } from '../../../stages/fit/fit.ts';
 import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readJson } from '../../../stages/formats/json.ts';
 import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { injectedRings } from '../../../stages/imaging/injected-rings.ts';
 import { biasOf, correctionAt } from '../../../stages/imaging/method-bias.ts';
 import { observe as observeAgain } from '../../../stages/imaging/synthetic.ts';
-import { QUANTITIES, type Trial } from '../../../stages/imaging/trial.ts';
+import { imageAtResolution, QUANTITIES, type Trial } from '../../../stages/imaging/trial.ts';
 import { compute } from '../../../stages/injection/compute.ts';
+import { visibleRings } from '../../../stages/injection/visible-rings.ts';
+import type { Model } from '../../../stages/numerics/models.ts';
 import { ellipticalGaussian } from '../../../stages/numerics/named-models.ts';
 import { randomStream } from '../../../stages/numerics/random.ts';
+import { measureRing } from '../../../stages/numerics/ring.ts';
 import { mean, standardDeviation } from '../../../stages/numerics/statistics.ts';
 import { defaultParameters } from '../default-parameters.ts';
 import { crescentImage, makeLibraryBasis, observe, withFlux } from '../fit/synthetic-data.ts';
@@ -77,10 +82,26 @@ test('observes a source again with its noise, gains and station phases', () => {
   expect(Math.abs(mean(ratios))).toBeLessThan(0.05);
 });
 
+test('injects only what is a ring at the resolution, from small to large', () => {
+  const grid = { nx: 48, ny: 48, pixelRadians: 3 * UAS, resolutionRadians: 12 * UAS } as Basis;
+  const about = { diameter: 42 * UAS, width: 14 * UAS, asymmetry: 0.2 };
+  const isRing = (source: Model) => measureRing(imageAtResolution(source, grid)).ring;
+  // The case: some of the first draws are none.
+  const first = injectedRings(about, 1, 12, 5).filter(isRing).length;
+  expect(first).toBeLessThan(12);
+  const chosen = visibleRings(grid, { about, flux: 1, count: 12, seed: 5 });
+  expect(chosen.length).toBeGreaterThan(first);
+  expect(chosen.every(isRing)).toBe(true);
+  const sizes = chosen.map(({ parts }) => parts[0].length);
+  expect(sizes).toEqual([...sizes].sort((a, b) => a - b));
+  const blob = { about: { ...about, diameter: 10 * UAS }, flux: 1, count: 2, seed: 5 };
+  expect(visibleRings(grid, blob)).toEqual([]);
+});
+
 test('injects about the ring of a fit, and writes the same bytes twice', async () => {
-  const basis = makeLibraryBasis(30, 160);
+  const basis = makeLibraryBasis(16, 160);
   const data = observe(withFlux(crescentImage({ diameter: 50, blur: 9, b: 0.2, angle: 70 }), 0.8), {
-    scans: 14,
+    scans: 8,
     gains: 0.05,
     stationPhases: true,
     noise: 0.005,
@@ -92,7 +113,7 @@ test('injects about the ring of a fit, and writes the same bytes twice', async (
   const inputs = { visibilities: [sourceOf(visibilities.bytes())], basis: [sourceOf(basisBytes.bytes())] };
   const names = ['image', 'samples', 'residuals', 'report', 'models', 'flux'];
   const outputs = Object.fromEntries(names.map((name) => [name, memorySink()]));
-  const parameters = { ...defaultParameters(fit), components: 30, posterior: 'gaussian' };
+  const parameters = { ...defaultParameters(fit), components: 16, posterior: 'gaussian' };
   await computeFit({ inputs, parameters, outputs, ...quiet });
   const once = async () => {
     const bias = memorySink();
