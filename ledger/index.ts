@@ -193,7 +193,9 @@ export function makeIndexFile(path: string, book: string, lines: Iterable<Indexe
     }
     // What a deleted index has left beside it would be taken for this one's. In this order: an index that somebody else
     // has made meanwhile was there before its journal was.
-    const left = ['-wal', '-shm', '-journal'].map((suffix) => `${path}${suffix}`).filter((file) => existsSync(file));
+    const left = ['-wal', '-shm', '-journal']
+      .map((suffix) => `${path}${suffix}`)
+      .filter((file) => existsSync(file));
     if (existsSync(path)) return false;
     for (const file of left) rmSync(file, { force: true });
     linkSync(made, path);

@@ -16,6 +16,7 @@ const stageNames = [
   'library',
   'basis',
   'fit',
+  'injections',
   'features',
   'pictures',
 ];
