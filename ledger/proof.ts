@@ -26,16 +26,17 @@ export interface ProofDocument {
   readonly key: string;
 }
 
-/** Proves an entry to be under the latest seal. Cost: log n reads.
+export type SignedSeal = Seal & { readonly note: string };
+
+/** Proves an entry to be under a seal of the book, the latest unless another is given. Cost: log n reads.
  *  @throws LedgerProblem 'no-proof' when the seal is unsigned, 'not-found', 'ledger-damaged'. */
-export function prove(book: Book, number: number): ProofDocument {
-  const seal = signedSeal(book.directory);
+export function prove(book: Book, number: number, seal = signedSeal(book.directory)): ProofDocument {
   const bytes = lineOf(book, number);
   const index = number - 1;
   const isRight = (path: Buffer[]) => isIncluded(bytes, index, path, seal);
   const path = askTree(book.directory, seal, (tree) => tree.inclusion(index), isRight);
   if (!isRight(path))
-    throw ledgerDamaged(ledgerPath(book.directory), number, 'the entry is not under the latest seal');
+    throw ledgerDamaged(ledgerPath(book.directory), number, 'the entry is not under the seal');
   return {
     entry: bytes.toString('utf8'),
     index,
@@ -119,7 +120,8 @@ function isIncluded(
   return checkInclusion(leafHash(bytes), index, seal.entries, path, Buffer.from(seal.root, 'base64'));
 }
 
-function signedSeal(directory: string): Seal & { note: string } {
+/** The latest seal. @throws LedgerProblem 'no-proof' when there is none, or it is unsigned. */
+export function signedSeal(directory: string): SignedSeal {
   const seal = readSeal(directory);
   if (typeof seal === 'string')
     throw noProof(`The book in ${directory} has no seal that can be read`, 'Audit the book.');

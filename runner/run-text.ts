@@ -1,8 +1,8 @@
 /** What `run` prints when it has ended: the published numbers, where the plates lie, and what to try next. */
 
 import { relative } from 'node:path';
-import type { PublishedNumber } from '../ledger/entry.ts';
 import type { Io } from './command.ts';
+import { WITHDRAWN } from './commands/diff-text.ts';
 import type { RunOptions, RunSummary } from './commands/run.ts';
 import { roundedLike, roundedNumber } from './numbers-files.ts';
 import { wrapped } from './wrapped.ts';
@@ -13,7 +13,7 @@ export function runText(summary: RunSummary, options: RunOptions, io: Io): strin
   const ended = run.finished ? 'finished' : 'did not finish';
   return [
     `\nRun ${run.run} of ${summary.recipe.name} ${ended}: entry ${run.number} of book ${shownPath(options.book, io)}\n`,
-    numbersTable(summary.numbers.numbers),
+    numbersTable(summary),
     ...summary.numbers.absent.map((text) => `${wrapped(`not published: ${text}`, 100, 2, 2)}\n`),
     plateList(summary, io),
     suggestions(summary, options, io),
@@ -22,18 +22,29 @@ export function runText(summary: RunSummary, options: RunOptions, io: Io): strin
     .join('\n');
 }
 
-/** Number, value with its 68 % interval, unit, truth, entry. */
-function numbersTable(numbers: readonly PublishedNumber[]): string {
+/** Number, value with its 68 % interval, unit, truth, entry. What depends on something withdrawn is marked. */
+function numbersTable({ numbers: { numbers }, withdrawn }: RunSummary): string {
   if (numbers.length === 0) return '';
   const withTruth = numbers.some((number) => number.against !== null);
   const head = ['', 'value', '68 % interval', 'unit', ...(withTruth ? ['truth'] : []), 'entry'];
-  const rows = numbers.map((number) => {
+  const marks = withdrawn.map((by) => (by.length > 0 ? WITHDRAWN : ''));
+  const rows = numbers.map((number, i) => {
     const { value, low, high } = roundedNumber(number.value, number.low, number.high);
     const interval = low === null || high === null ? '' : `${low} to ${high}`;
     const truth = number.against === null ? '' : roundedLike(number.against.value, value);
-    return [number.name, value, interval, number.unit, ...(withTruth ? [truth] : []), String(number.entry)];
+    return [
+      number.name,
+      `${marks[i]}${value}`,
+      interval,
+      number.unit,
+      ...(withTruth ? [truth] : []),
+      String(number.entry),
+    ];
   });
-  return `${alignedRows([head, ...rows], [false, true, false, false, withTruth, true])}\n`;
+  const table = alignedRows([head, ...rows], [false, true, false, false, withTruth, true]);
+  const by = [...new Set(withdrawn.flat())].sort((a, b) => a - b);
+  const note = `${WITHDRAWN} depends on something withdrawn: does not stand any more (entry ${by.join(', ')})`;
+  return by.length === 0 ? `${table}\n` : `${table}\n\n${wrapped(note, 100, 2, 2)}\n`;
 }
 
 function alignedRows(rows: readonly (readonly string[])[], right: readonly boolean[]): string {

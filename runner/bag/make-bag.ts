@@ -93,7 +93,7 @@ function payloadFiles(request: BagRequest): BagFiles {
     digestOf,
   });
   const described = describePayload(gathered, planned, programVersion);
-  const page = pageText({ gathered, payload: planned, programVersion, proven: proofs.documents.size > 0 });
+  const page = pageText({ gathered, payload: planned, programVersion, seal: proofs.seal });
   return { payload: { ...planned, files: described }, page };
 }
 

@@ -2,26 +2,27 @@
 
 import { type Gathered, withdrawalsIn } from './gather.ts';
 import type { AbsentInput, Payload, PayloadFile } from './payload.ts';
+import type { Proofs } from './proofs.ts';
 
 export interface PageRequest {
   readonly gathered: Gathered;
   readonly payload: Payload;
   readonly programVersion: string;
-  /** Whether proofs are in the bag. */
-  readonly proven: boolean;
+  /** What the proofs in the bag rest on; null without proofs. */
+  readonly seal: Proofs['seal'];
 }
 
 /** The page, lines of at most 100 characters but for names. */
 export function pageText(request: PageRequest): string {
-  const { gathered, payload, proven } = request;
+  const { gathered, payload, seal } = request;
   return [
     ...heading(request),
     ...withdrawnLines(gathered),
     ...section('What is in it', contentsLines(payload, gathered)),
     ...section('How to check it', checkLines(payload, gathered)),
-    ...(proven
-      ? section('How to check the proofs', proofLines(payload, gathered.subject))
-      : section('Proofs', noProofLines())),
+    ...(seal === null
+      ? section('Proofs', noProofLines())
+      : section('How to check the proofs', proofLines(payload, gathered.subject, seal))),
     ...section('How to compute it again', rerunLines(payload)),
     ...section('Whose it is', persons(gathered)),
   ].join('\n');
@@ -124,7 +125,11 @@ function checkLines(payload: Payload, gathered: Gathered): string[] {
   ];
 }
 
-function proofLines(payload: Payload, subject: number): string[] {
+function proofLines(
+  payload: Payload,
+  subject: number,
+  { entries, time }: NonNullable<Proofs['seal']>,
+): string[] {
   const scripts = payload.files.flatMap(({ role, path }) => (role === 'checker' ? [path] : []));
   const call = (path: string) =>
     `  ${path.endsWith('.py') ? 'python3' : 'node'} ${path} data/proofs/${subject}.json`;
@@ -132,6 +137,10 @@ function proofLines(payload: Payload, subject: number): string[] {
     'Each file in data/proofs/ shows that an entry is under the signed seal of the book, data/seal.txt (a',
     'C2SP checkpoint; tree hashes as in RFC 9162, signature Ed25519). A seal that was printed or published',
     'elsewhere fixes everything before it. Hold the key against one that you have from the keeper of the book.',
+    '',
+    `The proofs rest on the seal of ${entries} entries, of ${time}: the latest when the bag was made.`,
+    'A bag that is made when the book has grown rests on a later seal. It differs in the proofs, the seal, what',
+    'names them, and what was said of the entries since; every other file is the same.',
     ...(scripts.length === 0
       ? []
       : ['', 'To check one with nothing but Node or Python:', '', ...scripts.map(call)]),

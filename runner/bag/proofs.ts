@@ -11,7 +11,7 @@ import { existsSync, readFileSync } from 'node:fs';
 import { join } from 'node:path';
 import type { Book } from '../../ledger/book.ts';
 import { LedgerProblem } from '../../ledger/problem.ts';
-import { checkProof, type ProofDocument, prove } from '../../ledger/proof.ts';
+import { checkProof, type ProofDocument, prove, type SignedSeal, signedSeal } from '../../ledger/proof.ts';
 import { sourceRoot } from '../program.ts';
 import type { CheckedBag } from './check-bag.ts';
 import type { Gathered } from './gather.ts';
@@ -25,6 +25,8 @@ const LARGEST_PROOF = 1 << 25;
 export interface Proofs {
   /** The text of each entry's proof, by number. */
   readonly documents: ReadonlyMap<number, string>;
+  /** What they rest on; null without proofs. */
+  readonly seal: Pick<SignedSeal, 'entries' | 'time'> | null;
   /** The seal, and the scripts that check a proof. */
   readonly beside: PayloadRequest['texts'];
 }
@@ -34,30 +36,21 @@ export function proofPath(number: number): string {
   return `data/proofs/${number}.json`;
 }
 
-/** Proofs of gathered entries under the latest seal; none where the book has no signed seal yet.
- *  @throws LedgerProblem 'ledger-damaged' */
+/** Proofs of gathered entries under the latest seal; none where the book has no signed seal yet. The seal is read once:
+ *  others may append meanwhile. @throws LedgerProblem 'ledger-damaged' */
 export function proofsOf(book: Book, { entries }: Gathered): Proofs {
-  const documents = new Map<number, string>();
-  let checkpoint = '';
-  for (const { entry } of entries) {
-    const proof = proofOf(book, entry.number);
-    if (proof === null) return { documents: new Map(), beside: [] };
-    checkpoint = proof.checkpoint;
-    documents.set(entry.number, `${JSON.stringify(proof, null, 2)}\n`);
-  }
-  const seal = {
-    path: SEAL,
-    role: 'proof' as const,
-    entry: null,
-    text: checkpoint,
-    about: 'The seal of the book',
-  };
-  return { documents, beside: [seal, ...checkers()] };
+  const seal = latestSeal(book);
+  if (seal === null) return { documents: new Map(), seal, beside: [] };
+  const proofOf = (number: number) => `${JSON.stringify(prove(book, number, seal), null, 2)}\n`;
+  const documents = new Map(entries.map(({ entry: { number } }) => [number, proofOf(number)]));
+  const about = 'The seal of the book';
+  const text = { path: SEAL, role: 'proof' as const, entry: null, text: seal.note, about };
+  return { documents, seal, beside: [text, ...checkers()] };
 }
 
-function proofOf(book: Book, number: number): ProofDocument | null {
+function latestSeal(book: Book): SignedSeal | null {
   try {
-    return prove(book, number);
+    return signedSeal(book.directory);
   } catch (error) {
     if (error instanceof LedgerProblem && error.code === 'no-proof') return null;
     throw error;

@@ -10,7 +10,7 @@ import { plain } from './entry-text.ts';
 const LABELS = 11;
 const INDENT = LABELS + 4;
 /** Stands before a value that depends on something withdrawn. */
-const WITHDRAWN = '†';
+export const WITHDRAWN = '†';
 
 /** The whole text, ending in a line feed. @param columns  of the terminal; 80 to 100 are used */
 export function diffText(document: DiffDocument, columns: number): string {

@@ -4,6 +4,7 @@ import { realpathSync } from 'node:fs';
 import { basename, dirname, isAbsolute, join, normalize, relative, resolve } from 'node:path';
 import { type Book, openBook } from '../../ledger/book.ts';
 import type { RunEntry, StoredFile } from '../../ledger/entry.ts';
+import { withdrawalsOfNumber } from '../../ledger/withdrawal.ts';
 import { stageKinds } from '../../stages/kinds.ts';
 import type { CommonOptions, ExitStatus, Io } from '../command.ts';
 import { keyFile, writer } from '../configuration.ts';
@@ -33,6 +34,8 @@ export interface RunSummary {
   readonly outcomes: readonly Outcome[];
   readonly plates: readonly Plate[];
   readonly numbers: PublishedNumbers;
+  /** Of each number, the entries of the withdrawals that it depends on: made while the run went on. */
+  readonly withdrawn: readonly (readonly number[])[];
   readonly files: readonly string[];
 }
 
@@ -86,7 +89,8 @@ async function runRecipe(
     book,
   );
   const files = numbers.numbers.length === 0 ? [] : layNumbers(request, run.run, numbers.numbers);
-  return { run, recipe, outcomes, plates, numbers, files };
+  const withdrawn = numbers.numbers.map(({ entry }) => withdrawalsOfNumber(book, run.number, entry));
+  return { run, recipe, outcomes, plates, numbers, withdrawn, files };
 }
 
 /** A stage of a recipe as the executor takes it. @param folder  the recipe's own */
@@ -150,7 +154,7 @@ function recordedPath(given: string, folder: string): string {
 
 /** The document of design section 7. */
 function runDocument(summary: RunSummary, book: Book) {
-  const { run, recipe, outcomes, plates, numbers } = summary;
+  const { run, recipe, outcomes, plates, numbers, withdrawn } = summary;
   return {
     run: run.run,
     entry: run.number,
@@ -174,7 +178,7 @@ function runDocument(summary: RunSummary, book: Book) {
       error: outcome.error,
     })),
     plates,
-    numbers: numbers.numbers.map(({ name, value, low, high, unit, entry, against }) => ({
+    numbers: numbers.numbers.map(({ name, value, low, high, unit, entry, against }, i) => ({
       name,
       value,
       low,
@@ -182,6 +186,7 @@ function runDocument(summary: RunSummary, book: Book) {
       unit,
       entry,
       against,
+      withdrawn: withdrawn[i],
     })),
     absent: numbers.absent,
   };

@@ -17,7 +17,7 @@ import { findRunNamed, findSubject } from '../../ledger/subject.ts';
 import { trace } from '../../ledger/trace.ts';
 import { withdrawalsUpstream, withdrawnUpstream } from '../../ledger/withdrawal.ts';
 import { fillBook } from './lantern-book.ts';
-import { keyFile, makeBook, stageDraft, temporary } from './make-book.ts';
+import { keyFile, makeBook, runDraft, stageDraft, temporary } from './make-book.ts';
 
 let directory: string;
 let remove: () => void;
@@ -88,6 +88,20 @@ describe('a withdrawal', () => {
     withdraw(9);
     expect(findPlate(book, { plate, name, mark })).toBeUndefined();
     expect(book.findStage(keyOf(7))?.number).toBe(7);
+  });
+
+  test('of a run reaches the plates that no run which stands has published', () => {
+    // By hand from lantern-book.ts: entry 10 is the run that published plates 8 and 9. Another publishes 9 again.
+    const { name, plate } = book.entry(9) as PlateEntry;
+    const again = book.append(runDraft(book, [7], { plates: [{ name, plate, entry: 9 }] })).entry.number;
+    const first = withdraw(10);
+    const of = () => [8, 9].map((number) => withdrawalsUpstream(book, number));
+    expect(of()).toEqual([[first], []]);
+    const second = withdraw(again);
+    expect(of()).toEqual([[first], [first, second]]);
+    withdraw(first, 'it was the other run');
+    expect(of()).toEqual([[], []]);
+    expect(withdrawalsUpstream(book, 7)).toEqual([]);
   });
 
   test('counts no more once it is withdrawn itself, and again once that is', () => {

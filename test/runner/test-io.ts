@@ -10,8 +10,12 @@ export interface Said {
   readonly err: string;
 }
 
-/** Runs the command line with these words in a folder. */
-export async function platebook(cwd: string, words: readonly string[]): Promise<Said> {
+/** Runs the command line with these words in a folder. @param heard  is told what goes to standard error */
+export async function platebook(
+  cwd: string,
+  words: readonly string[],
+  heard: (text: string) => void = () => {},
+): Promise<Said> {
   let out = '';
   let err = '';
   const io: Io = {
@@ -20,6 +24,7 @@ export async function platebook(cwd: string, words: readonly string[]): Promise<
     },
     err: (text) => {
       err += text;
+      heard(text);
     },
     errorStream: new PassThrough(),
     cwd,

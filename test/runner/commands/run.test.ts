@@ -1,7 +1,8 @@
-import { copyFileSync, existsSync, readFileSync, writeFileSync } from 'node:fs';
+import { copyFileSync, cpSync, existsSync, readFileSync, writeFileSync } from 'node:fs';
 import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { beforeAll, describe, expect, it } from 'vitest';
+import { openBook } from '../../../ledger/book.ts';
 import { readPngText } from '../../../runner/plates/png-text.ts';
 import { stageKinds } from '../../../stages/kinds.ts';
 import { document, platebook } from '../test-io.ts';
@@ -81,6 +82,27 @@ describe('run, trace, diff, rerun and audit on the small recipe', () => {
       first.plates.map(({ plate }) => plate),
     );
     expect(first.plates.map(({ path }) => readFileSync(path))).toEqual(before);
+  });
+
+  it('marks numbers on which something was withdrawn while the run went on', async () => {
+    const copy = temporaryFolder();
+    cpSync(join(folder, 'book'), join(copy, 'book'), { recursive: true });
+    const features = first.stages.find(({ stage }) => stage === 'features')?.entry ?? 0;
+    let withdrawal = 0;
+    const { out } = await platebook(copy, ['run', recipe], (text) => {
+      if (!text.startsWith('  features ')) return;
+      const book = openBook(join(copy, 'book'), { by: { name: 'B. Reader' } });
+      withdrawal = book.append({ type: 'withdrawal', withdraws: features, reason: 'wrong radius' }).entry
+        .number;
+      book.close();
+    });
+    expect(out).toMatch(/^ {2}ring-diameter +†\d/m);
+    const note = `† depends on something withdrawn: does not stand any more (entry ${withdrawal})`;
+    expect(out).toContain(`\n\n  ${note}\n`);
+    const of = new Map(first.numbers.map(({ name, entry }) => [name, entry]));
+    for (const line of out.split('\n').filter((each) => of.has(each.trim().split(/ +/)[0] ?? ''))) {
+      expect(line.includes('†'), line).toBe(of.get(line.trim().split(/ +/)[0] ?? '') === features);
+    }
   });
 
   it('gives the same bytes afresh, on one core, in another time zone and locale', async () => {
