@@ -8,9 +8,9 @@ import { fileURLToPath } from 'node:url';
 import { afterEach, beforeEach, describe, expect, test } from 'vitest';
 import { audit } from '../../ledger/audit.ts';
 import { type Book, openBook } from '../../ledger/book.ts';
-import { keyFile, makeBook, runDraft, stageDraft, temporary } from './make-book.ts';
+import { keyFile, makeBook, runDraft, stageDraft, temporary } from '../ledger/make-book.ts';
 
-const APPEND_MANY = fileURLToPath(new URL('./append-many.ts', import.meta.url));
+const APPEND_MANY = fileURLToPath(new URL('../ledger/append-many.ts', import.meta.url));
 
 let directory: string;
 let remove: () => void;

@@ -4,8 +4,8 @@ import { dirname, join } from 'node:path';
 import { setTimeout } from 'node:timers/promises';
 import { fileURLToPath } from 'node:url';
 import { expect, it } from 'vitest';
-import { document, platebook } from './test-io.ts';
-import { temporaryFolder } from './test-jobs.ts';
+import { document, platebook } from '../runner/test-io.ts';
+import { temporaryFolder } from '../runner/test-jobs.ts';
 
 const root = dirname(dirname(dirname(fileURLToPath(import.meta.url))));
 const recipe = join(root, 'recipes', 'lantern', 'small.yaml');
