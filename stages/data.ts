@@ -35,6 +35,45 @@ export interface Visibilities {
   readonly sigma: Float64Array;
   /** Radians; thermal sigma/|V| with the error budget; pi when the amplitude is nothing. */
   readonly sigmaPhase: Float64Array;
+  /** What optical arrays measure instead of, or beside, the rows above. */
+  readonly squared?: SquaredVisibilities;
+  readonly triples?: TripleProducts;
+}
+
+/** Squared visibilities over the square of the total flux: 1 for a point. Indices, scans and times as in `Visibilities`. */
+export interface SquaredVisibilities {
+  readonly count: number;
+  readonly station1: Int32Array;
+  readonly station2: Int32Array;
+  readonly scan: Int32Array;
+  readonly timeMjd: Float64Array;
+  /** Wavelengths. */
+  readonly u: Float64Array;
+  readonly v: Float64Array;
+  /** May be negative: the estimate is unbiased. */
+  readonly value: Float64Array;
+  readonly sigma: Float64Array;
+}
+
+/** Triple products V(u1,v1) V(u2,v2) conj(V(u1+u2, v1+v2)) over the cube of the total flux, of stations 1, 2 and 3. */
+export interface TripleProducts {
+  readonly count: number;
+  readonly station1: Int32Array;
+  readonly station2: Int32Array;
+  readonly station3: Int32Array;
+  readonly scan: Int32Array;
+  readonly timeMjd: Float64Array;
+  /** Wavelengths; from station 1 to 2, and from 2 to 3. */
+  readonly u1: Float64Array;
+  readonly v1: Float64Array;
+  readonly u2: Float64Array;
+  readonly v2: Float64Array;
+  readonly amplitude: Float64Array;
+  /** Infinity where there is no amplitude. */
+  readonly sigmaAmplitude: Float64Array;
+  /** Radians. */
+  readonly phase: Float64Array;
+  readonly sigmaPhase: Float64Array;
 }
 
 /** A square-pixelled image of the sky in FITS pixel order: x fastest, x index rising to the west, y index rising to

@@ -12,7 +12,8 @@ export const fit = {
     'is sampled by Hamiltonian chains over flux, coefficients and gains. For complex visibilities with a fixed centroid ' +
     'and without positivity it is a Gaussian in closed form.',
   source:
-    'Thompson, Moran & Swenson, 3rd ed., sections 9.3 (amplitudes under noise), 10.3 (closures) and 11.4; marginalised ' +
+    'Thompson, Moran & Swenson, 3rd ed., sections 9.3 (amplitudes under noise), 10.3 (closures) and 11.4; squared ' +
+    'visibilities and triple products: Duvert, Young & Hummel 2017, Astron. Astrophys. 597, A8; marginalised ' +
     'nuisances: Golub & Pereyra 1973, SIAM J. Numer. Anal. 10, 413; choice by held-out data: Hastie, Tibshirani & ' +
     'Friedman, The Elements of Statistical Learning, 2nd ed., section 7.10; sampler: Neal 2011, Handbook of Markov Chain ' +
     'Monte Carlo, ch. 5; its diagnostics: Vehtari et al. 2021, Bayesian Analysis 16, 667.',
@@ -25,11 +26,39 @@ export const fit = {
   },
   parameters: {
     data: {
-      type: 'word',
-      words: [
-        'closure-phases-and-amplitudes',
-        'complex-visibilities',
-        'closure-phases-and-log-closure-amplitudes',
+      type: 'either',
+      of: [
+        {
+          type: 'word',
+          words: [
+            'closure-phases-and-amplitudes',
+            'complex-visibilities',
+            'closure-phases-and-log-closure-amplitudes',
+          ],
+          doc: 'A usual combination.',
+        },
+        {
+          type: 'list',
+          of: {
+            type: 'word',
+            words: [
+              'complex-visibilities',
+              'amplitudes',
+              'closure-phases',
+              'log-closure-amplitudes',
+              'squared-visibilities',
+              'triple-phases',
+              'triple-amplitudes',
+            ],
+            doc: 'One term.',
+          },
+          least: 1,
+          most: 2,
+          doc:
+            'One term that takes phases (closure phases, triple phases), one that takes amplitudes, or one of both: what ' +
+            'would count a measurement twice is refused. Optical data (squared visibilities, triple products) are normalised ' +
+            'and need a stated flux, such as 1 Jy.',
+        },
       ],
       default: 'closure-phases-and-amplitudes',
       doc: 'Data terms. Amplitudes come with one gain per station and scan as a nuisance.',
@@ -59,7 +88,9 @@ export const fit = {
       from: 1e-6,
       to: 1e6,
       optional: true,
-      doc: 'Prior mean of the compact flux; estimated from amplitudes when absent. Needed for closures alone.',
+      doc:
+        'Prior mean of the compact flux; estimated from amplitudes when absent. Needed where no data term sees the flux (closures ' +
+        'alone, optical data): the image then has that flux.',
     },
     fluxPrior: {
       type: 'number',
@@ -105,7 +136,9 @@ export const fit = {
       from: 0,
       to: 100,
       default: 2.5,
-      doc: 'Least signal-to-noise of visibilities in closure phases; at least 4 in log closure amplitudes.',
+      doc:
+        'Least signal-to-noise of visibilities in closure phases; at least 4 in log closure amplitudes. Triple phases enter up ' +
+        'to an error of its inverse in radians. The report counts what each cut takes out.',
       why: 'Below it phase errors are no longer Gaussian, and log amplitudes are biased by the cut itself.',
     },
     centroid: {
@@ -168,15 +201,15 @@ export const fit = {
           type: 'integer',
           from: 10,
           to: 100000,
-          default: 150,
+          default: 200,
           doc: 'Trajectories of each chain in a round.',
-          why: 'Of well-mixed chains one round meets the targets.',
+          why: 'Well-mixed chains meet the targets in two rounds.',
         },
         most: {
           type: 'integer',
           from: 10,
           to: 1000000,
-          default: 600,
+          default: 1200,
           doc: 'Trajectories of each chain at most.',
           why: 'Chains that do not agree by then have more than one mode to visit.',
         },
@@ -184,17 +217,17 @@ export const fit = {
           type: 'number',
           from: 1,
           to: 2,
-          default: 1.02,
+          default: 1.01,
           doc: 'Largest rank-normalised R-hat of flux and coefficients.',
-          why: 'Of some sixty quantities with some 600 draws the largest is 1.015 by chance alone.',
+          why: 'What Vehtari et al. 2021 recommend.',
         },
         ess: {
           type: 'number',
           from: 1,
           to: 1e6,
-          default: 200,
-          doc: 'Least effective number of draws, of the bulk and of the tails.',
-          why: 'The ends of a 68 % interval are then known to a tenth of a standard deviation.',
+          default: 400,
+          doc: 'Least effective number of draws, of the bulk and of the tails, of the flux and of each coefficient.',
+          why: 'What Vehtari et al. 2021 recommend for four chains.',
         },
       },
     },
@@ -220,7 +253,12 @@ export const fit = {
       doc: 'Draws of flux and coefficients, over all places of the centroid.',
     },
     residuals: { format: 'json', doc: 'Data with model and error, row by row and closure by closure.' },
-    report: { format: 'json', doc: 'Chi-squares, choice of components, gains, starts, what was assumed.' },
+    report: {
+      format: 'json',
+      doc:
+        'Chi-squares by term and by station, choice of components with its curve, gains, starts and the minima they found, what ' +
+        'cuts took out, the fit without each station, held-out baselines, the sampler, what was assumed.',
+    },
     models: {
       format: 'json',
       doc:

@@ -1,17 +1,20 @@
-/** The output `report`: chi-squares with their degrees of freedom, choice of components, gains, starts, assumptions; and
- *  the warnings that go to the entry. */
+/** The output `report`: chi-squares with their degrees of freedom, by term and by station, choice of components, gains,
+ *  starts, cuts, what is left out and held out, assumptions; and the warnings that go to the entry. */
 
 import type { Posterior } from '../data.ts';
 import { placeAt, slopesAt } from '../imaging/centroid.ts';
-import { componentsOf, imageAt, type Slopes } from '../imaging/linear-model.ts';
+import { countCuts } from '../imaging/cuts.ts';
+import { componentsOf, type Slopes } from '../imaging/linear-model.ts';
 import type { FitResult } from '../imaging/run-fit.ts';
 import type { SamplerReport } from '../imaging/sampler.ts';
-import { type FitSettings, fitsCentroid, isLinear } from '../imaging/settings.ts';
+import { type FitSettings, isLinear, measuresFlux } from '../imaging/settings.ts';
 import { makeExpansion, mirror, type Term } from '../imaging/term.ts';
 import { cholesky, invertCholesky } from '../numerics/linear.ts';
-import { normalQuantile, quantiles } from '../numerics/statistics.ts';
 import { UAS_PER_RADIAN } from './flux-numbers.ts';
-import type { FitResiduals } from './residuals.ts';
+import type { HeldOut, LeftOutStation } from './left-out.ts';
+import { negativeFlux } from './negative-flux.ts';
+import { stationReports } from './station-report.ts';
+import { cutWarnings, findWarnings, leftOutWarnings, samplerWarnings } from './warnings.ts';
 
 export interface TermReport {
   readonly term: string;
@@ -24,25 +27,27 @@ export interface TermReport {
   readonly reducedChiSquare: number;
 }
 
-/** Reduced chi-square above which the components are too few (common practice). */
-const LARGEST_CHI_SQUARE = 1.5;
-/** Part of the flux in negative pixels above which a warning is given. */
-const LARGEST_NEGATIVE = 0.05;
-/** Starts that end so much above the best are false minima. */
-const FALSE_MINIMUM = 1;
+/** What was looked at besides the fit itself. */
+export interface Checks {
+  readonly sampler?: SamplerReport | null;
+  readonly leftOut?: readonly LeftOutStation[];
+  readonly heldOut?: HeldOut | null;
+}
 
 export function makeReport(
   result: FitResult,
   settings: FitSettings,
   posterior: Posterior,
-  residuals: FitResiduals,
-  sampler: SamplerReport | null,
+  { sampler = null, leftOut = [], heldOut = null }: Checks = {},
 ) {
   const { problem, selection, best, choice } = result;
   const terms = termReports(result);
-  const negative = negativeFraction(imageAt(problem.model, problem.basis, best.x));
+  const negative = negativeFlux(result, posterior);
+  const cuts = countCuts(problem, settings);
   const warnings = [
     ...findWarnings(result, settings, terms, posterior, negative),
+    ...cutWarnings(cuts),
+    ...leftOutWarnings(leftOut),
     ...samplerWarnings(sampler),
   ];
   return {
@@ -50,16 +55,30 @@ export function makeReport(
     /** What a fit of like data needs to be made the same way. */
     settings: usedSettings(result, settings),
     remark: problem.data.remark,
-    rows: { fitted: selection.data.count, tooShort: selection.tooShort, tooLong: selection.tooLong },
+    rows: {
+      fitted: selection.data.count,
+      squaredVisibilities: selection.data.squared?.count ?? 0,
+      tripleProducts: selection.data.triples?.count ?? 0,
+      tooShort: selection.tooShort,
+      tooLong: selection.tooLong,
+    },
+    cuts,
     resolutionRadians: problem.basis.resolutionRadians,
     components: componentsOf(problem.model, best.x),
     choice,
     terms,
-    optimum: { cost: best.cost, converged: best.converged, negativeFraction: negative },
+    optimum: { cost: best.cost, converged: best.converged, negativeFraction: negative.optimum },
+    negativeFlux: negative,
     starts: result.starts,
+    modes: result.modes.map(({ starts, ...mode }) => ({
+      ...mode,
+      starts: starts.map((start) => result.starts[start].start),
+    })),
     flux: {
       priorMean: problem.model.flux,
-      priorDeviation: problem.model.scales[0],
+      priorDeviation: problem.model.flux * settings.fluxPrior,
+      /** Else it is what was stated, and its interval that of the prior. */
+      measured: measuresFlux(settings),
       source: result.fluxSource,
       totalMeasured: selection.totalFlux,
     },
@@ -76,7 +95,9 @@ export function makeReport(
         deviations,
       })),
     },
-    stationResiduals: stationResiduals(residuals),
+    stations: stationReports(result, settings, terms),
+    leftOut,
+    heldOut,
     warnings,
   };
 }
@@ -145,123 +166,4 @@ function posteriorMethod(settings: FitSettings): string {
   return isLinear(settings)
     ? 'exact: the model is linear and errors and prior are Gaussian; the image is mean and maximum of the posterior'
     : 'Gaussian of the Gauss-Newton curvature at the maximum (Laplace); the image is the maximum of the posterior';
-}
-
-function samplerWarnings(sampler: SamplerReport | null): string[] {
-  if (sampler === null) return [];
-  const { rHat, essBulk, essTail, targets, met, divergences, draws } = sampler;
-  const warnings: string[] = [];
-  if (!met) {
-    warnings.push(
-      `the chains do not meet their targets after ${draws} draws: R-hat ${rHat.toFixed(3)} (at most ${targets.rHat}), ` +
-        `effective draws ${essBulk.toFixed(0)} of the bulk and ${essTail.toFixed(0)} of the tails (at least ${targets.ess})`,
-    );
-  }
-  if (divergences > 0) warnings.push(`${divergences} of ${draws} trajectories of the sampler went astray`);
-  return warnings;
-}
-
-/** Flux in negative pixels over the total. */
-export function negativeFraction(pixels: Float64Array): number {
-  let negative = 0;
-  let total = 0;
-  for (const value of pixels) {
-    total += value;
-    if (value < 0) negative -= value;
-  }
-  return total > 0 ? negative / total : 1;
-}
-
-function findWarnings(
-  result: FitResult,
-  settings: FitSettings,
-  terms: readonly TermReport[],
-  posterior: Posterior,
-  negative: number,
-): string[] {
-  const { best, widenings, starts, stationGains } = result;
-  const warnings: string[] = [];
-  const percent = (value: number) => `${(100 * value).toFixed(0)} %`;
-  if (!best.converged) warnings.push('the search for the optimum did not converge within its limit of steps');
-  for (const { station, median, from, to } of widenings) {
-    warnings.push(
-      `station ${station} lies far off: median log gain ${median.toFixed(3)} under a prior of ${from}; its prior was widened to ${to.toFixed(2)}`,
-    );
-  }
-  for (const { station, median, prior } of stationGains) {
-    if (Math.abs(median) > 2 * prior) {
-      warnings.push(
-        `station ${station}: median log gain ${median.toFixed(3)} exceeds twice its prior of ${prior}`,
-      );
-    }
-  }
-  if (result.selection.tooLong > 0) {
-    warnings.push(
-      `${result.selection.tooLong} rows were left out: their baselines see finer structure than the resolution of the basis`,
-    );
-  }
-  const flux = fluxAboveTotal(result, settings, posterior);
-  if (flux !== null) warnings.push(flux);
-  const isFixed = settings.data === 'complex-visibilities' && !fitsCentroid(settings);
-  const offCentre = isFixed ? ', or one off the phase centre, where `centroid: fixed` holds it' : '';
-  for (const { term, reducedChiSquare } of terms) {
-    if (reducedChiSquare > LARGEST_CHI_SQUARE) {
-      warnings.push(
-        `reduced chi-square of the ${term} is ${reducedChiSquare.toFixed(2)}: too few components, errors stated too small, or a source that the library does not hold${offCentre}`,
-      );
-    }
-  }
-  if (negative > LARGEST_NEGATIVE) {
-    warnings.push(`${percent(negative)} of the flux stands in negative pixels: raise \`positivity\``);
-  }
-  const lowest = Math.min(...starts.map(({ cost }) => cost));
-  const high = starts.filter(({ cost }) => cost > lowest + FALSE_MINIMUM).length;
-  if (high > 0) warnings.push(`${high} of ${starts.length} starts ended in a minimum above the best`);
-  return warnings;
-}
-
-/** The implied compact flux must not exceed the flux of all scales, which the shortest baselines measure up to the
- *  gains of two stations. */
-function fluxAboveTotal(
-  { selection }: FitResult,
-  settings: FitSettings,
-  posterior: Posterior,
-): string | null {
-  const { totalFlux } = selection;
-  if (totalFlux === null) return null;
-  const [low, median] = quantiles(posterior.flux, [(1 - 0.95) / 2, 0.5]);
-  const upper = totalFlux * (1 + normalQuantile(0.975) * Math.SQRT2 * settings.gainPriors.usual);
-  return low > totalFlux || median > upper
-    ? `the implied compact flux of ${median.toFixed(3)} Jy exceeds the ${totalFlux.toFixed(3)} Jy that the shortest baselines measure in all: the image holds flux that is not there`
-    : null;
-}
-
-/** Rms of the normalised residuals of amplitudes and closure phases that a station takes part in. */
-function stationResiduals(residuals: FitResiduals) {
-  const { visibilities: rows, closurePhases: phases } = residuals;
-  return residuals.stations.flatMap((station, index) => {
-    const amplitude: number[] = [];
-    rows.amplitude.forEach((value, r) => {
-      if (rows.station1[r] === index || rows.station2[r] === index) {
-        amplitude.push((value - rows.modelAmplitude[r]) / rows.sigma[r]);
-      }
-    });
-    const phase = phases.residualDegrees
-      .map((value, t) => value / phases.sigmaDegrees[t])
-      .filter((_, t) => phases.stations[t].includes(index));
-    if (amplitude.length === 0) return [];
-    return [
-      {
-        station,
-        amplitudes: amplitude.length,
-        amplitudeRms: rms(amplitude),
-        closurePhases: phase.length,
-        closurePhaseRms: phase.length > 0 ? rms(phase) : null,
-      },
-    ];
-  });
-}
-
-function rms(values: readonly number[]): number {
-  return Math.sqrt(values.reduce((sum, value) => sum + value * value, 0) / values.length);
 }

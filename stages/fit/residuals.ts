@@ -3,7 +3,10 @@
 
 import type { Visibilities } from '../data.ts';
 import type { ScanGains } from '../imaging/amplitude-term.ts';
+import type { DataKind } from '../imaging/data-terms.ts';
 import type { ModelVisibilities } from '../imaging/linear-model.ts';
+import { productAt } from '../imaging/optical-terms.ts';
+import { pointsOf } from '../imaging/points.ts';
 import { riceMean } from '../imaging/rice.ts';
 import {
   type Closure,
@@ -16,7 +19,7 @@ import { exp } from '../numerics/elementary.ts';
 
 export interface FitResiduals {
   /** Data terms of the fit, as the parameter names them. */
-  readonly data: string;
+  readonly data: DataKind;
   readonly stations: readonly string[];
   /** One value per row; rows are those of the fit. */
   readonly visibilities: {
@@ -56,12 +59,35 @@ export interface FitResiduals {
     readonly sigma: readonly number[];
     readonly model: readonly number[];
   };
+  /** Over the square of the total flux; absent where the fit has none. */
+  readonly squaredVisibilities?: {
+    readonly u: Float64Array;
+    readonly v: Float64Array;
+    readonly station1: Int32Array;
+    readonly station2: Int32Array;
+    readonly scan: Int32Array;
+    readonly value: Float64Array;
+    readonly sigma: Float64Array;
+    readonly model: Float64Array;
+  };
+  /** All, also those that do not enter; absent where the fit has none. */
+  readonly tripleProducts?: {
+    readonly stations: readonly (readonly number[])[];
+    readonly scan: Int32Array;
+    readonly phaseDegrees: Float64Array;
+    readonly sigmaDegrees: readonly (number | null)[];
+    readonly modelDegrees: Float64Array;
+    readonly amplitude: Float64Array;
+    /** Null where there is no amplitude. */
+    readonly sigmaAmplitude: readonly (number | null)[];
+    readonly modelAmplitude: Float64Array;
+  };
 }
 
 const DEGREES = 180 / Math.PI;
 
 export function makeResiduals(
-  kind: string,
+  kind: DataKind,
   data: Visibilities,
   sets: readonly ClosureSet[],
   at: ModelVisibilities,
@@ -82,11 +108,51 @@ export function makeResiduals(
       modelAmplitude: modelAmplitudes(data, at, gains),
       re: data.re,
       im: data.im,
-      modelRe: at.re,
-      modelIm: at.im,
+      modelRe: at.re.subarray(0, data.count),
+      modelIm: at.im.subarray(0, data.count),
     },
     closurePhases: closurePhases(data, sets, at),
     logClosureAmplitudes: logClosureAmplitudes(data, sets, at),
+    ...squaredVisibilities(data, at),
+    ...tripleProducts(data, at),
+  };
+}
+
+function squaredVisibilities(
+  data: Visibilities,
+  at: ModelVisibilities,
+): Pick<FitResiduals, 'squaredVisibilities'> {
+  const { squared: from, origin } = pointsOf(data);
+  if (!data.squared) return {};
+  const { count: _, timeMjd: __, ...columns } = data.squared;
+  const model = columns.value.map((_value, m) =>
+    productAt({ points: [from + m, origin], powers: [2, -2] }, at, 'amplitude'),
+  );
+  return { squaredVisibilities: { ...columns, model } };
+}
+
+function tripleProducts(data: Visibilities, at: ModelVisibilities): Pick<FitResiduals, 'tripleProducts'> {
+  const { triples: from, origin } = pointsOf(data);
+  if (!data.triples) return {};
+  const { station1, station2, station3, scan, phase, sigmaPhase, amplitude, sigmaAmplitude } = data.triples;
+  const points = (t: number) => [from + 3 * t, from + 3 * t + 1, from + 3 * t + 2];
+  const finite = (values: Float64Array, scale: number) =>
+    Array.from(values, (value) => (Number.isFinite(value) ? value * scale : null));
+  return {
+    tripleProducts: {
+      stations: Array.from(station1, (first, t) => [first, station2[t], station3[t]]),
+      scan,
+      phaseDegrees: phase.map((value) => value * DEGREES),
+      sigmaDegrees: finite(sigmaPhase, DEGREES),
+      modelDegrees: phase.map(
+        (_, t) => wrapPhase(productAt({ points: points(t), powers: [1, 1, -1] }, at, 'phase')) * DEGREES,
+      ),
+      amplitude,
+      sigmaAmplitude: finite(sigmaAmplitude, 1),
+      modelAmplitude: amplitude.map((_, t) =>
+        productAt({ points: [...points(t), origin], powers: [1, 1, 1, -3] }, at, 'amplitude'),
+      ),
+    },
   };
 }
 

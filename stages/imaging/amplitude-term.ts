@@ -9,7 +9,13 @@
 
 import type { Visibilities } from '../data.ts';
 import { exp } from '../numerics/elementary.ts';
-import { cholesky, invertCholesky, solveCholesky, solveLower } from '../numerics/linear.ts';
+import {
+  applyInverse,
+  applyInverseTransposed,
+  factorise,
+  invertCholesky,
+  solveLower,
+} from '../numerics/linear.ts';
 import type { ModelVisibilities, Slopes } from './linear-model.ts';
 import { riceMean } from './rice.ts';
 import { addResidual, type Expansion, logDerivatives, type Term } from './term.ts';
@@ -34,6 +40,8 @@ export interface AmplitudeTerm extends Term {
  *  part of the cost here. In the order of the scans and, in each, of its stations, as `gains` gives them. */
 export interface ExplicitGains {
   readonly count: number;
+  /** Standard deviation of each gain's prior. */
+  readonly scales: Float64Array;
   /** From what `gains` gives. */
   whitened(gains: readonly ScanGains[]): Float64Array;
   /** The cost of the data; adds its derivatives by the visibilities and by h. */
@@ -161,6 +169,7 @@ function explicitGains(
   const factors = new Float64Array(count);
   return {
     count,
+    scales,
     whitened: (gains) =>
       Float64Array.from(
         gains.flatMap(({ stations, logGains }) =>
@@ -243,15 +252,15 @@ function solveGains(
     scan.rows,
     (r) => Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r],
   );
-  const H = new Float64Array(n * n);
-  const gradient = new Float64Array(n);
-  let L: Float64Array = new Float64Array(n * n);
+  const L = new Float64Array(n * n);
+  const change = new Float64Array(n);
+  const profile = new Int32Array(n);
   for (let step = 0; step < MOST_STEPS; step++) {
-    H.fill(0);
+    L.fill(0);
     for (let i = 0; i < n; i++) {
       const weight = 1 / (deviations[scan.stations[i]] * deviations[scan.stations[i]]);
-      H[i * n + i] = weight;
-      gradient[i] = weight * g[i];
+      L[i * n + i] = weight;
+      change[i] = weight * g[i];
     }
     for (let m = 0; m < scan.rows.length; m++) {
       const r = scan.rows[m];
@@ -262,15 +271,18 @@ function solveGains(
       residuals[m] = mean - amplitudes[r] / sigma[r];
       const d = nu * slope;
       slopes[m] = d;
-      gradient[i] += residuals[m] * d;
-      gradient[j] += residuals[m] * d;
-      H[i * n + i] += d * d;
-      H[j * n + j] += d * d;
-      H[Math.max(i, j) * n + Math.min(i, j)] += d * d;
+      change[i] += residuals[m] * d;
+      change[j] += residuals[m] * d;
+      L[i * n + i] += d * d;
+      L[j * n + j] += d * d;
+      L[Math.max(i, j) * n + Math.min(i, j)] += d * d;
     }
-    L = cholesky(H, n) ?? L;
-    const change = solveCholesky(L, gradient);
-    const largest = change.reduce((most, value) => Math.max(most, Math.abs(value)), 0);
+    // Of a model that is no number; its cost is none either.
+    if (!factorise(L, n)) break;
+    applyInverse(L, change, profile);
+    applyInverseTransposed(L, change, profile);
+    let largest = 0;
+    for (let i = 0; i < n; i++) largest = Math.max(largest, Math.abs(change[i]));
     if (!(largest > TOLERANCE)) break;
     const scale = Math.min(1, LARGEST_STEP / largest);
     for (let i = 0; i < n; i++) g[i] -= scale * change[i];

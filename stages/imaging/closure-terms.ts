@@ -10,7 +10,7 @@ import {
   logClosureAmplitude,
   wrapPhase,
 } from '../numerics/closures.ts';
-import { atan2, ln } from '../numerics/elementary.ts';
+import { atan, atan2, cos, ln, sin } from '../numerics/elementary.ts';
 import { applyInverse, applyInverseTransposed, cholesky, profileOf, solveLower } from '../numerics/linear.ts';
 import { InternalError } from '../problem.ts';
 import type { ModelVisibilities } from './linear-model.ts';
@@ -32,6 +32,11 @@ interface Block {
   readonly arity: number;
   readonly places: Int32Array;
   readonly signs: Float64Array;
+  /** Cosine and minus the sine of every observed phase. */
+  readonly turns: Float64Array;
+  /** For `addBlockSlope`, by closure and by row. */
+  readonly pull: Float64Array;
+  readonly sums: Float64Array;
 }
 
 export function makeClosurePhaseTerm(data: Visibilities, sets: readonly ClosureSet[]): Term {
@@ -76,10 +81,12 @@ function makeBlock(
     });
   });
   const place = new Map(rows.map((row, m) => [row, m]));
+  const values = Float64Array.from(closures, observe);
   return {
     scan,
     closures,
-    observed: Float64Array.from(closures, observe),
+    observed: values,
+    turns: Float64Array.from(Array.from(values).flatMap((value) => [cos(value), -sin(value)])),
     L,
     rows,
     whitening,
@@ -90,6 +97,8 @@ function makeBlock(
       (row) => place.get(row) ?? -1,
     ),
     signs: Float64Array.from(closures.flatMap((closure) => closure.signs)),
+    pull: new Float64Array(n),
+    sums: new Float64Array(rows.length),
   };
 }
 
@@ -142,7 +151,7 @@ function closureTerm(
       return chiSquare(at) / 2;
     },
     adjoint: (at, out) =>
-      blocks.reduce((cost, block) => cost + addBlockSlope(block, at, out, wrap, part === 'phase'), 0),
+      blocks.reduce((cost, block) => cost + addBlockSlope(block, at, out, part === 'phase'), 0),
     only: (scans) =>
       closureTerm(
         name,
@@ -154,47 +163,72 @@ function closureTerm(
   };
 }
 
-/** Adds a block's derivatives by its visibilities; returns its cost. Each visibility is in several closures: its angle, or
- *  logarithm, is taken once. */
+/** Adds a block's derivatives by its visibilities; returns its cost. */
 function addBlockSlope(
   block: Block,
   at: ModelVisibilities,
   out: ModelVisibilities,
-  wrap: (value: number) => number,
   isPhase: boolean,
 ): number {
-  const { rows, arity, places, signs, observed, L, profile } = block;
-  const values = new Float64Array(rows.length);
-  for (let m = 0; m < rows.length; m++) {
-    const re = at.re[rows[m]];
-    const im = at.im[rows[m]];
-    values[m] = isPhase ? atan2(im, re) : ln(re * re + im * im) / 2;
-  }
-  const pull = new Float64Array(observed.length);
-  for (let t = 0; t < pull.length; t++) {
-    let sum = -observed[t];
-    for (let k = t * arity; k < (t + 1) * arity; k++) sum += signs[k] * values[places[k]];
-    pull[t] = wrap(sum);
-  }
+  const { rows, arity, places, signs, L, profile, pull, sums } = block;
+  if (isPhase) writePhaseDifferences(block, at);
+  else writeLogDifferences(block, at);
   applyInverse(L, pull, profile);
   let cost = 0;
   for (let t = 0; t < pull.length; t++) cost += (pull[t] * pull[t]) / 2;
   applyInverseTransposed(L, pull, profile);
-  values.fill(0);
+  sums.fill(0);
   for (let t = 0; t < pull.length; t++) {
-    for (let k = t * arity; k < (t + 1) * arity; k++) values[places[k]] += signs[k] * pull[t];
+    for (let k = t * arity; k < (t + 1) * arity; k++) sums[places[k]] += signs[k] * pull[t];
   }
   for (let m = 0; m < rows.length; m++) {
     const row = rows[m];
     const re = at.re[row];
     const im = at.im[row];
     const square = re * re + im * im;
-    const scale = square > 0 ? values[m] / square : 0;
+    const scale = square > 0 ? sums[m] / square : 0;
     // d arg V = (re d im - im d re) / |V|^2, d ln|V| = (re d re + im d im) / |V|^2.
     out.re[row] += isPhase ? -scale * im : scale * re;
     out.im[row] += isPhase ? scale * re : scale * im;
   }
   return cost;
+}
+
+/** pull[t] = model less observed phase in (-pi, pi]: the angle of the product of the visibilities, or their conjugates, with
+ *  one of the observed phase taken off. */
+function writePhaseDifferences(
+  { rows, arity, places, signs, pull, turns }: Block,
+  { re, im }: ModelVisibilities,
+): void {
+  for (let t = 0; t < pull.length; t++) {
+    let a = turns[2 * t];
+    let b = turns[2 * t + 1];
+    for (let k = t * arity; k < (t + 1) * arity; k++) {
+      const row = rows[places[k]];
+      const c = re[row];
+      const d = signs[k] > 0 ? im[row] : -im[row];
+      const real = a * c - b * d;
+      b = a * d + b * c;
+      a = real;
+    }
+    pull[t] = a > 0 ? atan(b / a) : atan2(b, a);
+  }
+}
+
+/** Each visibility is in several closures: its logarithm is taken once. */
+function writeLogDifferences(
+  { rows, arity, places, signs, pull, sums, observed }: Block,
+  { re, im }: ModelVisibilities,
+): void {
+  for (let m = 0; m < rows.length; m++) {
+    const [a, b] = [re[rows[m]], im[rows[m]]];
+    sums[m] = ln(a * a + b * b) / 2;
+  }
+  for (let t = 0; t < pull.length; t++) {
+    let sum = -observed[t];
+    for (let k = t * arity; k < (t + 1) * arity; k++) sum += signs[k] * sums[places[k]];
+    pull[t] = sum;
+  }
 }
 
 /** J[t] += whitening[t, m] * slope for every closure t. */

@@ -7,10 +7,17 @@ import { type AmplitudeTerm, makeAmplitudeTerm } from './amplitude-term.ts';
 import { linearPart, placeAt, withPlace } from './centroid.ts';
 import { makeClosurePhaseTerm, makeLogClosureAmplitudeTerm } from './closure-terms.ts';
 import { makeComplexTerm } from './complex-term.ts';
+import { type DataKind, type DataTerm, termsOf } from './data-terms.ts';
 import type { BasisVisibilities, LinearModel } from './linear-model.ts';
 import { makeObjective } from './objective.ts';
+import {
+  chosenTriples,
+  makeSquaredTerm,
+  makeTripleAmplitudeTerm,
+  makeTriplePhaseTerm,
+} from './optical-terms.ts';
 import type { PositivityTerm } from './positivity-term.ts';
-import { type DataKind, type FitSettings, LEAST_AMPLITUDE_SNR } from './settings.ts';
+import { type FitSettings, LEAST_AMPLITUDE_SNR } from './settings.ts';
 import type { Term } from './term.ts';
 
 export interface FitProblem {
@@ -26,26 +33,55 @@ export interface FitProblem {
 }
 
 /** The closures of the rows that enter the fit. */
-export function fitClosures(data: Visibilities, minimumSnr: number): ClosureSet[] {
-  return closureSets(data, {
-    minimumSnr,
-    minimumAmplitudeSnr: Math.max(minimumSnr, LEAST_AMPLITUDE_SNR),
-  });
+export function fitClosures(
+  data: Visibilities,
+  minimumSnr: number,
+  minimumAmplitudeSnr = Math.max(minimumSnr, LEAST_AMPLITUDE_SNR),
+): ClosureSet[] {
+  return closureSets(data, { minimumSnr, minimumAmplitudeSnr });
 }
 
-/** The data terms of a fit. @param deviations  prior of the log gains by station */
+/** The data terms of a fit. @param deviations  prior of the log gains by station
+ *  @param minimumSnr  triple phases of larger errors than its inverse stay out */
 export function makeTerms(
   kind: DataKind,
   data: Visibilities,
   sets: readonly ClosureSet[],
   deviations: Float64Array,
+  minimumSnr = 0,
 ): Term[] {
-  if (kind === 'complex-visibilities') return [makeComplexTerm(data)];
-  const second =
-    kind === 'closure-phases-and-amplitudes'
-      ? makeAmplitudeTerm(data, deviations)
-      : makeLogClosureAmplitudeTerm(data, sets);
-  return [makeClosurePhaseTerm(data, sets), second];
+  return termsOf(kind).map((term) => makeTerm(term, data, sets, deviations, minimumSnr));
+}
+
+function makeTerm(
+  term: DataTerm,
+  data: Visibilities,
+  sets: readonly ClosureSet[],
+  deviations: Float64Array,
+  minimumSnr: number,
+): Term {
+  switch (term) {
+    case 'complex-visibilities':
+      return makeComplexTerm(data);
+    case 'amplitudes':
+      return makeAmplitudeTerm(data, deviations);
+    case 'closure-phases':
+      return makeClosurePhaseTerm(data, sets);
+    case 'log-closure-amplitudes':
+      return makeLogClosureAmplitudeTerm(data, sets);
+    case 'squared-visibilities':
+      return makeSquaredTerm(data);
+    case 'triple-phases':
+      return makeTriplePhaseTerm(data, triplesFor('phase', data, minimumSnr).chosen);
+    case 'triple-amplitudes':
+      return makeTripleAmplitudeTerm(data, triplesFor('amplitude', data, minimumSnr).chosen);
+  }
+}
+
+/** The triple products that enter a fit. Phases of larger errors are not Gaussian; amplitudes are unbiased at any. */
+export function triplesFor(part: 'phase' | 'amplitude', { triples }: Visibilities, minimumSnr: number) {
+  if (!triples) return { chosen: [], noisy: 0, dependent: 0 };
+  return chosenTriples(triples, part, part === 'phase' && minimumSnr > 0 ? 1 / minimumSnr : Number.MAX_VALUE);
 }
 
 export function amplitudeTermOf(terms: readonly Term[]): AmplitudeTerm | null {

@@ -6,6 +6,7 @@ import type { Basis, Visibilities } from '../data.ts';
 import { type Closure, type ClosureSet, closurePhase, wrapPhase } from '../numerics/closures.ts';
 import { atan2 } from '../numerics/elementary.ts';
 import type { BasisVisibilities, LinearModel } from './linear-model.ts';
+import type { Term } from './term.ts';
 
 export interface LibraryMatch {
   /** Number of the image in the library, from 0. */
@@ -45,6 +46,27 @@ export function matchLibrary(
     if (!(flux > 0)) continue;
     const total = chiSquare + phaseChiSquare(re, im, phases);
     matches.push({ image, family: basis.families[image], flux, chiSquare: total });
+  }
+  return matches.sort((a, b) => a.chiSquare - b.chiSquare || a.image - b.image);
+}
+
+/** The same for data without rows, by the terms of the fit at a flux that is stated. @param flux  Jy */
+export function matchByTerms(
+  basis: Basis,
+  visibilities: BasisVisibilities,
+  terms: readonly Term[],
+  flux: number,
+  libraryStride = 1,
+): LibraryMatch[] {
+  const K = visibilities.columns - 1;
+  const count = visibilities.re.length / visibilities.columns;
+  const at = { re: new Float64Array(count), im: new Float64Array(count) };
+  const stride = Math.max(libraryStride, Math.ceil(basis.families.length / MOST_IMAGES));
+  const matches: LibraryMatch[] = [];
+  for (let image = 0; image < basis.families.length; image += stride) {
+    unitVisibilities(at.re, at.im, visibilities, basis.scores.subarray(image * K, (image + 1) * K));
+    const chiSquare = terms.reduce((sum, term) => sum + term.chiSquare(at), 0);
+    matches.push({ image, family: basis.families[image], flux, chiSquare });
   }
   return matches.sort((a, b) => a.chiSquare - b.chiSquare || a.image - b.image);
 }

@@ -152,7 +152,7 @@ export function writePrediction(model: LinearModel, x: Float64Array, { re, im }:
   }
 }
 
-/** slope += D^T pull, over the first columns. Two rows at a time. */
+/** slope += D^T pull, over the first columns. Four rows at a time, so that a sum is fetched once for them. */
 export function addPull(
   slope: Float64Array,
   { columns: stride, re: D, im: E }: Slopes,
@@ -160,17 +160,28 @@ export function addPull(
   columns: number,
 ): void {
   const count = re.length;
-  for (let r = 0; r < count; r += 2) {
-    const isPair = r + 1 < count;
+  let r = 0;
+  for (; r + 3 < count; r += 4) {
     const p = r * stride;
-    const q = isPair ? p + stride : p;
-    const a = re[r];
-    const b = im[r];
-    const c = isPair ? re[r + 1] : 0;
-    const d = isPair ? im[r + 1] : 0;
+    const q = p + stride;
+    const s = q + stride;
+    const t = s + stride;
+    const a0 = re[r];
+    const a1 = re[r + 1];
+    const a2 = re[r + 2];
+    const a3 = re[r + 3];
+    const b0 = im[r];
+    const b1 = im[r + 1];
+    const b2 = im[r + 2];
+    const b3 = im[r + 3];
     for (let k = 0; k < columns; k++) {
-      slope[k] += a * D[p + k] + b * E[p + k] + (c * D[q + k] + d * E[q + k]);
+      const first = a0 * D[p + k] + b0 * E[p + k] + (a1 * D[q + k] + b1 * E[q + k]);
+      slope[k] += first + (a2 * D[s + k] + b2 * E[s + k] + (a3 * D[t + k] + b3 * E[t + k]));
     }
+  }
+  for (; r < count; r++) {
+    const p = r * stride;
+    for (let k = 0; k < columns; k++) slope[k] += re[r] * D[p + k] + im[r] * E[p + k];
   }
 }
 

@@ -41,3 +41,21 @@ export function drawPosterior(
   }
   return { count, components, flux, coefficients, places: model.ramp ? places : null };
 }
+
+/** Draws of data that do not see the flux: each scaled by a draw of the stated flux, which knows nothing of the shape. A draw
+ *  of none is drawn again. @param fluxPrior  relative standard deviation */
+export function withStatedFlux<T extends Posterior>(posterior: T, fluxPrior: number, seed: number): T {
+  const random = randomStream(seed, 'stated flux');
+  const factors = Float64Array.from({ length: posterior.count }, () => {
+    let factor = 0;
+    while (!(factor > 0)) factor = 1 + fluxPrior * random.normal();
+    return factor;
+  });
+  return {
+    ...posterior,
+    flux: posterior.flux.map((value, s) => value * factors[s]),
+    coefficients: posterior.coefficients.map(
+      (value, k) => value * factors[Math.floor(k / posterior.components)],
+    ),
+  };
+}

@@ -8,6 +8,7 @@ import { InputProblem } from '../problem.ts';
 import { withPlace } from './centroid.ts';
 import { findPlace } from './centroid-start.ts';
 import { type ComponentChoice, chooseComponents } from './component-choice.ts';
+import { requirePresent } from './data-terms.ts';
 import {
   type FitProblem,
   fitClosures,
@@ -16,7 +17,7 @@ import {
   resized,
   solveFrom,
 } from './fit-problem.ts';
-import { type LibraryMatch, matchLibrary, pickStarts, startOf } from './library-starts.ts';
+import { type LibraryMatch, matchByTerms, matchLibrary, pickStarts, startOf } from './library-starts.ts';
 import {
   type BasisVisibilities,
   basisVisibilities,
@@ -25,9 +26,11 @@ import {
   predict,
   predictUnmoved,
 } from './linear-model.ts';
+import { type Mode, modesOf } from './modes.ts';
+import { pointsOf } from './points.ts';
 import { makePositivityTerm } from './positivity-term.ts';
-import { longestBaseline, type Selection, selectRows } from './select-rows.ts';
-import { type FitSettings, fitsCentroid } from './settings.ts';
+import { longestBaseline, type Selection, selectRows, wantedData } from './select-rows.ts';
+import { type FitSettings, fitsCentroid, measuresFlux } from './settings.ts';
 import { type Settled, settleGains } from './settle-gains.ts';
 
 export interface StartOutcome {
@@ -44,10 +47,15 @@ export interface FitResult extends Settled {
   /** The model's visibilities at the optimum. */
   readonly at: ModelVisibilities;
   readonly starts: readonly StartOutcome[];
+  /** Where they ended. */
+  readonly modes: readonly Mode[];
 }
 
 /** Components of the first fit, from which the choice by held-out data starts. */
 const FIRST_COMPONENTS = 20;
+/** Relative width of the flux where no data term sees it: free, it would fall until the coefficients' prior is content,
+ *  since the image may be scaled at will. The draws get their spread by `withStatedFlux`. */
+const HELD_FLUX = 1e-3;
 /** A library image's flux is uncertain by its fit; the median of so many of the best is the prior's mean. */
 const FLUX_MATCHES = 10;
 
@@ -67,10 +75,13 @@ export function runFit(
   { visibilities: known, libraryStride = 1 }: FitHints = {},
 ): FitResult {
   const longest = longestBaseline(basis.resolutionRadians);
-  const selection = selectRows(visibilities, settings.shortest * 1e9, longest);
+  const wanted = wantedData(visibilities, settings.data);
+  requirePresent(settings.data, wanted);
+  const selection = selectRows(wanted, settings.shortest * 1e9, longest);
   const sets = fitClosures(selection.data, settings.minimumSnr);
-  const B = known ?? basisVisibilities(basis, selection.data.u, selection.data.v);
-  const matches = matchLibrary(basis, B, selection.data, sets, libraryStride);
+  const points = pointsOf(selection.data);
+  const B = known ?? basisVisibilities(basis, points.u, points.v);
+  const matches = findMatches(basis, B, selection.data, sets, settings, libraryStride);
   progress(0.1);
   const { flux, fluxSource } = fluxPrior(settings, selection, matches);
   const problem = makeProblem(selection.data, sets, basis, B, flux, settings);
@@ -97,6 +108,7 @@ export function runFit(
     ...last,
     at: predict(last.problem.model, last.best.x),
     starts: minima.map((minimum, k) => outcomeOf(starts[k].start, minimum)),
+    modes: modesOf(minima),
   };
 }
 
@@ -138,6 +150,19 @@ function placesOf(starts: readonly Start[]): Float64Array[] {
   return starts.map(({ x }) => x);
 }
 
+function findMatches(
+  basis: Basis,
+  B: BasisVisibilities,
+  data: Visibilities,
+  sets: readonly ClosureSet[],
+  settings: FitSettings,
+  stride: number,
+): LibraryMatch[] {
+  if (data.count > 0 || settings.flux === undefined) return matchLibrary(basis, B, data, sets, stride);
+  const terms = makeTerms(settings.data, data, sets, new Float64Array(0), settings.minimumSnr);
+  return matchByTerms(basis, B, terms, settings.flux, stride);
+}
+
 function fluxPrior(settings: FitSettings, { totalFlux }: Selection, matches: readonly LibraryMatch[]) {
   if (settings.flux !== undefined) return { flux: settings.flux, fluxSource: 'stated' };
   const estimate = matches.length > 0 ? median(matches.slice(0, FLUX_MATCHES).map(({ flux }) => flux)) : 0;
@@ -164,9 +189,11 @@ function makeProblem(
   flux: number,
   settings: FitSettings,
 ): FitProblem {
-  const prior = { flux, fluxWidth: settings.fluxPrior, priorWidth: settings.priorWidth };
+  const fluxWidth = measuresFlux(settings) ? settings.fluxPrior : HELD_FLUX;
+  const prior = { flux, fluxWidth, priorWidth: settings.priorWidth };
   const linear = makeLinearModel(B, basis.eigenvalues, prior);
-  const ramp = { scale: basis.nx * basis.pixelRadians, u: data.u, v: data.v };
+  const { u, v } = pointsOf(data);
+  const ramp = { scale: basis.nx * basis.pixelRadians, u, v };
   const model = fitsCentroid(settings) ? { ...linear, ramp } : linear;
   const deviations = gainDeviations(data, settings.gainPriors);
   return {
@@ -176,7 +203,7 @@ function makeProblem(
     visibilities: B,
     model,
     deviations,
-    terms: makeTerms(settings.data, data, sets, deviations),
+    terms: makeTerms(settings.data, data, sets, deviations, settings.minimumSnr),
     positivity: settings.positivity > 0 ? makePositivityTerm(basis, model, settings.positivity) : null,
   };
 }

@@ -1,7 +1,7 @@
 /** The posterior by a Hamiltonian sampler: whitened flux and coefficients x (and the place of the centroid where it is a
  *  parameter), and with amplitudes the gain of every station and scan as a parameter h of unit prior. Density: exp of minus
  *  the cost of objective.ts, its gains no longer at their optimum. Coordinates are whitened by the Cholesky factor of the
- *  curvature at the optimum, in which the density is near a standard normal. */
+ *  curvature at the optimum, in which the density is near a standard normal; straightening.ts takes out what is bent. */
 
 import { type ChainDiagnostics, diagnose } from '../numerics/chain-diagnostics.ts';
 import type { Minimum } from '../numerics/gauss-newton.ts';
@@ -22,6 +22,7 @@ import {
   writePrediction,
 } from './linear-model.ts';
 import type { PlacedPosterior } from './posterior-draws.ts';
+import { makeStraightening } from './straightening.ts';
 
 export interface SamplerSettings {
   readonly chains: number;
@@ -130,6 +131,7 @@ function makeDensity(problem: FitProblem, best: Minimum, gains: readonly ScanGai
   const others = problem.terms.filter((term) => term !== amplitudes);
   const columns = best.x.length;
   const white = whiten(problem, best, gains, explicit);
+  const straightening = explicit && makeStraightening(model, best.x, explicit.scales);
   const n = white.dimension;
   const z = new Float64Array(n);
   const slope = new Float64Array(n);
@@ -140,6 +142,7 @@ function makeDensity(problem: FitProblem, best: Minimum, gains: readonly ScanGai
   const [own, pull] = [room(), room()];
   const evaluate = (y: Float64Array, gradient: Float64Array) => {
     white.position(y, z);
+    straightening?.apply(x, h);
     const at = model.ramp ? predict(model, x) : own;
     if (!model.ramp) writePrediction(model, x, own);
     pull.re.fill(0);
@@ -151,12 +154,14 @@ function makeDensity(problem: FitProblem, best: Minimum, gains: readonly ScanGai
     if (explicit) energy += explicit.adjoint(at, h, pull, slopeH);
     if (positivity) energy += positivity.adjoint(linear, slopeLinear);
     addPull(slopeX, slopesAt(model, x, at), pull, columns);
+    straightening?.pullBack(x, slopeX, slopeH);
     white.gradient(slope, gradient);
     return energy;
   };
   const position = (y: Float64Array) => {
     const out = new Float64Array(n);
     white.position(y, out);
+    straightening?.apply(out, out.subarray(columns));
     return out;
   };
   return { position, target: { dimension: n, evaluate } };
@@ -186,13 +191,12 @@ function whiten(
     position(y: Float64Array, z: Float64Array): void {
       scratch.set(y);
       applyInverseTransposed(L, scratch, profile);
-      z.set(scratch.subarray(count), 0);
-      z.set(scratch.subarray(0, count), columns);
-      for (let k = 0; k < n; k++) z[k] += centre[k];
+      for (let k = 0; k < columns; k++) z[k] = centre[k] + scratch[count + k];
+      for (let k = 0; k < count; k++) z[columns + k] = centre[columns + k] + scratch[k];
     },
     gradient(slope: Float64Array, out: Float64Array): void {
-      out.set(slope.subarray(columns), 0);
-      out.set(slope.subarray(0, columns), count);
+      for (let k = 0; k < count; k++) out[k] = slope[columns + k];
+      for (let k = 0; k < columns; k++) out[count + k] = slope[k];
       applyInverse(L, out, profile);
     },
   };

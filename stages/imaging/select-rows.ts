@@ -4,13 +4,14 @@ import type { Visibilities } from '../data.ts';
 import { ln } from '../numerics/elementary.ts';
 import { median } from '../numerics/statistics.ts';
 import { InputProblem } from '../problem.ts';
+import { type DataKind, isOfRows, isSquared, isTriple, termsOf } from './data-terms.ts';
 
 export interface Selection {
   /** Rows of the fit; scans and stations keep their numbers. */
   readonly data: Visibilities;
-  /** Rows left out because their baseline is too short. */
+  /** Rows, squared visibilities and triple products left out because a baseline is too short. */
   readonly tooShort: number;
-  /** Rows left out because they see finer structure than the basis holds. */
+  /** The same because they see finer structure than the basis holds. */
   readonly tooLong: number;
   /** Median amplitude of those rows, Jy, debiased; null when there are none. It is the flux of all scales. */
   readonly totalFlux: number | null;
@@ -26,6 +27,17 @@ export function longestBaseline(resolutionRadians: number): number {
   return Math.sqrt(-4 * Math.LN2 * ln(LEAST_TAPER)) / (Math.PI * resolutionRadians);
 }
 
+/** The data without the kinds of measurement that a fit does not use. */
+export function wantedData(all: Visibilities, kind: DataKind): Visibilities {
+  const terms = termsOf(kind);
+  const { squared, triples, ...rows } = terms.some(isOfRows) ? all : takeRows(all, []);
+  return {
+    ...rows,
+    ...(squared && terms.some(isSquared) ? { squared } : {}),
+    ...(triples && terms.some(isTriple) ? { triples } : {}),
+  };
+}
+
 /** @throws InputProblem when nothing is left, or a row holds what must never reach a computation */
 export function selectRows(
   all: Visibilities,
@@ -33,25 +45,73 @@ export function selectRows(
   longestWavelengths: number,
 ): Selection {
   requireSound(all);
-  const kept: number[] = [];
-  const short: number[] = [];
-  let tooLong = 0;
-  for (let r = 0; r < all.count; r++) {
-    const length = Math.sqrt(all.u[r] * all.u[r] + all.v[r] * all.v[r]);
-    if (length < shortestWavelengths) short.push(r);
-    else if (length > longestWavelengths) tooLong++;
-    else kept.push(r);
-  }
-  if (kept.length === 0) {
+  requireSoundOptical(all);
+  const sort = (count: number, lengthsOf: (r: number) => readonly number[]) =>
+    sortByLength(count, lengthsOf, shortestWavelengths, longestWavelengths);
+  const lengthOf = (u: number, v: number) => Math.sqrt(u * u + v * v);
+  const { squared, triples } = all;
+  const rows = sort(all.count, (r) => [lengthOf(all.u[r], all.v[r])]);
+  const squares = squared && sort(squared.count, (r) => [lengthOf(squared.u[r], squared.v[r])]);
+  const products =
+    triples &&
+    sort(triples.count, (t) => {
+      const { u1, v1, u2, v2 } = triples;
+      return [lengthOf(u1[t], v1[t]), lengthOf(u2[t], v2[t]), lengthOf(u1[t] + u2[t], v1[t] + v2[t])];
+    });
+  const sorted = [rows, squares, products].flatMap((each) => each ?? []);
+  if (sorted.every(({ kept }) => kept.length === 0)) {
     throw new InputProblem({
       code: 'no-data',
       place: 'input visibilities',
       expected: `baselines from ${shortestWavelengths} to ${longestWavelengths} wavelengths`,
-      found: `${all.count} rows, none of them between`,
+      found: `${all.count + (squared?.count ?? 0) + (triples?.count ?? 0)} rows, none of them between`,
       advice: 'Lower the parameter `shortest`, build the basis with a finer resolution, or give other data.',
     });
   }
-  return { data: takeRows(all, kept), tooShort: short.length, tooLong, totalFlux: totalFlux(all, short) };
+  const total = (value: (each: Sorted) => number) => sorted.reduce((sum, each) => sum + value(each), 0);
+  return {
+    data: {
+      ...takeRows(all, rows.kept),
+      ...(squared && squares ? { squared: takeOf(squared, squares.kept) } : {}),
+      ...(triples && products ? { triples: takeOf(triples, products.kept) } : {}),
+    },
+    tooShort: total(({ short }) => short.length),
+    tooLong: total(({ tooLong }) => tooLong),
+    totalFlux: totalFlux(all, rows.short),
+  };
+}
+
+interface Sorted {
+  readonly kept: readonly number[];
+  readonly short: readonly number[];
+  readonly tooLong: number;
+}
+
+function sortByLength(
+  count: number,
+  lengthsOf: (r: number) => readonly number[],
+  shortest: number,
+  longest: number,
+): Sorted {
+  const kept: number[] = [];
+  const short: number[] = [];
+  let tooLong = 0;
+  for (let r = 0; r < count; r++) {
+    const lengths = lengthsOf(r);
+    if (lengths.some((length) => length < shortest)) short.push(r);
+    else if (lengths.some((length) => length > longest)) tooLong++;
+    else kept.push(r);
+  }
+  return { kept, short, tooLong };
+}
+
+/** Rows of a table of optical data, in their order. */
+export function takeOf<T extends { readonly count: number }>(table: T, rows: readonly number[]): T {
+  const columns = Object.entries(table).map(([name, values]: [string, unknown]) => {
+    if (values instanceof Int32Array) return [name, Int32Array.from(rows, (r) => values[r])];
+    return [name, values instanceof Float64Array ? Float64Array.from(rows, (r) => values[r]) : values];
+  });
+  return { ...Object.fromEntries(columns), count: rows.length };
 }
 
 function requireSound(all: Visibilities): void {
@@ -65,6 +125,38 @@ function requireSound(all: Visibilities): void {
         found: `u ${all.u[r]}, v ${all.v[r]}, ${all.re[r]} ${all.im[r]} Jy, errors ${all.sigma[r]} Jy and ${all.sigmaPhase[r]} rad`,
         advice: 'Flagged and weightless samples are dropped by `ingest`: give its output, or drop them.',
       });
+    }
+  }
+}
+
+/** Optical data: finite numbers, errors above 0; an amplitude of a triple product may have none. */
+function requireSoundOptical({ squared, triples }: Visibilities): void {
+  const refuse = (what: string, r: number, found: string) => {
+    throw new InputProblem({
+      code: 'bad-row',
+      place: `input visibilities, ${what} ${r + 1}`,
+      expected: 'finite numbers and errors above 0',
+      found,
+      advice: 'Drop what is flagged or without weight.',
+    });
+  };
+  for (let r = 0; squared && r < squared.count; r++) {
+    const { u, v, value, sigma } = squared;
+    const isSound = [u[r], v[r], value[r], sigma[r]].every(Number.isFinite) && sigma[r] > 0;
+    if (!isSound)
+      refuse('squared visibility', r, `u ${u[r]}, v ${v[r]}, ${value[r]} with an error of ${sigma[r]}`);
+  }
+  for (let t = 0; triples && t < triples.count; t++) {
+    const { u1, v1, u2, v2, phase, sigmaPhase, amplitude, sigmaAmplitude } = triples;
+    const isPlaced = [u1[t], v1[t], u2[t], v2[t]].every(Number.isFinite);
+    const isUsable = (value: number, sigma: number) =>
+      sigma === Number.POSITIVE_INFINITY || (Number.isFinite(value) && Number.isFinite(sigma) && sigma > 0);
+    if (!(isPlaced && isUsable(phase[t], sigmaPhase[t]) && isUsable(amplitude[t], sigmaAmplitude[t]))) {
+      refuse(
+        'triple product',
+        t,
+        `phase ${phase[t]} with ${sigmaPhase[t]} rad, amplitude ${amplitude[t]} with ${sigmaAmplitude[t]}`,
+      );
     }
   }
 }

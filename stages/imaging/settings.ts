@@ -2,12 +2,10 @@
 
 import type { Visibilities } from '../data.ts';
 import { InputProblem } from '../problem.ts';
+import { type DataKind, requireCombination, seesFlux, termsOf } from './data-terms.ts';
 import type { SamplerSettings } from './sampler.ts';
 
-export type DataKind =
-  | 'closure-phases-and-amplitudes'
-  | 'complex-visibilities'
-  | 'closure-phases-and-log-closure-amplitudes';
+export type { DataKind } from './data-terms.ts';
 
 export interface FitSettings {
   readonly data: DataKind;
@@ -36,12 +34,18 @@ export const LEAST_AMPLITUDE_SNR = 4;
 
 /** Whether the centroid is a parameter of the fit: closures and amplitudes do not see it. */
 export function fitsCentroid({ data, centroid }: FitSettings): boolean {
-  return data === 'complex-visibilities' && centroid === 'free';
+  return termsOf(data).includes('complex-visibilities') && centroid === 'free';
 }
 
 /** Whether the model is linear and everything Gaussian: the posterior has a closed form. */
 export function isLinear(settings: FitSettings): boolean {
-  return settings.data === 'complex-visibilities' && !fitsCentroid(settings) && settings.positivity === 0;
+  const isComplex = termsOf(settings.data).every((term) => term === 'complex-visibilities');
+  return isComplex && !fitsCentroid(settings) && settings.positivity === 0;
+}
+
+/** Whether some data term sees the flux; else it is what the recipe states. */
+export function measuresFlux({ data }: Pick<FitSettings, 'data'>): boolean {
+  return termsOf(data).some(seesFlux);
 }
 
 export function readSettings(
@@ -52,13 +56,15 @@ export function readSettings(
   const settings = parameters as unknown as FitSettings;
   requireComponents(settings.components, available);
   requireStations(settings.gainPriors.stations, visibilities);
-  if (settings.data === 'closure-phases-and-log-closure-amplitudes' && settings.flux === undefined) {
+  requireCombination(settings.data);
+  if (!measuresFlux(settings) && settings.flux === undefined) {
     throw new InputProblem({
       code: 'flux-needed',
       place: 'parameter flux',
-      expected: 'the compact flux, because closures do not see it',
+      expected: 'the compact flux, because closures and normalised products do not see it',
       found: 'no value',
-      advice: 'State the flux, such as `flux: 0.6 Jy`, or take the data `closure-phases-and-amplitudes`.',
+      advice:
+        'State the flux, such as `flux: 0.6 Jy`, or take amplitudes or complex visibilities among the data.',
     });
   }
   return settings;

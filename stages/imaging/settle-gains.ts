@@ -44,5 +44,7 @@ export function settleGains(
 
 function widened(problem: FitProblem, { index, to }: Widening, settings: FitSettings): FitProblem {
   const deviations = problem.deviations.map((value, station) => (station === index ? to : value));
-  return { ...problem, deviations, terms: makeTerms(settings.data, problem.data, problem.sets, deviations) };
+  const { data, sets } = problem;
+  const terms = makeTerms(settings.data, data, sets, deviations, settings.minimumSnr);
+  return { ...problem, deviations, terms };
 }

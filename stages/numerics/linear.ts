@@ -75,9 +75,20 @@ export function applyInverse(L: Float64Array, x: Float64Array, profile: Int32Arr
   const n = x.length;
   for (let i = 0; i < n; i++) {
     const row = i * n;
-    let sum = x[i];
-    for (let k = profile[i]; k < i; k++) sum -= L[row + k] * x[k];
-    x[i] = sum / L[row + i];
+    let k = profile[i];
+    // Four sums side by side.
+    let a = 0;
+    let b = 0;
+    let c = 0;
+    let d = 0;
+    for (; k + 3 < i; k += 4) {
+      a += L[row + k] * x[k];
+      b += L[row + k + 1] * x[k + 1];
+      c += L[row + k + 2] * x[k + 2];
+      d += L[row + k + 3] * x[k + 3];
+    }
+    for (; k < i; k++) a += L[row + k] * x[k];
+    x[i] = (x[i] - (a + b + (c + d))) / L[row + i];
   }
 }
 
@@ -90,6 +101,24 @@ export function applyInverseTransposed(L: Float64Array, x: Float64Array, profile
     x[i] = value;
     for (let k = profile[i]; k < i; k++) x[k] -= L[row + k] * value;
   }
+}
+
+/** Turns a positive definite A (lower triangle) into its factor L; false, A spoilt, when it is none. For matrices so small
+ *  that making arrays would cost more than the work. */
+export function factorise(A: Float64Array, n: number): boolean {
+  for (let i = 0; i < n; i++) {
+    for (let j = 0; j <= i; j++) {
+      let sum = A[i * n + j];
+      for (let k = 0; k < j; k++) sum -= A[i * n + k] * A[j * n + k];
+      if (j < i) {
+        A[i * n + j] = sum / A[j * n + j];
+      } else {
+        if (!(sum > 0 && sum < Number.POSITIVE_INFINITY)) return false;
+        A[i * n + i] = Math.sqrt(sum);
+      }
+    }
+  }
+  return true;
 }
 
 /** Returns x with L L^T x = b. Cost 2 n^2. */

@@ -7,6 +7,7 @@ import { visibilitiesOfModel } from '../../numerics/models.ts';
 import { moved, type Place } from '../centroid.ts';
 import type { FitProblem } from '../fit-problem.ts';
 import type { ModelVisibilities } from '../linear-model.ts';
+import { pointsOf } from '../points.ts';
 import { makeExpansion, mirror, type Term } from '../term.ts';
 import type { ModelKind } from './model-kinds.ts';
 
@@ -35,9 +36,10 @@ const MOST_SEARCHES = 2;
 const FLUX_WIDTH = 0.5;
 
 export function settingOf({ data, model, basis }: FitProblem): Setting {
+  const { u, v } = pointsOf(data);
   return {
-    u: data.u,
-    v: data.v,
+    u,
+    v,
     flux: model.flux,
     // A quarter of the field.
     length: (basis.nx * basis.pixelRadians) / 4,

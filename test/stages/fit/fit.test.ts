@@ -5,7 +5,6 @@ import { memorySink, sourceOf } from '../../../stages/bytes.ts';
 import type { Basis, Visibilities } from '../../../stages/data.ts';
 import { compute } from '../../../stages/fit/compute.ts';
 import { makeReport } from '../../../stages/fit/report.ts';
-import { makeResiduals } from '../../../stages/fit/residuals.ts';
 import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readNumbers } from '../../../stages/formats/json.ts';
 import { readPosterior } from '../../../stages/formats/posterior.ts';
@@ -57,10 +56,9 @@ function numbersOf({ problem, best }: FitResult) {
 }
 
 function reportOf(result: FitResult, settings: FitSettings) {
-  const { problem, best, at, gains } = result;
+  const { problem, best } = result;
   const posterior = drawPosterior(problem.model, best.x, best.curvature, 200, 1);
-  const residuals = makeResiduals(settings.data, problem.data, problem.sets, at, gains);
-  return makeReport(result, settings, posterior, residuals, null);
+  return makeReport(result, settings, posterior);
 }
 
 test('recovers diameter and orientation behind unknown phases and gains of 10 %', () => {
@@ -199,7 +197,7 @@ test('says what is wrong with its parameters and data', () => {
     'parameter gainPriors.stations: unknown-station: expected names among Alder, Aspen, Birch, Cedar, Elder, Hazel, Larch, Rowan, got Oak. Write the name as the data do.',
   );
   expect(change({ data: 'closure-phases-and-log-closure-amplitudes' })).toThrow(
-    'parameter flux: flux-needed: expected the compact flux, because closures do not see it, got no value. State the flux, such as `flux: 0.6 Jy`, or take the data `closure-phases-and-amplitudes`.',
+    'parameter flux: flux-needed: expected the compact flux, because closures and normalised products do not see it, got no value. State the flux, such as `flux: 0.6 Jy`, or take amplitudes or complex visibilities among the data.',
   );
   const broken = { ...good, sigma: good.sigma.map((value, r) => (r === 3 ? 0 : value)) };
   expect(() => runFit(broken, basis, SETTINGS)).toThrow(

@@ -6,13 +6,19 @@ import { makeAmplitudeTerm } from '../../../stages/imaging/amplitude-term.ts';
 import { makeClosurePhaseTerm, makeLogClosureAmplitudeTerm } from '../../../stages/imaging/closure-terms.ts';
 import { makeComplexTerm } from '../../../stages/imaging/complex-term.ts';
 import { fitClosures } from '../../../stages/imaging/fit-problem.ts';
-import { basisVisibilities, makeLinearModel, predict } from '../../../stages/imaging/linear-model.ts';
+import {
+  basisVisibilities,
+  type LinearModel,
+  makeLinearModel,
+  predict,
+} from '../../../stages/imaging/linear-model.ts';
 import { makePositivityTerm } from '../../../stages/imaging/positivity-term.ts';
 import { posteriorVariants } from '../../../stages/imaging/posterior-variants.ts';
 import { runFit } from '../../../stages/imaging/run-fit.ts';
 import { samplePosterior } from '../../../stages/imaging/sampler.ts';
 import { selectRows } from '../../../stages/imaging/select-rows.ts';
 import type { FitSettings } from '../../../stages/imaging/settings.ts';
+import { makeStraightening } from '../../../stages/imaging/straightening.ts';
 import type { Term } from '../../../stages/imaging/term.ts';
 import { cholesky, invertCholesky } from '../../../stages/numerics/linear.ts';
 import { mean, standardDeviation } from '../../../stages/numerics/statistics.ts';
@@ -163,4 +169,42 @@ test('has narrower errors while the gains are held', () => {
   expect(standardDeviation(fixed?.posterior.flux ?? [])).toBeLessThan(
     0.7 * standardDeviation(posterior.flux),
   );
+});
+
+// Identity: the energy of straight coordinates by differences; and the valley F e^{2g} = constant is straight.
+test('straightens the valley of flux and gains, with the slopes that differences have', () => {
+  const model = { flux: 0.8, scales: Float64Array.of(0.4) } as unknown as LinearModel;
+  const scales = Float64Array.of(0.1, 0.3, 0.5);
+  const best = Float64Array.of(0.3);
+  const { apply, pullBack } = makeStraightening(model, best, scales);
+  const top = 0.8 + 0.4 * 0.3;
+  // Any energy of x and h, with its slopes.
+  const weights = [0.7, -1.1, 0.4];
+  const energyAt = (x: number, coordinates: readonly number[]) => {
+    const h = Float64Array.from(coordinates);
+    apply(Float64Array.of(x), h);
+    const sum = h.reduce((total, value, i) => total + (weights[i] as number) * value, 0);
+    return { energy: (sum * sum) / 2 + Math.sin(x), sum, h };
+  };
+  for (const x of [-2.2, -1.9, -1, 0.3, 1.5]) {
+    const coordinates = [0.2, -0.4, 1.3];
+    const { sum } = energyAt(x, coordinates);
+    const slopeX = Float64Array.of(Math.cos(x));
+    pullBack(
+      Float64Array.of(x),
+      slopeX,
+      Float64Array.from(weights, (weight) => sum * weight),
+    );
+    const difference =
+      (energyAt(x + 1e-6, coordinates).energy - energyAt(x - 1e-6, coordinates).energy) / 2e-6;
+    expect(Math.abs((slopeX[0] as number) - difference)).toBeLessThan(1e-6 * (1 + Math.abs(difference)));
+  }
+  // Along g = -ln(F/F*)/2 the coordinates change in proportion to the flux.
+  const bend = (x: number) => {
+    const flux = 0.8 + 0.4 * x;
+    const g = -Math.log(flux / top) / 2;
+    const zero = energyAt(x, [0, 0, 0]).h[0] as number;
+    return { coordinate: g / 0.1 - zero, straight: -(flux / top - 1) / 2 / 0.1 };
+  };
+  for (const x of [-0.8, 0, 1, 2]) expect(bend(x).coordinate).toBeCloseTo(bend(x).straight, 9);
 });
