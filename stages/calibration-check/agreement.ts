@@ -2,8 +2,16 @@
  *  error, a budget follow. */
 
 import type { Visibilities } from '../data.ts';
-import { type Closure, closurePhase, closureVariance, wrapPhase } from '../numerics/closures.ts';
+import {
+  type Closure,
+  closureCovariance,
+  closurePhase,
+  closureVariance,
+  wrapPhase,
+} from '../numerics/closures.ts';
 import { atan2, cos, ln, sin } from '../numerics/elementary.ts';
+import { choleskyNearby, solveLower } from '../numerics/linear.ts';
+import { chiSquareQuantile } from '../numerics/statistics.ts';
 import type { SharedScan } from './colocated.ts';
 
 /** Values that differ from a common value only by their errors. `parts` is how many visibilities each is made of, so
@@ -18,19 +26,36 @@ export interface Group {
   readonly wraps: boolean;
   /** What each value is, for reports. */
   readonly labels: readonly string[];
+  /** Where values share visibilities: their covariance, square, with the variance `extra` added to every visibility. */
+  readonly covariance?: (extra: number) => Float64Array;
 }
 
-/** Closure phases of triangles that must close, one group each. */
+/** Closure phases of triangles that must close, one group for every scan, with their covariance. */
 export function triangleGroups(visibilities: Visibilities, triangles: readonly Closure[]): Group[] {
   const variance = visibilities.sigmaPhase.map((value) => value * value);
-  return triangles.map((triangle) => ({
-    values: [closurePhase(triangle, visibilities.re, visibilities.im)],
-    variances: [closureVariance(triangle, variance)],
-    parts: 3,
-    common: 'zero',
-    wraps: true,
-    labels: [triangleName(visibilities, triangle)],
-  }));
+  const scanOf = ({ rows }: Closure) => visibilities.scan[rows[0]];
+  return [...new Set(triangles.map(scanOf))].map((scan) => {
+    const own = triangles.filter((triangle) => scanOf(triangle) === scan);
+    return {
+      ...closureGroup(own, variance, 1),
+      values: own.map((triangle) => closurePhase(triangle, visibilities.re, visibilities.im)),
+      wraps: true,
+      labels: own.map((triangle) => triangleName(visibilities, triangle)),
+    };
+  });
+}
+
+/** The part of a group of independent closures of one scan that their variances make.
+ *  @param times  how often the further error of a visibility enters: twice in a difference between two inputs */
+export function closureGroup(closures: readonly Closure[], variance: Float64Array, times: number) {
+  const stated = closureCovariance(closures, variance);
+  const shared = closureCovariance(closures, new Float64Array(variance.length).fill(times));
+  return {
+    variances: closures.map((closure) => closureVariance(closure, variance)),
+    parts: times * closures[0].rows.length,
+    common: 'zero' as const,
+    covariance: (extra: number) => stated.map((value, k) => value + extra * shared[k]),
+  };
 }
 
 function triangleName({ stations, station1, station2 }: Visibilities, { rows }: Closure): string {
@@ -91,16 +116,33 @@ export function agreement(groups: readonly Group[], extra = 0): Agreement {
     const free = group.values.length - (group.common === 'fitted' ? 1 : 0);
     if (free === 0) continue;
     const { value: common } = commonValue(group, variances);
-    group.values.forEach((value, k) => {
-      const difference = group.wraps ? wrapPhase(value - common) : value - common;
+    const differences = group.values.map((value) =>
+      group.wraps ? wrapPhase(value - common) : value - common,
+    );
+    differences.forEach((difference, k) => {
       const deviation = (difference * difference) / variances[k];
-      chiSquare += deviation;
+      if (!group.covariance) chiSquare += deviation;
       const label = group.labels[k];
       byLabel.set(label, [...(byLabel.get(label) ?? []), (deviation * group.values.length) / free]);
     });
+    if (group.covariance) {
+      for (const value of whitened(group, differences, extra)) chiSquare += value * value;
+    }
     degrees += free;
   }
   return { degrees, chiSquare, byLabel };
+}
+
+/** Values freed of what they share, each of unit variance: L⁻¹ d with the covariance L Lᵀ. Those of groups without a
+ *  covariance of their own are divided by their errors. */
+export function whitened(
+  { variances, covariance }: Group,
+  differences: readonly number[],
+  extra = 0,
+): Float64Array {
+  const d = Float64Array.from(differences);
+  const L = covariance && choleskyNearby(covariance(extra * extra), d.length);
+  return L ? solveLower(L, d) : d.map((value, k) => value / Math.sqrt(variances[k]));
 }
 
 /** Weighted mean of a group, and its error; zero without error where that is known. */
@@ -131,14 +173,32 @@ export function scatter({ chiSquare, degrees }: Agreement): number {
   return Math.sqrt(chiSquare / degrees);
 }
 
-/** The error of every visibility that brings the scatter to 1; 0 when it is not above.
- *  @param most  no more than this: beyond, phases are nothing
- *  Bisection to 1e-9 of `most`; the chi-square falls as the error grows. */
-export function budget(groups: readonly Group[], most: number): number {
-  const excess = (extra: number) => {
-    const { chiSquare, degrees } = agreement(groups, extra);
-    return chiSquare - degrees;
+export interface Budget {
+  readonly value: number;
+  /** Interval of 68 %: errors at which the chi-square is no more likely than one in six on either side. */
+  readonly low: number;
+  readonly high: number;
+}
+
+/** P(|Z| < 1) of a normal value. */
+const WITHIN_ONE_SIGMA = 0.6826894921370859;
+
+/** The error of every visibility that brings the scatter to 1, 0 when it is not above; and its interval, from the
+ *  quantiles of chi-square for the degrees of freedom (inversion of the test; Neyman 1937, Phil. Trans. A 236, 333).
+ *  @param most  no more than this: beyond, phases are nothing */
+export function budget(groups: readonly Group[], most: number): Budget {
+  const { degrees } = agreement(groups);
+  const at = (level: number) => errorFor(groups, most, level);
+  return {
+    value: at(degrees),
+    low: at(chiSquareQuantile((1 + WITHIN_ONE_SIGMA) / 2, degrees)),
+    high: at(chiSquareQuantile((1 - WITHIN_ONE_SIGMA) / 2, degrees)),
   };
+}
+
+/** The error at which the chi-square falls to a level. Bisection to 1e-9 of `most`; it falls as the error grows. */
+function errorFor(groups: readonly Group[], most: number, level: number): number {
+  const excess = (extra: number) => agreement(groups, extra).chiSquare - level;
   if (!(excess(0) > 0)) return 0;
   let [low, high] = [0, most];
   for (let step = 0; step < 30; step++) {

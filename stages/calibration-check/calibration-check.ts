@@ -27,14 +27,18 @@ function limits(doc: string, marginal: number, limit: number, why: string): Para
 
 export const calibrationCheck = {
   kind: 'calibration-check',
-  version: 2,
+  version: 3,
   doc:
     'Checks the calibration on what must agree whatever the source looks like: triangles with two co-located stations ' +
-    'close to zero, co-located stations see the same far baselines, and closures agree between bands or hands. Estimates ' +
-    'the error budget that brings these to unit scatter and adds it in quadrature. A check out of limits stops the run unless the recipe says otherwise.',
+    'close to zero and follow neither Sun, elevation nor time, co-located stations see the same far baselines, closures ' +
+    'agree between bands, hands or days, gains keep their level. Estimates the error budget that brings these to unit ' +
+    'scatter, with its interval, and adds it in quadrature. The report says how often noise alone would exceed each ' +
+    'limit. A check out of limits stops the run unless the recipe says otherwise.',
   source:
-    'Closures: Thompson, Moran & Swenson, Interferometry and Synthesis in Radio Astronomy, 3rd ed., section 10.3. Checks ' +
-    'on co-located stations and the error budget in quadrature: common practice.',
+    'Closures: Thompson, Moran & Swenson, Interferometry and Synthesis in Radio Astronomy, 3rd ed., section 10.3. Errors ' +
+    'of single baselines: Baarda 1968, Publ. Geod. 2(5). Trends: Kendall 1938, Biometrika 30, 81. The Sun: Meeus, ' +
+    'Astronomical Algorithms, 2nd ed., chapter 25. Checks on co-located stations and the error budget in quadrature: ' +
+    'common practice.',
   inputs: {
     visibilities: { format: 'visibilities', doc: 'Visibilities averaged by scan.' },
     report: {
@@ -50,14 +54,16 @@ export const calibrationCheck = {
     residuals: {
       format: 'json',
       optional: true,
-      doc: 'The residuals of that fit: with them baselines are found whose phases do not close.',
+      doc: 'The residuals of that fit: with them baselines are found whose phases or amplitudes do not close.',
     },
     other: {
       format: 'visibilities',
       optional: true,
+      many: true,
       doc:
-        'The same observation in another band or hand, from a second stage of kind `ingest` with errors of its own: with ' +
-        'it closures are checked against each other. It is only compared, never joined to the visibilities.',
+        'The same observation in another band or hand, or the same tracks on another day, one or several, from stages of ' +
+        'kind `ingest` of their own with errors of their own: with each, closures are checked against each other, of ' +
+        'days at like sidereal time. They are only compared, never joined to the visibilities.',
     },
   },
   parameters: {
@@ -85,7 +91,8 @@ export const calibrationCheck = {
       why: 'Ten values give a scatter good to a quarter.',
     },
     closureScatter: scatterLimits(
-      'Closure phases of triangles with two co-located stations, over their errors: root mean square.',
+      'Closure phases of triangles with two co-located stations, an independent set of every scan, with their full ' +
+        'covariance: root of the reduced chi-square.',
     ),
     redundantPhases: scatterLimits(
       'Phases of far baselines seen by two co-located stations, their difference but for one phase per pair and scan, ' +
@@ -107,11 +114,42 @@ export const calibrationCheck = {
       0.5,
       'Two stations good to 10 % give 0.14.',
     ),
+    pairGainsOverTime: limits(
+      'Log gain ratio of two co-located stations in two successive scans less its median over scans: the largest of all ' +
+        'pairs, either sign, scaled down where a pair scatters more than 0.12. The baseline between the two says which is off.',
+      0.4,
+      0.45,
+      'With stations good to 10 % the mean of two ratios scatters by 0.1, and the largest of some 25 is above 0.4 in one ' +
+        'case of 600, above 0.45 in one of 6,000; half the gain is 0.69 off.',
+    ),
+    stationAmplitudes: limits(
+      'Log amplitudes of all baselines of one station in two successive scans less those of the two scans before and after: ' +
+        'the largest of all stations and scans, either sign, scaled down where a station scatters more than 0.11. Needs ' +
+        'neither co-located stations nor a fit.',
+      0.38,
+      0.45,
+      'With stations good to 10 % the largest of some 90 stayed below 0.36 in each of 200 invented observations; half the ' +
+        'gain is 0.69 off.',
+    ),
+    closureTrends: limits(
+      'Closure phases of triangles that must close against time, elevation and the Sun: the least likely rank correlation, ' +
+        'in standard deviations of a normal value after allowing for the number of trials.',
+      3,
+      4,
+      'Sound data are above 3 in one case of 370, above 4 in one of 16,000.',
+    ),
     statedNoise: limits(
       'Scatter inside scans over the stated noise, the median over baselines and scans; needs the input `report`.',
       1.4,
       1.8,
       'Noise understated by a factor of 2 gives 2; of some hundred averages the median of sound data is 1 within a few per cent.',
+    ),
+    noiseByBaseline: limits(
+      'The same by baseline: the largest over what the largest of so many has by chance in one case of ten; needs the ' +
+        'input `report`. Phases that wander within scans raise it too.',
+      1.3,
+      1.5,
+      'Sound data are below 1 in nine cases of ten; noise understated by a factor of 2 on baselines of ten scans and more gives 1.6 to 2.',
     ),
     otherAgreement: scatterLimits(
       'Closure phases and log closure amplitudes less those of the input `other`, over the errors of both: the largest ' +
@@ -125,10 +163,16 @@ export const calibrationCheck = {
       'Of 200 gains good to 10 % the largest is 0.3 off; half the gain is 0.69 off.',
     ),
     baselinePhases: limits(
-      'Degrees of the phase of one baseline that does not close, where it is more than four of its errors; needs the input `residuals`.',
+      'Degrees of the phase of one baseline that explains best what does not close, where it is more than four of its errors; needs the input `residuals`.',
       3,
       4.5,
       'The image takes up about half of such a phase: of 10 deg on one baseline 4.8 are left.',
+    ),
+    baselineAmplitudes: limits(
+      'The same for its log amplitude.',
+      0.15,
+      0.3,
+      'The image does not follow every amplitude: without any fault 0.1 is left on some baseline.',
     ),
     uvDifference: {
       type: 'number',
@@ -183,8 +227,9 @@ export const calibrationCheck = {
     report: {
       format: 'json',
       doc:
-        'Findings, error budget, numbers of closures, co-located pairs with their gain ratios by scan, station gains, and ' +
-        'with `other` the agreement by baseline.',
+        'Findings, how often noise alone would exceed their limits, error budget with its intervals, numbers of closures, ' +
+        'co-located pairs with their gain ratios by scan, station gains, trends, with `other` the agreement by baseline, ' +
+        'with a fit its gains over time and the errors of single baselines.',
     },
   },
   load: () => import('./compute.ts'),

@@ -1,9 +1,9 @@
 /** The checks one by one: each gives a finding, or the reason why there was too little to check. */
 
 import type { Visibilities } from '../data.ts';
-import type { Finding } from '../kind.ts';
-import type { Closure } from '../numerics/closures.ts';
+import { type Closure, closurePhase } from '../numerics/closures.ts';
 import { median } from '../numerics/statistics.ts';
+import { chiSquareTail } from '../numerics/tails.ts';
 import {
   type Agreement,
   agreement,
@@ -13,6 +13,7 @@ import {
   scatter,
   triangleGroups,
 } from './agreement.ts';
+import { type BaselineError, errorsOf } from './baseline-errors.ts';
 import {
   colocatedPairs,
   type Pair,
@@ -20,8 +21,10 @@ import {
   sharedBaselines,
   trivialTriangles,
 } from './colocated.ts';
-import { judge, worstLabel } from './findings.ts';
+import { type Judged, judge, worstLabel } from './findings.ts';
+import { checkPairGains } from './gain-history.ts';
 import type { CheckName, CheckParameters } from './parameters.ts';
+import { checkStationAmplitudes } from './station-amplitudes.ts';
 import { type PairGains, pairGains, type StationGain, stationGains } from './station-gains.ts';
 
 const DEGREES = 180 / Math.PI;
@@ -39,7 +42,7 @@ export interface Measured {
 
 /** `on` names the part of a check that was not made; the whole when absent. */
 export type Outcome =
-  | Finding
+  | Judged
   | { readonly check: CheckName; readonly on?: string; readonly tooLittle: string };
 
 /** Measures what the checks and the error budget need. */
@@ -75,11 +78,18 @@ export function runChecks(
   parameters: CheckParameters,
 ): Outcome[] {
   return [
-    checkScatter('closureScatter', measured.triangleGroups, parameters, closureDetail(measured)),
+    checkScatter(
+      'closureScatter',
+      measured.triangleGroups,
+      parameters,
+      `${closureDetail(measured)}${culprits(visibilities, measured)}`,
+    ),
     checkScatter('redundantPhases', measured.phaseGroups, parameters, ''),
     checkScatter('redundantAmplitudes', measured.amplitudeGroups, parameters, ''),
     checkGainOffset(visibilities, measured, parameters),
     checkGainScatter(visibilities, measured, parameters),
+    checkPairGains(visibilities, measured, parameters),
+    checkStationAmplitudes(visibilities, parameters),
   ];
 }
 
@@ -100,7 +110,8 @@ function checkScatter(
     return { check, tooLittle: `${measured.degrees} ${VALUES[check]}, at least ${least} are needed` };
   }
   const detail = `Scatter over the stated errors of ${measured.degrees} ${VALUES[check]}; ${worst(measured)}${further}.`;
-  return judge(check, scatter(measured), limits[check], detail);
+  const exceeds = (value: number) => chiSquareTail(measured.degrees * value * value, measured.degrees);
+  return judge(check, scatter(measured), limits[check], detail, exceeds);
 }
 
 function worst(measured: Agreement): string {
@@ -111,8 +122,32 @@ function worst(measured: Agreement): string {
 
 function closureDetail({ triangleGroups }: Measured): string {
   if (triangleGroups.length === 0) return '';
-  const offset = median(triangleGroups.map(({ values }) => values[0])) * DEGREES;
+  const offset = median(triangleGroups.flatMap(({ values }) => values)) * DEGREES;
   return `; median closure phase ${offset.toFixed(2)} deg`;
+}
+
+/** An error of a baseline is named from so many of its own errors on. */
+const SIGNIFICANT = 4;
+
+/** The baseline whose phase explains best what does not close. Where one station of a pair is off towards a third and
+ *  nothing else tells the two apart, both are named. */
+function culprits(visibilities: Visibilities, { triangles, triangleGroups }: Measured): string {
+  const { stations, re, im } = visibilities;
+  const scans = [...new Set(triangles.map(({ rows }) => visibilities.scan[rows[0]]))];
+  const sets = scans.map((scan, k) => ({
+    closures: triangles.filter(({ rows }) => visibilities.scan[rows[0]] === scan),
+    covariance: triangleGroups[k].covariance?.(0) ?? new Float64Array(0),
+  }));
+  const { errors } = errorsOf(visibilities, sets, (triangle) => closurePhase(triangle, re, im));
+  const size = ({ estimate, error }: BaselineError) => Math.abs(estimate) / error;
+  const best = largest(errors, size);
+  if (best === undefined || !(size(best) > SIGNIFICANT)) return '';
+  const alike = errors.filter((each) => size(each) > (1 - 1e-9) * size(best));
+  const names = alike.map(
+    ({ station1, station2 }) => `${stations[station1].name}–${stations[station2].name}`,
+  );
+  const [value, error] = [Math.abs(best.estimate), best.error].map((x) => (x * DEGREES).toFixed(1));
+  return `; a phase of ${value} ± ${error} deg on ${names.join(' or ')} explains most`;
 }
 
 function checkGainOffset(

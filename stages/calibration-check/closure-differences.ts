@@ -21,7 +21,8 @@ import {
 } from '../numerics/closures.ts';
 import { exp, ln } from '../numerics/elementary.ts';
 import { median, normalQuantile } from '../numerics/statistics.ts';
-import type { Group } from './agreement.ts';
+import { binomialTail, normalTail } from '../numerics/tails.ts';
+import { closureGroup, type Group, whitened } from './agreement.ts';
 import type { CommonRows } from './common-rows.ts';
 
 /** What differs from scan to scan on one baseline, over its error. */
@@ -33,8 +34,11 @@ export interface BaselineDifference {
 }
 
 export interface Differences {
-  /** Independent closures, one group each, as the error budget takes them. */
+  /** Independent closures, one group for every scan, as the error budget takes them. */
   readonly groups: readonly Group[];
+  /** How many these are. */
+  readonly independent: number;
+  /** Of all, freed of what they share. */
   readonly scatter: number;
   /** Median of the differences, radians or log amplitude. */
   readonly offset: number;
@@ -49,8 +53,6 @@ interface Quantity {
   /** Of one visibility, both errors in quadrature. */
   readonly variance: (rows: CommonRows, row: number) => number;
   readonly wraps: boolean;
-  /** Visibilities in a difference: those of both closures. */
-  readonly parts: number;
 }
 
 /** Fewer scans say nothing of one baseline. */
@@ -62,7 +64,6 @@ const PHASES: Quantity = {
   value: closurePhase,
   variance: ({ first, other }, row) => square(first.sigmaPhase[row]) + square(other.sigmaPhase[row]),
   wraps: true,
-  parts: 6,
 };
 
 const AMPLITUDES: Quantity = {
@@ -70,7 +71,6 @@ const AMPLITUDES: Quantity = {
   value: logClosureAmplitude,
   variance: ({ first, other }, row) => logVariance(first, row) + logVariance(other, row),
   wraps: false,
-  parts: 8,
 };
 
 export function phaseDifferences(rows: CommonRows): Differences {
@@ -89,19 +89,18 @@ function differences(rows: CommonRows, quantity: Quantity): Differences {
     return quantity.wraps ? wrapPhase(raw) : raw;
   };
   const byScan = scanNumbers(rows.first).map((scan) => quantity.closures(rows, scan));
-  const independent = byScan.flatMap((closures) => independentClosures(closures, variance));
-  const groups = independent.map((closure) => ({
-    values: [difference(closure)],
-    variances: [closureVariance(closure, variance)],
-    parts: quantity.parts,
-    common: 'zero' as const,
-    wraps: quantity.wraps,
-    labels: [stationNames(rows, closure)],
-  }));
-  const values = groups.map((group) => group.values[0]);
+  const groups = byScan.flatMap((closures) => {
+    const independent = independentClosures(closures, variance);
+    if (independent.length === 0) return [];
+    const labels = independent.map((closure) => stationNames(rows, closure));
+    const values = independent.map(difference);
+    return [{ ...closureGroup(independent, variance, 2), values, wraps: quantity.wraps, labels }];
+  });
+  const values = groups.flatMap((group) => group.values);
   return {
     groups,
-    scatter: scatterAboutZero(values.map((value, k) => value / Math.sqrt(groups[k].variances[0]))),
+    independent: values.length,
+    scatter: scatterAboutZero(groups.flatMap((group) => [...whitened(group, group.values)])),
     offset: values.length > 0 ? median(values) : 0,
     baselines: baselineDifferences(rows, byScan, difference, variance),
   };
@@ -158,6 +157,13 @@ function scatterAboutZero(values: readonly number[]): number {
   return values.length > 0 ? median(values.map(Math.abs)) / normalQuantile(0.75) : 0;
 }
 
+/** The probability that n independent normal values scatter so by their median size: that half of them or more lie beyond
+ *  the median size which gives that scatter. */
+function scatterTail(scatter: number, n: number): number {
+  const beyond = 2 * normalTail(scatter * normalQuantile(0.75));
+  return binomialTail(n / 2, n, beyond);
+}
+
 export interface WorstBaseline extends BaselineDifference {
   /** Below this the largest scatter of so many baselines stays by chance in nine cases of ten. */
   readonly expected: number;
@@ -174,16 +180,28 @@ const CONFIDENCE = 0.9;
  *  median of |z|: 1/(2 f sqrt(n)) with the density f = 0.6356 there); the largest of m normal values stays below
  *  Phi^-1(p^(1/m)) with probability p. */
 export function worstBaseline({ baselines }: Differences): WorstBaseline | undefined {
-  const largest = normalQuantile(exp(ln(CONFIDENCE) / baselines.length));
   return baselines
     .map((each) => {
-      const chance = (1.166 / Math.sqrt(each.normalised.length)) * largest;
+      const chance = chanceOf(each, baselines.length);
       return { ...each, expected: 1 + chance, value: each.scatter - chance };
     })
     .reduce<WorstBaseline | undefined>(
       (worst, each) => (worst === undefined || each.value > worst.value ? each : worst),
       undefined,
     );
+}
+
+/** How far above 1 the largest of m baselines like this one may lie by chance. */
+function chanceOf({ normalised }: BaselineDifference, m: number): number {
+  return (1.166 / Math.sqrt(normalised.length)) * normalQuantile(exp(ln(CONFIDENCE) / m));
+}
+
+/** The probability that of sound data either the scatter of all, or that of a baseline less its allowance, exceeds a value. */
+export function differencesTail({ independent, baselines }: Differences, value: number): number {
+  const each = baselines.map((baseline) =>
+    scatterTail(value + chanceOf(baseline, baselines.length), baseline.normalised.length),
+  );
+  return [scatterTail(value, independent), ...each].reduce((sum, p) => sum + p - sum * p, 0);
 }
 
 function baselineName({ first: { stations, station1, station2 } }: CommonRows, row: number): string {

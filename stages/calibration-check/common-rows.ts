@@ -1,5 +1,6 @@
-/** Rows that two sets of visibilities have in common: one observation in two bands or two hands. Stations are the same
- *  by name; scans by time, since each set counts its own. */
+/** Rows that two sets of visibilities have in common: one observation in two bands or two hands, or the same tracks on two
+ *  days. Stations are the same by name; scans by time, since each set counts its own; by sidereal time when the two were
+ *  observed half a day apart or more. */
 
 import type { Station, Visibilities } from '../data.ts';
 import { type ClosureData, scanNumbers } from '../numerics/closures.ts';
@@ -20,6 +21,8 @@ export interface CommonRows {
   readonly found: number;
   /** Median relative difference of (u,v) over those; 0 without any. */
   readonly uvDifference: number;
+  /** By how many days the other was observed later; 0 when at the same time. */
+  readonly days: number;
 }
 
 /** Degrees; a second of arc. */
@@ -35,7 +38,8 @@ export function commonRows(
   minimumSnr: number,
 ): CommonRows {
   requireOneTarget(first, other);
-  const matches = matchRows(first, other, minimumSnr);
+  const days = daysBetween(first, other);
+  const matches = matchRows(first, other, minimumSnr, days);
   const kept = matches.filter(({ difference }) => difference <= most);
   const differences = matches.map(({ difference }) => difference).sort((a, b) => a - b);
   const own = (values: Float64Array) => Float64Array.from(kept, ({ row }) => values[row]);
@@ -64,7 +68,26 @@ export function commonRows(
     },
     found: matches.length,
     uvDifference: differences[Math.floor(differences.length / 2)] ?? 0,
+    days,
   };
+}
+
+/** Turns of the Earth against the stars in a day (Aoki et al. 1982, A&A 105, 359). */
+const TURNS_PER_DAY = 1.00273790935;
+
+/** From the middle of one observation to that of the other, rounded to whole turns of the Earth, days; 0 below half. */
+function daysBetween(first: Visibilities, other: Visibilities): number {
+  if (first.count === 0 || other.count === 0) return 0;
+  return Math.round((middleOf(other) - middleOf(first)) * TURNS_PER_DAY) / TURNS_PER_DAY;
+}
+
+function middleOf({ timeMjd }: Visibilities): number {
+  let [least, most] = [timeMjd[0], timeMjd[0]];
+  for (const time of timeMjd) {
+    least = Math.min(least, time);
+    most = Math.max(most, time);
+  }
+  return (least + most) / 2;
 }
 
 function requireOneTarget({ target }: Visibilities, { target: other }: Visibilities): void {
@@ -90,8 +113,8 @@ interface Match {
   readonly difference: number;
 }
 
-function matchRows(first: Visibilities, other: Visibilities, minimumSnr: number): Match[] {
-  const scans = matchScans(first, other);
+function matchRows(first: Visibilities, other: Visibilities, minimumSnr: number, days: number): Match[] {
+  const scans = matchScans(first, other, days);
   const rows = new Map<string, number>();
   for (let k = 0; k < other.count; k++) {
     if (isBright(other, k, minimumSnr)) rows.set(rowKey(other, other.scan[k], k), k);
@@ -136,10 +159,11 @@ interface ScanTime {
   readonly half: number;
 }
 
-/** Scans of the first set with the scan of the other that was observed at the same time: each is the nearest of the
+/** Scans of the first set with the scan of the other that was observed at the same time, or so many days later: each is the nearest of the
  *  other, and their mean times differ by less than half an average. */
-function matchScans(first: Visibilities, other: Visibilities): Map<number, number> {
-  const [own, others] = [scanTimes(first), scanTimes(other)];
+function matchScans(first: Visibilities, other: Visibilities, days: number): Map<number, number> {
+  const own = scanTimes(first);
+  const others = scanTimes(other).map((scan) => ({ ...scan, mjd: scan.mjd - days }));
   const pairs = own.flatMap((scan): [number, number][] => {
     const near = nearest(others, scan.mjd);
     if (near === undefined || nearest(own, near.mjd) !== scan) return [];

@@ -1,42 +1,47 @@
 /** The computation of `calibration-check`: measure, judge, budget, write. */
 
-import type { Visibilities } from '../data.ts';
 import { writeJson } from '../formats/json.ts';
 import { readVisibilities, writeVisibilities } from '../formats/visibilities.ts';
-import type { Finding, StageReport, StageTask } from '../kind.ts';
-import { closureSets } from '../numerics/closures.ts';
-import { exp } from '../numerics/elementary.ts';
+import type { StageReport, StageTask } from '../kind.ts';
 import { checkAfterFit } from './after-fit.ts';
-import { agreement } from './agreement.ts';
-import { type Measured, measure, type Outcome, runChecks } from './checks.ts';
-import { type ErrorBudget, estimateBudget, withBudget } from './error-budget.ts';
-import { outOfLimitsText } from './findings.ts';
-import { checkOther, measureOther, type OtherMeasured, otherReport } from './other-agreement.ts';
+import { measure, type Outcome, runChecks } from './checks.ts';
+import { estimateBudget, withBudget } from './error-budget.ts';
+import { type Judged, outOfLimitsText, plain } from './findings.ts';
+import { checkOther, measureOther } from './other-agreement.ts';
 import { readParameters } from './parameters.ts';
+import { reportOf } from './report.ts';
 import { checkStatedNoise } from './stated-noise.ts';
+import { checkTrends, measureTrends } from './trends.ts';
 
 export function compute(task: StageTask): StageReport {
   const parameters = readParameters(task.parameters);
   const visibilities = readVisibilities(task.inputs.visibilities[0]);
   const measured = measure(visibilities, parameters);
+  const trends = measureTrends(visibilities, measured);
   task.note('measured', { pairs: measured.pairs.length, triangles: measured.triangles.length });
-  const otherSource = task.inputs.other?.[0];
-  const other = otherSource && measureOther(visibilities, readVisibilities(otherSource), parameters);
+  const otherSources = task.inputs.other ?? [];
+  const others = otherSources.map((source) =>
+    measureOther(visibilities, readVisibilities(source), parameters),
+  );
   task.progress(0.4);
+  const name = (k: number) => (others.length > 1 ? otherSources[k].name : '');
+  const afterFit = checkAfterFit(task.inputs.fitReport?.[0], task.inputs.residuals?.[0], parameters);
   const outcomes = [
     ...runChecks(visibilities, measured, parameters),
+    checkTrends(trends, parameters),
     ...checkStatedNoise(task.inputs.report?.[0], parameters),
-    ...(other ? checkOther(other, parameters) : []),
-    ...checkAfterFit(task.inputs.fitReport?.[0], task.inputs.residuals?.[0], parameters),
+    ...others.flatMap((other, k) => checkOther(other, parameters, name(k))),
+    ...afterFit.outcomes,
   ];
-  const errorBudget = estimateBudget(measured, other, parameters);
-  const findings = outcomes.filter((outcome): outcome is Finding => 'finding' in outcome);
+  const errorBudget = estimateBudget(measured, others[0], parameters);
+  const findings = outcomes.filter((outcome): outcome is Judged => 'finding' in outcome);
   const warnings = [...outcomes.flatMap(tooLittleWarning), ...errorBudget.warnings];
   writeVisibilities(task.outputs.visibilities, withBudget(visibilities, errorBudget));
-  writeJson(task.outputs.report, reportOf(visibilities, measured, other, findings, errorBudget, warnings));
+  const found = { measured, trends, others, afterFit, findings, errorBudget, warnings };
+  writeJson(task.outputs.report, reportOf(visibilities, found, parameters));
   const out = outOfLimitsText(findings);
   return {
-    findings,
+    findings: findings.map(plain),
     warnings,
     ...(out === undefined ? {} : parameters.outOfLimits === 'stop' ? { stop: out } : { mark: out }),
   };
@@ -46,55 +51,4 @@ function tooLittleWarning(outcome: Outcome): string[] {
   if (!('tooLittle' in outcome)) return [];
   const on = outcome.on === undefined ? '' : ` on ${outcome.on}`;
   return [`Check ${outcome.check} was not made${on}: ${outcome.tooLittle}.`];
-}
-
-function reportOf(
-  visibilities: Visibilities,
-  measured: Measured,
-  other: OtherMeasured | undefined,
-  findings: readonly Finding[],
-  errorBudget: ErrorBudget,
-  warnings: readonly string[],
-) {
-  const { stations } = visibilities;
-  const sets = closureSets(visibilities, { minimumSnr: 0, minimumAmplitudeSnr: 0 });
-  const count = (lists: readonly (readonly unknown[])[]) => lists.reduce((sum, list) => sum + list.length, 0);
-  return {
-    target: visibilities.target.name,
-    remark: visibilities.remark,
-    findings,
-    errorBudget: {
-      amplitudeFraction: errorBudget.amplitude,
-      phaseDegrees: (errorBudget.phase * 180) / Math.PI,
-      amplitudeEstimatedFrom: errorBudget.amplitudeFrom,
-      phaseEstimatedFrom: errorBudget.phaseFrom,
-      ...(other ? { lowerBounds: errorBudget.lowerBounds } : {}),
-    },
-    closures: {
-      scans: sets.length,
-      triangles: count(sets.map((set) => set.triangles)),
-      quadrangles: count(sets.map((set) => set.quadrangles)),
-      trivialTriangles: measured.triangles.length,
-      trivialQuadrangles: agreement(measured.amplitudeGroups).degrees,
-    },
-    pairs: measured.pairs.map((pair) => ({
-      stations: [stations[pair.a].name, stations[pair.b].name],
-      distanceMetres: pair.distance,
-    })),
-    gainRatios: measured.pairGains.map(({ pair, scans, logRatio, sigma, offset, scatter }) => ({
-      stations: [stations[pair.a].name, stations[pair.b].name],
-      meanLogRatio: offset,
-      scatter,
-      scans,
-      logRatio,
-      sigma,
-    })),
-    stationGains: measured.stationGains.map(({ station, logGain }) => ({
-      station: stations[station].name,
-      gain: exp(logGain),
-      logGain,
-    })),
-    ...(other ? { otherAgreement: otherReport(other) } : {}),
-    warnings,
-  };
 }

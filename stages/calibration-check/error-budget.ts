@@ -1,7 +1,8 @@
 /** The error budget: what every amplitude and phase needs, beyond its noise, for values that must agree to scatter by
  *  their errors. From co-located stations; where these give too few values, from the differences to another band or
  *  hand. Those give a lower bound for hands: errors that both have in common cancel in them. Between bands the source's
- *  own difference enters too, which the warning says. */
+ *  own difference enters too, which the warning says. The budget's own uncertainty is an interval of 68 %, by inverting
+ *  the chi-square test (agreement.ts). */
 
 import type { Visibilities } from '../data.ts';
 import { agreement, budget, type Group } from './agreement.ts';
@@ -14,25 +15,29 @@ const MOST = { amplitude: 1, phase: Math.PI } as const;
 /** Hands of one observation may differ by so much in (u,v), where one lacks some records; bands differ by more. */
 const SAME_UV = 1e-3;
 
+export interface BudgetPart {
+  readonly value: number;
+  /** 68 %; null when the recipe gives the value. */
+  readonly interval: readonly [number, number] | null;
+  /** On how many independent values it was estimated; null when the recipe gives it. */
+  readonly from: number | null;
+  readonly isLowerBound: boolean;
+}
+
 export interface ErrorBudget {
   /** Fraction of the amplitude. */
-  readonly amplitude: number;
+  readonly amplitude: BudgetPart;
   /** Radians. */
-  readonly phase: number;
-  /** On how many independent values each was estimated; null when the recipe gives it. */
-  readonly amplitudeFrom: number | null;
-  readonly phaseFrom: number | null;
-  /** Which of the two are lower bounds. */
-  readonly lowerBounds: readonly string[];
+  readonly phase: BudgetPart;
   readonly warnings: readonly string[];
 }
 
+/** @param other  the comparison that the budget may fall back on: the first of those made */
 export function estimateBudget(
   measured: Measured,
   other: OtherMeasured | undefined,
-  parameters: CheckParameters,
+  { amplitudeBudget, phaseBudget, least }: CheckParameters,
 ): ErrorBudget {
-  const { amplitudeBudget, phaseBudget, least } = parameters;
   const amplitude = estimate(
     measured.amplitudeGroups,
     other?.amplitudes?.groups ?? [],
@@ -52,19 +57,10 @@ export function estimateBudget(
     ['phase', phase],
   ] as const;
   return {
-    amplitude: amplitude.value,
-    phase: phase.value,
-    amplitudeFrom: amplitude.from,
-    phaseFrom: phase.from,
-    lowerBounds: both.filter(([, { isLowerBound }]) => isLowerBound).map(([what]) => what),
+    amplitude,
+    phase,
     warnings: both.flatMap(([what, found]) => warningOf(what, found, least, other?.rows.uvDifference ?? 0)),
   };
-}
-
-interface Estimate {
-  readonly value: number;
-  readonly from: number | null;
-  readonly isLowerBound: boolean;
 }
 
 function estimate(
@@ -73,18 +69,23 @@ function estimate(
   given: number | 'estimate',
   most: number,
   least: number,
-): Estimate {
-  if (given !== 'estimate') return { value: given, from: null, isLowerBound: false };
+): BudgetPart {
+  if (given !== 'estimate') return { value: given, interval: null, from: null, isLowerBound: false };
   const { degrees } = agreement(groups);
-  if (degrees >= least) return { value: budget(groups, most), from: degrees, isLowerBound: false };
-  const others = otherGroups.length;
-  if (others >= least) return { value: budget(otherGroups, most), from: others, isLowerBound: true };
-  return { value: 0, from: degrees, isLowerBound: false };
+  if (degrees >= least) return partOf(groups, most, degrees, false);
+  const others = agreement(otherGroups).degrees;
+  if (others >= least) return partOf(otherGroups, most, others, true);
+  return { value: 0, interval: null, from: degrees, isLowerBound: false };
+}
+
+function partOf(groups: readonly Group[], most: number, from: number, isLowerBound: boolean): BudgetPart {
+  const { value, low, high } = budget(groups, most);
+  return { value, interval: [low, high], from, isLowerBound };
 }
 
 function warningOf(
   what: string,
-  { from, isLowerBound }: Estimate,
+  { from, isLowerBound }: BudgetPart,
   least: number,
   uvDifference: number,
 ): string[] {
@@ -102,9 +103,29 @@ function warningOf(
     : [];
 }
 
+/** What the report says of it. */
+export function budgetReport({ amplitude, phase }: ErrorBudget, hasOther: boolean) {
+  const degrees = (radians: number) => (radians * 180) / Math.PI;
+  const lowerBounds = [
+    ...(amplitude.isLowerBound ? ['amplitude'] : []),
+    ...(phase.isLowerBound ? ['phase'] : []),
+  ];
+  return {
+    amplitudeFraction: amplitude.value,
+    phaseDegrees: degrees(phase.value),
+    /** 68 %. */
+    amplitudeInterval: amplitude.interval,
+    phaseIntervalDegrees: phase.interval?.map(degrees) ?? null,
+    amplitudeEstimatedFrom: amplitude.from,
+    phaseEstimatedFrom: phase.from,
+    ...(hasOther ? { lowerBounds } : {}),
+  };
+}
+
 /** The budget in quadrature: amplitude·|V| on sigma, phase on sigmaPhase. */
-export function withBudget(visibilities: Visibilities, { amplitude, phase }: ErrorBudget): Visibilities {
+export function withBudget(visibilities: Visibilities, budget: ErrorBudget): Visibilities {
   const { re, im } = visibilities;
+  const [amplitude, phase] = [budget.amplitude.value, budget.phase.value];
   return {
     ...visibilities,
     sigma: visibilities.sigma.map((sigma, k) =>

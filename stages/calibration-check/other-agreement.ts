@@ -1,5 +1,6 @@
-/** Agreement with the same observation in another band or hand. The source is the same, and so are closures: closure
- *  phases and log closure amplitudes of both must differ by their errors only.
+/** Agreement with the same observation in another band or hand, or on another day. The source is the same, and so are
+ *  closures: closure phases and log closure amplitudes of both must differ by their errors only. Of days scans of like
+ *  sidereal time are compared; a source that changes from day to day is then among what differs.
  *
  *  Two hands have the same (u,v). Two bands do not: (u,v) differ by the ratio of the frequencies, and the source itself
  *  differs with them, most of all beside a null of its visibility. Rows are compared only where (u,v) differ by less
@@ -9,6 +10,7 @@ import type { Visibilities } from '../data.ts';
 import type { Outcome } from './checks.ts';
 import {
   type Differences,
+  differencesTail,
   logAmplitudeDifferences,
   phaseDifferences,
   worstBaseline,
@@ -47,34 +49,50 @@ function isOneMeasurement({ first, other }: CommonRows): boolean {
 const CHECK: CheckName = 'otherAgreement';
 
 /** The finding: its value is the larger of the scatter of all and that of the worst baseline, less what the largest of
- *  so many may have above 1 by chance, of closure phases and log closure amplitudes. */
+ *  so many may have above 1 by chance, of closure phases and log closure amplitudes.
+ *  @param name  tells several inputs apart; empty for one */
 export function checkOther(
   { rows, phases, amplitudes }: OtherMeasured,
   parameters: CheckParameters,
+  name = '',
 ): Outcome[] {
+  const whole = name === '' ? {} : { on: name };
   const impossible = reasonAgainst(rows, parameters);
-  if (impossible !== null) return [{ check: CHECK, tooLittle: impossible }];
+  if (impossible !== null) return [{ check: CHECK, ...whole, tooLittle: impossible }];
   if (phases === null || amplitudes === null) {
-    return [{ check: CHECK, tooLittle: 'both inputs hold the same numbers, one measurement written twice' }];
+    const tooLittle = 'both inputs hold the same numbers, one measurement written twice';
+    return [{ check: CHECK, ...whole, tooLittle }];
   }
   const parts = [
-    { name: 'closure phases', differences: phases },
-    { name: 'log closure amplitudes', differences: amplitudes },
+    { quantity: 'closure phases', differences: phases },
+    { quantity: 'log closure amplitudes', differences: amplitudes },
   ];
   const { least } = parameters;
-  const enough = parts.filter(({ differences }) => differences.groups.length >= least);
+  const enough = parts.filter(({ differences }) => differences.independent >= least);
   const missing = parts
     .filter((part) => !enough.includes(part))
-    .map(({ name, differences }) => ({
+    .map(({ quantity, differences }) => ({
       check: CHECK,
-      on: name,
-      tooLittle: `${differences.groups.length} independent ones are in both inputs, at least ${least} are needed`,
+      on: name === '' ? quantity : `${quantity} of ${name}`,
+      tooLittle: `${differences.independent} independent ones are in both inputs, at least ${least} are needed`,
     }));
   if (enough.length === 0) return missing;
   const value = Math.max(...enough.map(({ differences }) => largestScatter(differences)));
-  const details = enough.map(({ name, differences }) => describe(name, differences));
-  const detail = `Scatter of differences to the input other, over the errors of both: ${details.join('; ')}.`;
-  return [judge(CHECK, value, parameters.limits.otherAgreement, detail), ...missing];
+  const details = enough.map(({ quantity, differences }) => describe(quantity, differences));
+  const days = rows.days === 0 ? '' : ` ${describeDays(rows.days)}`;
+  const input = name === '' ? 'the input other' : `the input ${name}`;
+  const detail = `Scatter of differences to ${input}${days}, over the errors of both: ${details.join('; ')}.`;
+  const exceeds = (limit: number) =>
+    enough.reduce((sum, { differences }) => {
+      const p = differencesTail(differences, limit);
+      return sum + p - sum * p;
+    }, 0);
+  return [judge(CHECK, value, parameters.limits.otherAgreement, detail, exceeds), ...missing];
+}
+
+function describeDays(days: number): string {
+  const count = Math.round(Math.abs(days));
+  return `of ${count} ${count === 1 ? 'day' : 'days'} ${days > 0 ? 'later' : 'before'}, at like sidereal time`;
 }
 
 function reasonAgainst(rows: CommonRows, { uvDifference, minimumSnr }: CheckParameters): string | null {
@@ -94,7 +112,7 @@ function largestScatter(differences: Differences): number {
 }
 
 function describe(name: string, differences: Differences): string {
-  const all = `${differences.scatter.toFixed(2)} of ${differences.groups.length} independent ${name}`;
+  const all = `${differences.scatter.toFixed(2)} of ${differences.independent} independent ${name}`;
   const worst = worstBaseline(differences);
   if (worst === undefined) return `${all}, too few to tell baselines apart`;
   return (
@@ -107,7 +125,7 @@ function describe(name: string, differences: Differences): string {
 export function otherReport({ rows, phases, amplitudes }: OtherMeasured) {
   const part = (differences: Differences | null) =>
     differences && {
-      independent: differences.groups.length,
+      independent: differences.independent,
       scatter: differences.scatter,
       medianDifference: differences.offset,
       baselines: differences.baselines.map(({ baseline, normalised, scatter }) => ({
@@ -120,6 +138,7 @@ export function otherReport({ rows, phases, amplitudes }: OtherMeasured) {
     rowsInCommon: rows.found,
     rowsCompared: rows.first.count,
     medianUvDifference: rows.uvDifference,
+    ...(rows.days === 0 ? {} : { daysLater: rows.days }),
     /** Radians. */
     closurePhases: part(phases),
     logClosureAmplitudes: part(amplitudes),

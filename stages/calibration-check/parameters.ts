@@ -14,10 +14,15 @@ export const CHECKS = [
   'redundantAmplitudes',
   'gainOffset',
   'gainScatter',
+  'pairGainsOverTime',
+  'stationAmplitudes',
+  'closureTrends',
   'statedNoise',
+  'noiseByBaseline',
   'otherAgreement',
   'gainsOverTime',
   'baselinePhases',
+  'baselineAmplitudes',
 ] as const;
 
 export type CheckName = (typeof CHECKS)[number];

@@ -11,6 +11,8 @@ import type { StageReport, StageTask } from '../kind.ts';
 import { measureRing } from '../numerics/ring.ts';
 import { InputProblem } from '../problem.ts';
 import { beamOf } from './beam.ts';
+import { drawCalibration } from './calibration-plot.ts';
+import { readCalibration } from './calibration-report.ts';
 import { drawComponents } from './components-plot.ts';
 import { drawCoverage } from './coverage.ts';
 import { drawData } from './data-plot.ts';
@@ -51,6 +53,10 @@ const drawings: Readonly<Record<string, Draw>> = {
   profile: (given, { field }) => drawProfile(profilePlot(given, field)),
   components: ({ basis, remark }, { shown }) => drawComponents(required(basis, 'basis'), shown, remark),
   scree: ({ basis, remark }) => drawScree(required(basis, 'basis'), remark),
+  calibration: ({ heading, remark, sources }) => {
+    const report = readCalibration(required(sources.calibration?.[0] ?? null, 'calibration'));
+    return drawCalibration({ heading, remark, ...report });
+  },
   posterior: (given, { draws }, progress) => {
     const { heading, remark, truth } = given;
     const [basis, samples] = [required(given.basis, 'basis'), required(given.samples, 'samples')];

@@ -4,8 +4,8 @@ import type { StageKind } from '../kind.ts';
  *  inputs are given. */
 export const figure = {
   kind: 'figure',
-  version: 2,
-  doc: 'Draws coverage, data, image, profile, components, spectrum and posterior as SVG.',
+  version: 3,
+  doc: 'Draws coverage, data, image, profile, components, spectrum, posterior and calibration as SVG.',
   source:
     'Colours: CIE 15:2004 and IEC 61966-2-1, maps of our own. Interpolation: Keys 1981, IEEE Trans. ASSP 29, 1153. ' +
     'Bins: Freedman and Diaconis 1981, Z. Wahrscheinlichkeitstheorie 57, 453.',
@@ -28,7 +28,7 @@ export const figure = {
     calibration: {
       format: 'json',
       optional: true,
-      doc: 'Findings of the calibration check, named under the data.',
+      doc: 'The report of the calibration check: drawn, and named under the data.',
     },
   },
   parameters: {
@@ -84,6 +84,11 @@ export const figure = {
       format: 'svg',
       needs: ['samples', 'basis'],
       doc: 'Histograms of flux, ring and leading coefficients over the posterior.',
+    },
+    calibration: {
+      format: 'svg',
+      needs: ['calibration'],
+      doc: 'Every check with its value, limits and finding; gains against time.',
     },
   },
   load: () => import('./compute.ts'),

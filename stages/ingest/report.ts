@@ -105,7 +105,32 @@ function scatterOf(observation: Observation, timetable: Timetable, { averages }:
     averages: judged.length,
     median: middle(values),
     worst: extreme(observation, timetable, averages, judged, averages.scatter),
+    baselines: scatterByBaseline(observation, averages, judged),
   };
+}
+
+/** The same pooled over the scans of each baseline, with its degrees of freedom, 2 (n − 1) for n records. */
+function scatterByBaseline(
+  { stations }: Observation,
+  averages: AveragingResult['averages'],
+  judged: readonly number[],
+) {
+  const sums = new Map<string, { averages: number; degrees: number; chiSquare: number }>();
+  for (const k of judged) {
+    const baseline = `${stations[averages.station1[k]].name}–${stations[averages.station2[k]].name}`;
+    const sum = sums.get(baseline) ?? { averages: 0, degrees: 0, chiSquare: 0 };
+    const degrees = 2 * (averages.records[k] - 1);
+    sum.averages++;
+    sum.degrees += degrees;
+    sum.chiSquare += degrees * averages.scatter[k];
+    sums.set(baseline, sum);
+  }
+  return [...sums].map(([baseline, { averages: count, degrees, chiSquare }]) => ({
+    baseline,
+    averages: count,
+    degrees,
+    value: chiSquare / degrees,
+  }));
 }
 
 function coherenceOf(observation: Observation, timetable: Timetable, { averages }: AveragingResult) {

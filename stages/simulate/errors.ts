@@ -35,7 +35,7 @@ export function observe(simulation: Simulation, tracks: Tracks, re: Float64Array
     const vRe = c * re[k] - s * im[k];
     const vIm = s * re[k] + c * im[k];
     const sigma = rowSigma(simulation, i, j);
-    const drawn = sigma * simulation.noiseFactor;
+    const drawn = sigma * simulation.noiseFactor * fault.noise;
     for (const hand of [hands.rr, hands.ll]) {
       hand.re[k] = vRe + drawn * noise.normal();
       hand.im[k] = vIm + drawn * noise.normal();
@@ -45,12 +45,12 @@ export function observe(simulation: Simulation, tracks: Tracks, re: Float64Array
   return hands;
 }
 
-/** What planted faults add to the log gain and the phase of a baseline at a time. */
+/** What planted faults add to the log gain and the phase of a baseline at a time, and multiply its noise by. */
 function plantedFaults({ faults, stations, startMjd }: Simulation) {
   const index = (name: string | undefined) => stations.findIndex((station) => station.name === name);
   const active = faults.map((fault) => ({ ...fault, a: index(fault.station), b: index(fault.other) }));
   return (mjd: number, i: number, j: number) => {
-    let [logGain, phase] = [0, 0];
+    let [logGain, phase, noise] = [0, 0, 1];
     const hours = (mjd - startMjd) * 24;
     for (const { fault, from, duration, value, a, b } of active) {
       if (hours < from || hours >= from + duration) continue;
@@ -58,8 +58,10 @@ function plantedFaults({ faults, stations, startMjd }: Simulation) {
       if (fault === 'non-closing-phase' && ((a === i && b === j) || (a === j && b === i))) {
         phase += (a === i ? 1 : -1) * ((value * Math.PI) / 180);
       }
+      // Without stations of all baselines, with one of its own, with two of the one between them.
+      if (fault === 'noise-understated' && [a, b].every((k) => k < 0 || k === i || k === j)) noise *= value;
     }
-    return { logGain, phase };
+    return { logGain, phase, noise };
   };
 }
 

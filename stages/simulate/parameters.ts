@@ -37,7 +37,12 @@ export interface RingTruth {
 
 /** A planted fault, as declared: hours since the start, degrees or seconds. */
 export interface Fault {
-  readonly fault: 'gain-drop' | 'non-closing-phase' | 'stations-swapped' | 'clock-offset';
+  readonly fault:
+    | 'gain-drop'
+    | 'non-closing-phase'
+    | 'noise-understated'
+    | 'stations-swapped'
+    | 'clock-offset';
   readonly station?: string;
   readonly other?: string;
   readonly from: number;
@@ -216,23 +221,28 @@ function requireSchedule({ record, scan, interval, duration }: Declared): void {
   }
 }
 
-/** How many stations a fault is about. */
+/** How many stations a fault is about: least and most. */
 const STATIONS_OF = {
-  'gain-drop': 1,
-  'non-closing-phase': 2,
-  'stations-swapped': 2,
-  'clock-offset': 0,
+  'gain-drop': [1, 1],
+  'non-closing-phase': [2, 2],
+  'noise-understated': [0, 2],
+  'stations-swapped': [2, 2],
+  'clock-offset': [0, 0],
 } as const;
+
+/** What the value of a fault may not be 0 or below for. */
+const FACTORS: readonly Fault['fault'][] = ['gain-drop', 'noise-understated'];
 
 function requireFaults({ faults = [], stations }: Declared): readonly Fault[] {
   const known = stations.map(({ name }) => name);
   for (const [k, { fault, station, other, value }] of faults.entries()) {
     const named = [station, other].filter((name) => name !== undefined);
     const place = `faults, number ${k + 1}`;
-    if (named.length !== STATIONS_OF[fault] || new Set(named).size !== named.length) {
+    const [least, most] = STATIONS_OF[fault];
+    if (!(named.length >= least && named.length <= most) || new Set(named).size !== named.length) {
       throw parameterProblem(
         place,
-        `${STATIONS_OF[fault]} different stations for ${fault}`,
+        `${least === most ? least : `${least} to ${most}`} different stations for ${fault}`,
         named.join(' and ') || 'none',
         'Name them as `station` and `other`.',
       );
@@ -240,7 +250,7 @@ function requireFaults({ faults = [], stations }: Declared): readonly Fault[] {
     const unknown = named.find((name) => !known.includes(name));
     if (unknown !== undefined)
       throw parameterProblem(place, `stations among ${known.join(', ')}`, unknown, 'Correct the name.');
-    if (fault === 'gain-drop' && !(value > 0))
+    if (FACTORS.includes(fault) && !(value > 0))
       throw parameterProblem(place, 'a factor above 0', `${value}`, 'Half the gain is 0.5.');
   }
   return faults;

@@ -5,7 +5,7 @@ import { ringTruth, station } from './declared-groups.ts';
 
 export const simulate = {
   kind: 'simulate',
-  version: 2,
+  version: 3,
   doc:
     'A synthetic observation: visibilities of a blurred ring or of an image, along the tracks that the rotation of the ' +
     'Earth gives an array, with thermal noise, station gains, station phases and, if asked for, errors that do not ' +
@@ -167,11 +167,18 @@ export const simulate = {
         fields: {
           fault: {
             type: 'word',
-            words: ['gain-drop', 'non-closing-phase', 'stations-swapped', 'clock-offset'],
+            words: [
+              'gain-drop',
+              'non-closing-phase',
+              'noise-understated',
+              'stations-swapped',
+              'clock-offset',
+            ],
             doc:
               '`gain-drop`: the gain of `station` times `value` for a while. `non-closing-phase`: `value` degrees on the baseline ' +
-              'of `station` and `other`. `stations-swapped`: the positions of the two exchanged in the antenna table. ' +
-              '`clock-offset`: all times late by `value` seconds. (Noise that is understated: `noiseFactor`.)',
+              'of `station` and `other`. `noise-understated`: the noise `value` times what the weights say, on all ' +
+              'baselines, those of `station`, or the one of `station` and `other`. `stations-swapped`: the positions of ' +
+              'the two exchanged in the antenna table. `clock-offset`: all times late by `value` seconds.',
           },
           station: { type: 'text', optional: true, doc: 'Name of a station.' },
           other: { type: 'text', optional: true, doc: 'Name of a second one.' },

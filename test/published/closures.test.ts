@@ -78,6 +78,27 @@ test('The double source of ratio 0.4 at (30, −15) µas has a closure phase of 
   ).toBeLessThan(1e-11);
 });
 
+describe('The mean of ln|V + n| above ln|V|', () => {
+  // E1(snr²/2)/2; E1(0.5) = 0.559773595, E1(2) = 0.048900511, E1(4.5) = 0.002073401 (Abramowitz & Stegun, table 5.1; the last
+  // computed outside).
+  test.each([
+    [1, 0.559773595],
+    [2, 0.048900511],
+    [3, 0.002073401],
+  ])('is E1(snr²/2)/2 at a signal-to-noise ratio of %d', (snr, E1) => {
+    const stream = randomStream(snr, 'log amplitudes');
+    const draws = 200_000;
+    let [sum, squares] = [0, 0];
+    for (let draw = 0; draw < draws; draw++) {
+      const value = Math.log(Math.hypot(snr + stream.normal(), stream.normal()) / snr);
+      sum += value;
+      squares += value * value;
+    }
+    const error = Math.sqrt(squares / draws / draws);
+    expect(Math.abs(sum / draws - E1 / 2)).toBeLessThan(4 * error);
+  });
+});
+
 describe('Errors of closures to first order (ibid., sections 9.3 and 10.3)', () => {
   test('add 1/snr² along a triangle: 0.0237345… rad² for 12, 9, 15', () => {
     const snr = [12, 9, 15];

@@ -140,8 +140,10 @@ describe('Sound data', () => {
   test.each([1, 2, 3, 4, 5, 6])(
     'pass every check and need next to no error budget (seed %d)',
     async (seed) => {
+      // The source of these data jumps from scan to scan, which a track through a real one does not.
       const { findings, warnings, stop, mark, document } = await check(
         observe(seed, TWO_PAIRS, { gainScatter: 0.05 }),
+        { stationAmplitudes: { marginal: 2, limit: 3 } },
       );
       expect(findings?.map((each) => [each.check, each.finding])).toEqual([
         ['closureScatter', 'within limits'],
@@ -149,6 +151,9 @@ describe('Sound data', () => {
         ['redundantAmplitudes', 'within limits'],
         ['gainOffset', 'within limits'],
         ['gainScatter', 'within limits'],
+        ['pairGainsOverTime', 'within limits'],
+        ['stationAmplitudes', 'within limits'],
+        ['closureTrends', 'within limits'],
       ]);
       expect([warnings, stop, mark]).toEqual([[], undefined, undefined]);
       // Thermal errors of these visibilities are 1 to 3 %; a scatter 10 % high by chance asks for 0.5 of that.
@@ -339,17 +344,92 @@ describe('The error budget', () => {
   });
 });
 
+describe('The interval of the error budget', () => {
+  test('holds the planted error in 68 % of cases', async () => {
+    const [planted, degrees] = [0.05, (0.04 * 180) / Math.PI];
+    let [amplitudes, phases] = [0, 0];
+    const seeds = 30;
+    for (let seed = 1; seed <= seeds; seed++) {
+      const errors = { nonClosingAmplitude: planted, nonClosingPhase: 0.04, scans: 10 };
+      const { document } = await check(observe(700 + seed, ONE_PAIR, errors), { outOfLimits: 'mark' });
+      const { amplitudeInterval, phaseIntervalDegrees } = document.errorBudget as unknown as Record<
+        string,
+        [number, number]
+      >;
+      if (amplitudeInterval[0] <= planted && planted <= amplitudeInterval[1]) amplitudes++;
+      if (phaseIntervalDegrees[0] <= degrees && degrees <= phaseIntervalDegrees[1]) phases++;
+    }
+    // Binomial with 30 and 0.683: 20.5 ± 2.5, to four standard deviations below and all but all above. The chi-square is
+    // exact for phases of triangles with their covariance, and for amplitudes.
+    for (const count of [amplitudes, phases]) {
+      expect(count).toBeGreaterThan(20.5 - 10);
+      expect(count).toBeLessThan(30);
+    }
+  });
+
+  test('is null where the recipe gives the error', async () => {
+    const { document } = await check(observe(1, ONE_PAIR), { amplitudeBudget: 0.1, phaseBudget: '2 deg' });
+    expect(document.errorBudget).toMatchObject({ amplitudeInterval: null, phaseIntervalDegrees: null });
+  });
+});
+
+describe('False alarms', () => {
+  test('come as often as the report says: probabilities are spread evenly over 40 seeds', async () => {
+    const asLarge = new Map<string, number[]>();
+    for (let seed = 1; seed <= 40; seed++) {
+      const { document } = await check(observe(300 + seed, ONE_PAIR, { scans: 12 }), { outOfLimits: 'mark' });
+      for (const alarm of (document as unknown as { falseAlarms: { check: string; asLarge: number }[] })
+        .falseAlarms) {
+        asLarge.set(alarm.check, [...(asLarge.get(alarm.check) ?? []), alarm.asLarge]);
+      }
+    }
+    expect([...asLarge.keys()]).toEqual([
+      'closureScatter',
+      'redundantPhases',
+      'redundantAmplitudes',
+      'closureTrends',
+    ]);
+    for (const [check, p] of asLarge) {
+      for (const level of [0.1, 0.3, 0.5, 0.7, 0.9]) {
+        // Four standard deviations of a binomial; rank correlations with time and elevation are not independent, for
+        // which the allowance for trials is too large: alarms are rarer there, never more frequent.
+        const found = p.filter((each) => each < level).length / p.length;
+        const four = 4 * Math.sqrt((level * (1 - level)) / p.length);
+        expect(found, `${check} below ${level}`).toBeLessThan(level + four);
+        if (check !== 'closureTrends') expect(found, `${check} below ${level}`).toBeGreaterThan(level - four);
+      }
+    }
+  });
+
+  test('are stated for the limits in force', async () => {
+    const limits = { closureScatter: { marginal: 1, limit: 1.2 } };
+    const { document } = await check(observe(1, ONE_PAIR), { ...limits, outOfLimits: 'mark' });
+    const [alarm] = (
+      document as unknown as { falseAlarms: { check: string; marginal: number; outOfLimits: number }[] }
+    ).falseAlarms;
+    // 80 triangles: chi-square of 80 degrees above 80 in a little less than half, above 115.2 between the 112.329 of 0.01
+    // and the 116.321 of 0.005 (Abramowitz & Stegun, table 26.8).
+    expect(alarm.check).toBe('closureScatter');
+    expect(alarm.marginal).toBeGreaterThan(0.45);
+    expect(alarm.marginal).toBeLessThan(0.5);
+    expect(alarm.outOfLimits).toBeGreaterThan(0.005);
+    expect(alarm.outOfLimits).toBeLessThan(0.01);
+  });
+});
+
 describe('Data without co-located stations', () => {
   test('are passed on as they are, with a warning for every check that could not be made', async () => {
     const data = observe(12, NO_PAIR);
     const { findings, warnings, document, visibilities } = await check(data);
-    expect(findings).toEqual([]);
+    expect(findings?.map(({ check }) => check)).toEqual(['stationAmplitudes']);
     expect(warnings).toEqual([
       'Check closureScatter was not made: 0 independent closure phases of triangles with two co-located stations, at least 10 are needed.',
       'Check redundantPhases was not made: 0 independent phase differences on far baselines of co-located stations, at least 10 are needed.',
       'Check redundantAmplitudes was not made: 0 independent closure amplitudes that must be 1, at least 10 are needed.',
       'Check gainOffset was not made: no two co-located stations share a far baseline in two scans.',
       'Check gainScatter was not made: no two co-located stations share a far baseline in two scans.',
+      'Check pairGainsOverTime was not made: no two co-located stations share a far baseline in 4 scans.',
+      'Check closureTrends was not made: no triangle with two co-located stations in 8 scans.',
       'The amplitude of the error budget is 0: 0 values are too few to estimate it.',
       'The phase of the error budget is 0: 0 values are too few to estimate it.',
     ]);

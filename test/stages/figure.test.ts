@@ -42,8 +42,12 @@ const inputs: Record<string, ByteSource[]> = {
   calibration: file('calibration', (sink) =>
     writeJson(sink, {
       findings: [
-        { check: 'closure-scatter', finding: 'marginal' },
-        { check: 'gains', finding: 'within limits' },
+        { check: 'closure-scatter', finding: 'marginal', value: 2, marginal: 1.5, limit: 2.5 },
+        { check: 'gains', finding: 'within limits', value: 0.1, marginal: 0.2, limit: 0.6 },
+        { check: 'noise', finding: 'out of limits', value: 9, marginal: 1.4, limit: 1.8 },
+      ],
+      gainRatios: [
+        { stations: ['AA', 'BB'], scans: [0, 1, 2], logRatio: [0.1, 0, -0.7], sigma: [0.02, 0.03, 0.02] },
       ],
     }),
   ),
@@ -168,7 +172,39 @@ describe('figure', () => {
     // Measured, model and residual of each sort, then the two of the legend.
     expect(dots).toEqual([a, a, a, c, c, c, 1, 1]);
     expect(drawn.data).toContain(
-      'aria-label="Calibration: 1 check within limits; marginal: closure-scatter"',
+      'aria-label="Calibration: 1 check within limits; marginal: closure-scatter; out of limits: noise"',
+    );
+  });
+
+  it('draws a bar for every check as long as its value is to its limit, and every gain', () => {
+    const bars = [
+      ...drawn.calibration.matchAll(/<rect x="184" y="[\d.]+" width="([\d.]+)" height="14"/g),
+    ].map(([, width]) => Number(width));
+    // Limits are 2.5, 0.6 and 1.8: 0.8, 1/6, and 5, which is cut at 2.
+    expect(bars[0] / bars[2]).toBeCloseTo(0.8 / 2, 3);
+    expect(bars[1] / bars[2]).toBeCloseTo(1 / 6 / 2, 3);
+    expect(drawn.calibration).toContain('aria-label="9  (1.4, 1.8)"');
+    expect(drawn.calibration).toContain(
+      'aria-label="gain ratios of co-located stations, ln less median; a lane is ±0.88"',
+    );
+    const dots = [...drawn.calibration.matchAll(/d="((?:M[\d.]+ [\d.]+h\.01)+)"/g)];
+    expect(dots.map(([, d]) => d.match(/M/g)?.length)).toEqual([3]);
+  });
+
+  it('draws the gains of the fit in place of ratios, and says when no check was made', () => {
+    const gainsOverTime = [{ station: 'CC', scans: [1, 2], logGain: [0, 0.2], deviations: [0.1, 0.1] }];
+    const report = file('calibration', (sink) => writeJson(sink, { findings: [], gainsOverTime }));
+    const { calibration } = drawAll({ ...inputs, calibration: report }, ['calibration']);
+    expect(calibration).toContain('aria-label="No check was made."');
+    expect(calibration).toContain('gains of the fit, ln less median');
+    expect(calibration).toContain('aria-label="CC"');
+  });
+
+  it('refuses a calibration report without limits', () => {
+    const findings = [{ check: 'gains', finding: 'marginal', value: 1, marginal: 1 }];
+    const report = file('calibration', (sink) => writeJson(sink, { findings }));
+    expect(() => drawAll({ calibration: report }, ['calibration'])).toThrow(
+      /^calibration, findings\.0\.limit: bad-report: expected a report with findings and their limits, as the calibration check writes it, got /,
     );
   });
 

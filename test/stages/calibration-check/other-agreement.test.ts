@@ -257,6 +257,69 @@ describe('Two bands', () => {
   });
 });
 
+describe('Other days', () => {
+  // A sidereal day is 23 h 56 min 4 s (common practice): then the tracks are the same.
+  const nextDay = { start: '2031-03-11T20:56:04Z' };
+
+  test('at like sidereal time agree, and the days between are told', async () => {
+    const { finding, document } = await check(
+      await ingested(await observe({ seed: 1 })),
+      await ingested(await observe({ seed: 2, ...nextDay })),
+    );
+    expect(finding.finding).toBe('within limits');
+    expect(finding.detail).toMatch(
+      /^Scatter of differences to the input other of 1 day later, at like sidereal time, over the errors of both: /,
+    );
+    const { rowsCompared, rowsInCommon, medianUvDifference } = document.otherAgreement as {
+      rowsCompared: number;
+      rowsInCommon: number;
+      medianUvDifference: number;
+    };
+    expect(rowsCompared).toBe(rowsInCommon);
+    // A tenth of a second of time, 7e-6 radians, is lost in rounding a sidereal day to seconds.
+    expect(medianUvDifference).toBeLessThan(2e-5);
+  });
+
+  test('tell a baseline that is off on one of them', async () => {
+    const second = await ingested(await observe({ seed: 2, ...nextDay }));
+    const { finding } = await check(
+      await ingested(await observe({ seed: 1 })),
+      onBaseline(second, 'TALLOW', 'BEACON', 1, 15),
+    );
+    expect(finding.finding).toBe('out of limits');
+    expect(finding.detail).toContain('worst for TALLOW–BEACON, ');
+  });
+
+  test('at other sidereal times are not compared', async () => {
+    const { finding, warnings } = await check(
+      await ingested(await observe({ seed: 1 })),
+      await ingested(await observe({ seed: 2, start: '2031-03-11T20:51:04Z' })),
+    );
+    expect(finding).toBeUndefined();
+    expect(warnings[0]).toContain('no baseline is in both inputs at the same time');
+  });
+});
+
+describe('Several others', () => {
+  test('are each compared, and told apart by their names', async () => {
+    const third = onBaseline(ll, 'TALLOW', 'EMBER', 1, 15);
+    const { report, outputs } = await runKind(
+      calibrationCheck,
+      { outOfLimits: 'mark' },
+      {
+        visibilities: [sourceFor(rr, 'visibilities')],
+        other: [sourceFor(ll, 'other[0]'), sourceFor(third, 'other[1]')],
+      },
+    );
+    const found = report.findings?.filter(({ check }) => check === 'otherAgreement') ?? [];
+    expect(found.map(({ finding }) => finding)).toEqual(['within limits', 'out of limits']);
+    expect(found[0].detail).toContain('to the input other[0], over');
+    expect(found[1].detail).toContain('to the input other[1], over');
+    const text = new TextDecoder().decode(outputs.report.read(0, outputs.report.size));
+    expect(JSON.parse(text).otherAgreements).toHaveLength(2);
+  });
+});
+
 describe('What cannot be compared', () => {
   test('is one measurement written twice', async () => {
     const { warnings, finding } = await check(rr, rr);

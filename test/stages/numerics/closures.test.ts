@@ -1,6 +1,7 @@
 /** Identities of closures: what stations do to them, what is left when baselines are missing, wrapping. */
 
 import fc from 'fast-check';
+import { Matrix, SingularValueDecomposition } from 'ml-matrix';
 import { describe, expect, test } from 'vitest';
 import {
   type Closure,
@@ -73,6 +74,24 @@ function rank(closures: readonly Closure[], columns: number): number {
   return found;
 }
 
+/** Rank by singular values, from a library that the closures do not use. Singular values of such matrices of 0 and ±1 are
+ *  0 or of the order of 1. */
+function singularRank(closures: readonly Closure[], columns: number): number {
+  if (closures.length === 0) return 0;
+  const design = Matrix.zeros(closures.length, columns);
+  closures.forEach(({ rows, signs }, r) => {
+    rows.forEach((row, m) => {
+      design.set(r, row, signs[m]);
+    });
+  });
+  const svd = new SingularValueDecomposition(design, {
+    autoTranspose: true,
+    computeLeftSingularVectors: false,
+    computeRightSingularVectors: false,
+  });
+  return svd.diagonal.filter((value) => value > 1e-6).length;
+}
+
 const anyScan = fc.record({
   seed: fc.integer({ min: 0, max: 1e6 }),
   N: fc.integer({ min: 3, max: 7 }),
@@ -131,6 +150,83 @@ describe('Closures', () => {
       }),
       { numRuns: 60, seed: 2 },
     );
+  });
+
+  test('of 3 to 12 stations with baselines missing are independent, and as many as singular values of the design matrix', () => {
+    const arrays = fc.record({
+      seed: fc.integer({ min: 0, max: 1e6 }),
+      N: fc.integer({ min: 3, max: 12 }),
+      missing: fc.double({ min: 0, max: 0.6, noNaN: true }),
+    });
+    const seen = new Set<number>();
+    fc.assert(
+      fc.property(arrays, ({ seed, N, missing }) => {
+        const stream = randomStream(seed, 'missing baselines');
+        const data = randomScans(seed, N, 1, () => stream.uniform() >= missing);
+        if (data.count === 0) return;
+        seen.add(N);
+        const [set] = closureSets(data, { minimumSnr: 0 });
+        for (const [chosen, all] of [
+          [set?.triangles ?? [], trianglesOf(data, 0, { minimumSnr: 0 })],
+          [set?.quadrangles ?? [], quadranglesOf(data, 0, { minimumSnr: 0 })],
+        ]) {
+          expect(chosen.length).toBe(singularRank(all, data.count));
+          expect(singularRank(chosen, data.count)).toBe(chosen.length);
+        }
+      }),
+      { numRuns: 40, seed: 4 },
+    );
+    expect([...seen].sort((a, b) => a - b)).toEqual([3, 4, 5, 6, 7, 8, 9, 10, 11, 12]);
+  });
+
+  test('scatter with the covariance that is stated, all of it: 6,000 draws of noise', () => {
+    // An entry of the sample covariance of n draws has the variance (C_aa C_bb + C_ab²)/n (Wishart; Anderson 1958,
+    // section 7.2). The first order in 1/snr errs by 1/snr², below 1 % at 20.
+    const N = 5;
+    const stream = randomStream(12, 'covariance');
+    const still = randomScans(3, N, 1);
+    const sigma = still.re.map((re, k) => Math.hypot(re, still.im[k]) / stream.between(20, 60));
+    const exact = {
+      ...still,
+      sigma,
+      sigmaPhase: sigma.map((s, k) => s / Math.hypot(still.re[k], still.im[k])),
+    };
+    const [set] = closureSets(exact, { minimumSnr: 0 });
+    const draws = 6000;
+    const lists = [
+      { closures: set.triangles, covariance: set.phaseCovariance, value: closurePhase },
+      { closures: set.quadrangles, covariance: set.logAmplitudeCovariance, value: logClosureAmplitude },
+    ];
+    const sums = lists.map(({ closures }) => new Float64Array(closures.length * closures.length));
+    for (let draw = 0; draw < draws; draw++) {
+      const re = still.re.map((value, k) => value + sigma[k] * stream.normal());
+      const im = still.im.map((value, k) => value + sigma[k] * stream.normal());
+      lists.forEach(({ closures, value }, which) => {
+        const d = closures.map((closure) =>
+          wrapPhase(value(closure, re, im) - value(closure, still.re, still.im)),
+        );
+        d.forEach((x, a) => {
+          d.forEach((y, b) => {
+            sums[which][a * d.length + b] += (x * y) / draws;
+          });
+        });
+      });
+    }
+    lists.forEach(({ closures, covariance }, which) => {
+      const n = closures.length;
+      let shared = 0;
+      for (let a = 0; a < n; a++) {
+        for (let b = 0; b < n; b++) {
+          const C = covariance[a * n + b];
+          const product = covariance[a * n + a] * covariance[b * n + b];
+          expect(Math.abs(sums[which][a * n + b] - C)).toBeLessThan(
+            4.5 * Math.sqrt((product + C * C) / draws) + 0.01 * Math.sqrt(product),
+          );
+          if (a !== b && C !== 0) shared++;
+        }
+      }
+      expect(shared).toBeGreaterThan(0);
+    });
   });
 
   test('chosen have the least sum of variances of all independent sets, seen by trying every set of 5 stations', () => {
