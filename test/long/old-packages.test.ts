@@ -2,7 +2,7 @@
 
 import { spawnSync } from 'node:child_process';
 import { mkdirSync, mkdtempSync, readFileSync, writeFileSync } from 'node:fs';
-import { tmpdir } from 'node:os';
+import { homedir, tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { expect, test } from 'vitest';
 import { declaration, forgeBook, recordedText } from '../runner/recorded-code/forged-book.ts';
@@ -13,6 +13,9 @@ const OLD = '4.0.3';
 const INSTALLED = JSON.parse(
   readFileSync(new URL('../../node_modules/fft.js/package.json', import.meta.url), 'utf8'),
 ).version as string;
+
+/** What this user told the package manager: certificates and registries that it cannot do without. */
+const USER_CONFIGURATION = process.env.npm_config_userconfig ?? join(homedir(), '.npmrc');
 
 /** Writes the recorded text, and only with the recorded version. */
 const computation = `import { readFileSync } from 'node:fs';
@@ -50,6 +53,7 @@ test('are installed, and the rerun is identical', () => {
   forgeBook(folder, sources, { packages: { 'fft.js': OLD }, texts });
   const { status, out, err } = platebook(['rerun', '1', '--as-recorded', '--json'], folder, {
     HOME: folder,
+    npm_config_userconfig: USER_CONFIGURATION,
     PLATEBOOK_KEY: join(folder, 'key.pem'),
   });
   expect(err).toBe('');
