@@ -3,6 +3,7 @@
 
 import type { Io } from './command.ts';
 import type { ExecutionReporter } from './execute.ts';
+import { findingTexts } from './finding-text.ts';
 import type { Job, Outcome } from './job.ts';
 import { wrapped } from './wrapped.ts';
 
@@ -76,9 +77,7 @@ export function endedLine(outcome: Outcome, width: number): string {
     outcome.state === 'computed' || outcome.state === 'failed' ? `${outcome.seconds.toFixed(1)} s` : '';
   const line = `  ${outcome.name.padEnd(width)}  ${outcome.state.padEnd(15)}  ${entry.padEnd(10)} ${time.padStart(8)}`;
   const below = [
-    ...outcome.findings
-      .filter((finding) => finding.finding !== 'within limits')
-      .map((finding) => `${finding.finding}: ${finding.check}: ${finding.detail}`),
+    ...findingTexts(outcome.findings),
     ...outcome.warnings.map((warning) => `warning: ${warning}`),
     ...(outcome.stop === null ? [] : [`stopped the run: ${outcome.stop}`]),
     ...(outcome.error === null ? [] : [outcome.error.message]),

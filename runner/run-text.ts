@@ -68,12 +68,12 @@ function plateList(summary: RunSummary, io: Io): string {
  *  another run with one parameter changed. */
 function suggestions(summary: RunSummary, options: RunOptions, io: Io): string {
   const plate = summary.plates.find((each) => /ring|image/.test(each.name)) ?? summary.plates[0];
-  const { run } = summary;
+  const { run, recipe } = summary;
   if (plate === undefined || !run.finished) return '';
   const book = shownPath(options.book, io) === 'book' ? '' : ` --book ${shownPath(options.book, io)}`;
   const command = (words: string) => `npx platebook ${words}${book}`;
-  const fit = summary.recipe.stages.find((stage) => stage.kind.kind === 'fit');
-  const another = command(`run ${run.recipe.path} --let ${fit?.name}.components=10 --quiet`);
+  const fit = recipe.stages.find((stage) => stage.kind.kind === 'fit');
+  const another = command(`run ${shownPath(recipe.path, io)} --let ${fit?.name}.components=10 --quiet`);
   const [one, other] = run.run > 1 ? [run.run - 1, run.run] : [run.run, run.run + 1];
   const first = run.run === 1 && fit !== undefined ? `${another} && ` : '';
   return [

@@ -16,6 +16,7 @@ import type {
 } from '../../ledger/entry.ts';
 import type { TracedEntry } from '../../ledger/trace.ts';
 import { roundedNumber } from '../../stages/formats/drawing/rounding.ts';
+import { againstLimits } from '../finding-text.ts';
 import {
   alignRows,
   counted,
@@ -193,17 +194,15 @@ function isQuantity(value: Json): value is { readonly [key: string]: Json } {
   );
 }
 
+/** Findings with their limits; what was measured is told of those that are not within them. */
 function findingLines(findings: readonly RecordedFinding[], width: number): string[] {
-  const good = findings.filter(({ finding }) => finding === 'within limits').length;
-  const others = findings.filter(({ finding }) => finding !== 'within limits');
-  const lines = others.flatMap(({ check, finding, value, marginal, limit, detail }) =>
-    named(
-      check,
-      `${finding}: ${roundedNumber(value, null, null)} (marginal ${marginal}, limit ${limit}). ${detail}`,
-      width,
-    ),
-  );
-  if (good > 0) lines.push(...item(`${counted(good, 'check is', 'checks are')} within limits`, width));
+  const good = ({ finding }: RecordedFinding) => finding === 'within limits';
+  const sorted = [...findings.filter((each) => !good(each)), ...findings.filter(good)];
+  const labels = Math.min(36, Math.max(NAMES, ...findings.map(({ check }) => check.length)));
+  const lines = sorted.flatMap((each) => {
+    const text = `${each.finding}: ${againstLimits(each)}`;
+    return labelled(each.check, good(each) ? text : `${text}. ${each.detail}`, labels, INDENT, width);
+  });
   return section('findings', lines);
 }
 

@@ -65,8 +65,8 @@ test('shows a plate down to the files: digests, sizes, paths, parameters with un
     '    band.frequency  227 GHz\n',
     '    stations.1      name TWO; sefd 4000 Jy\n',
     '    terms           amplitudes, closure-phases\n',
-    '    scatter against stated noise\n                    marginal: 1.62 (marginal 1.5, limit 2.5). Scatter within',
-    '    1 check is within limits\n',
+    '    scatter against stated noise  marginal: 1.62 (marginal 1.5, limit 2.5). Scatter within',
+    '    closure                       within limits: 1 (marginal 1.5, limit 2.5)\n',
     '  warnings\n    3 samples of weight zero were dropped.\n',
     `One file from outside went in:\n\n  data/truth.fits  1,234 bytes\n    digest ${'da7a'.repeat(16)}\n`,
   ]) {
