@@ -16,6 +16,7 @@ import { checkTrends, measureTrends } from './trends.ts';
 export function compute(task: StageTask): StageReport {
   const parameters = readParameters(task.parameters);
   const visibilities = readVisibilities(task.inputs.visibilities[0]);
+  const isOptical = visibilities.count === 0 && Boolean(visibilities.squared ?? visibilities.triples);
   const measured = measure(visibilities, parameters);
   const trends = measureTrends(visibilities, measured);
   task.note('measured', { pairs: measured.pairs.length, triangles: measured.triangles.length });
@@ -35,7 +36,9 @@ export function compute(task: StageTask): StageReport {
   ];
   const errorBudget = estimateBudget(measured, others[0], parameters);
   const findings = outcomes.filter((outcome): outcome is Judged => 'finding' in outcome);
-  const warnings = [...outcomes.flatMap(tooLittleWarning), ...errorBudget.warnings];
+  const warnings = isOptical
+    ? [NOTHING_TO_CHECK]
+    : [...outcomes.flatMap(tooLittleWarning), ...errorBudget.warnings];
   writeVisibilities(task.outputs.visibilities, withBudget(visibilities, errorBudget));
   const found = { measured, trends, others, afterFit, findings, errorBudget, warnings };
   writeJson(task.outputs.report, reportOf(visibilities, found, parameters));
@@ -46,6 +49,10 @@ export function compute(task: StageTask): StageReport {
     ...(out === undefined ? {} : parameters.outOfLimits === 'stop' ? { stop: out } : { mark: out }),
   };
 }
+
+/** No gain of a station enters squared visibilities and triple products, and what they share with others is not known. */
+const NOTHING_TO_CHECK =
+  'No check was made and no error budget estimated: squared visibilities and triple products hold no gains of stations.';
 
 function tooLittleWarning(outcome: Outcome): string[] {
   if (!('tooLittle' in outcome)) return [];

@@ -14,7 +14,7 @@ import { beamOf } from './beam.ts';
 import { drawCalibration } from './calibration-plot.ts';
 import { readCalibration } from './calibration-report.ts';
 import { drawComponents } from './components-plot.ts';
-import { drawCoverage } from './coverage.ts';
+import { drawCoverage, measuredPoints } from './coverage.ts';
 import { drawData } from './data-plot.ts';
 import { describeFindings, readFindings } from './findings.ts';
 import { drawImage } from './image-plot.ts';
@@ -124,7 +124,7 @@ function dataPlot({ heading, remark, sources }: Given) {
 function imagePlot(given: Given, field: number | null) {
   const { heading, remark, ring, truth, visibilities } = given;
   const image = required(given.image, 'image');
-  const beam = visibilities === null ? null : beamOf(visibilities.u, visibilities.v);
+  const beam = visibilities === null ? null : beamOf(...measuredPoints(visibilities));
   return { heading, remark, image, field: fieldOf(image, field), beam, ring, centre: centreOf(image), truth };
 }
 

@@ -7,6 +7,7 @@ import { linearScale, powerOfTen } from '../formats/drawing/scale.ts';
 import { grey, ink, measured, paleGrey, type } from '../formats/drawing/style.ts';
 import { type Canvas, decimal, element, startCanvas } from '../formats/drawing/svg.ts';
 import { setText } from '../formats/drawing/text.ts';
+import { pointsOf } from '../imaging/points.ts';
 import { log10 } from '../numerics/elementary.ts';
 import { angleUnit } from './sky.ts';
 
@@ -15,14 +16,15 @@ const conjugate = paleGrey;
 
 /** Returns the coverage as SVG. @throws InternalError without visibilities. */
 export function drawCoverage(visibilities: Visibilities): string {
-  const { u, v, count, target } = visibilities;
+  const { target } = visibilities;
+  const [u, v] = measuredPoints(visibilities);
   const unit = wavelengthUnit(longest(u, v));
   const canvas = startCanvas({
     name: 'coverage',
     width: 580,
     height: 622,
     title: `(u,v) coverage of ${target.name}`,
-    description: `${count} visibilities of ${visibilities.stations.length} stations and their conjugates, ${unit.name}.`,
+    description: `${u.length} points of ${visibilities.stations.length} stations and their conjugates, ${unit.name}.`,
   });
   const limit = 1.06 * (longest(u, v) / unit.wavelengths);
   const box = { x: 88, y: 44, width: SIDE, height: SIDE };
@@ -36,7 +38,7 @@ export function drawCoverage(visibilities: Visibilities): string {
     x: x.at((sign * u[k]) / unit.wavelengths),
     y: y.at((sign * v[k]) / unit.wavelengths),
   });
-  const every = Array.from({ length: count });
+  const every = Array.from({ length: u.length });
   const clip = clipTo(canvas, 'plane', box);
   const points = [markers(every.map(point(-1)), conjugate, 4), markers(every.map(point(1)), measured, 4)];
   canvas.add(element('g', { 'clip-path': clip }, points));
@@ -50,11 +52,32 @@ export function drawCoverage(visibilities: Visibilities): string {
   return canvas.finish();
 }
 
-function describeData({ count, stations, station1, station2, wavelengthMetres }: Visibilities): string {
-  const present = new Set([...station1, ...station2]);
-  const baselines = new Set(Array.from(station1, (a, k) => a * stations.length + station2[k]));
-  const words = [`${present.size} stations`, `${baselines.size} baselines`, `${count} points`];
+/** Where the Fourier plane was measured, wavelengths: visibilities, squared visibilities, or else the sides of triangles. */
+export function measuredPoints(visibilities: Visibilities): [u: Float64Array, v: Float64Array] {
+  const { count, squared, triples } = visibilities;
+  const points = pointsOf({ ...visibilities, ...(squared ? { triples: undefined } : {}) });
+  const end = count + (squared?.count ?? 3 * (triples?.count ?? 0));
+  return [points.u.subarray(0, end), points.v.subarray(0, end)];
+}
+
+function describeData(visibilities: Visibilities): string {
+  const { stations, wavelengthMetres } = visibilities;
+  const sides = sidesOf(visibilities);
+  const present = new Set(sides.flat());
+  const baselines = new Set(sides.map(([a, b]) => Math.min(a, b) * stations.length + Math.max(a, b)));
+  const points = measuredPoints(visibilities)[0].length;
+  const words = [`${present.size} stations`, `${baselines.size} baselines`, `${points} points`];
   return `${words.join(', ')}, ${wavelengthText(wavelengthMetres)}; circles: fringe spacing`;
+}
+
+/** The pairs of stations of the points. */
+function sidesOf({ station1, station2, squared, triples }: Visibilities): [number, number][] {
+  const pairs = (a: Int32Array, b: Int32Array) => Array.from(a, (each, k): [number, number] => [each, b[k]]);
+  const own = pairs(station1, station2);
+  if (squared) return [...own, ...pairs(squared.station1, squared.station2)];
+  if (!triples) return own;
+  const { station1: a, station2: b, station3: c } = triples;
+  return [...own, ...pairs(a, b), ...pairs(b, c), ...pairs(a, c)];
 }
 
 function wavelengthText(metres: number): string {

@@ -1,4 +1,4 @@
-/** Amplitudes and closure phases against baseline length, each with the model and, below, the residual in units of its
+/** Amplitudes and closure phases (of optical data squared visibilities and triple phases) against baseline length, each with the model and, below, the residual in units of its
  *  standard deviation. */
 
 import {
@@ -33,6 +33,9 @@ export interface DataPlot {
   readonly remark: string;
   readonly amplitudes: DataSeries | null;
   readonly closurePhases: DataSeries | null;
+  /** Of optical data. */
+  readonly squared?: DataSeries;
+  readonly triplePhases?: DataSeries;
   /** A sentence on the calibration, or nothing. */
   readonly calibration: string;
 }
@@ -75,27 +78,41 @@ export function drawData(plot: DataPlot): string {
   return canvas.finish();
 }
 
-function columnsOf({ amplitudes, closurePhases }: DataPlot): Column[] {
-  const columns: Column[] = [];
-  if (amplitudes !== null && amplitudes.length.length > 0) {
-    columns.push({
+function columnsOf({ amplitudes, closurePhases, squared, triplePhases }: DataPlot): Column[] {
+  const triangle = 'longest baseline of the triangle';
+  const sorts = [
+    {
       name: 'amplitudes',
       series: amplitudes,
       label: 'amplitude (Jy)',
       lengthLabel: 'baseline',
-      scale: (range) => amplitudeScale(amplitudes, range),
-    });
-  }
-  if (closurePhases !== null && closurePhases.length.length > 0) {
-    columns.push({
+      scale: amplitudeScale,
+    },
+    {
+      name: 'squared visibilities',
+      series: squared,
+      label: 'squared visibility',
+      lengthLabel: 'baseline',
+      scale: squaredScale,
+    },
+    {
       name: 'closure phases',
       series: closurePhases,
       label: 'closure phase (°)',
-      lengthLabel: 'longest baseline of the triangle',
-      scale: (range) => phaseScale(closurePhases, range),
-    });
-  }
-  return columns;
+      lengthLabel: triangle,
+      scale: phaseScale,
+    },
+    {
+      name: 'triple phases',
+      series: triplePhases,
+      label: 'triple phase (°)',
+      lengthLabel: triangle,
+      scale: phaseScale,
+    },
+  ];
+  return sorts.flatMap(({ series, scale, ...sort }): Column[] =>
+    series && series.length.length > 0 ? [{ ...sort, series, scale: (range) => scale(series, range) }] : [],
+  );
 }
 
 function drawColumn(canvas: Canvas, column: Column, left: number): void {
@@ -165,6 +182,16 @@ function amplitudeScale({ observed, model, sigma }: DataSeries, range: readonly 
   return most / least > 20
     ? logScale([Math.max(least, 1e-4 * most) / 1.3, most * 1.3], range)
     : linearScale([0, 1.06 * most], range);
+}
+
+/** Linear, below zero where the data are. */
+function squaredScale({ observed, model, sigma }: DataSeries, range: readonly [number, number]): Scale {
+  let [least, most] = [0, 0];
+  for (let k = 0; k < model.length; k++) {
+    least = Math.min(least, model[k], observed[k] - sigma[k]);
+    most = Math.max(most, model[k], observed[k] + sigma[k]);
+  }
+  return most > least ? linearScale([1.06 * least, 1.06 * most], range) : linearScale([0, 1], range);
 }
 
 function phaseScale({ observed, model, sigma }: DataSeries, range: readonly [number, number]): Scale {

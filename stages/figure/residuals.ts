@@ -31,16 +31,31 @@ const residualsSchema = z.object({
   }),
 });
 
+const maybe = z.array(z.number().nullable());
+
+/** What the fits of optical data have besides. */
+const opticalSchema = z.object({
+  squaredVisibilities: z
+    .object({ u: numbers, v: numbers, value: numbers, sigma: numbers, model: numbers })
+    .optional(),
+  tripleProducts: z
+    .object({ length: numbers, phaseDegrees: numbers, sigmaDegrees: maybe, modelDegrees: numbers })
+    .optional(),
+});
+
 type Residuals = z.infer<typeof residualsSchema>;
 
 export interface DrawnResiduals {
   readonly amplitudes: DataSeries;
   readonly closurePhases: DataSeries;
+  /** Empty where the fit has none. */
+  readonly squared: DataSeries;
+  readonly triplePhases: DataSeries;
 }
 
 /** Reads residuals. @throws InputProblem when the document is not laid out so. */
 export function readResiduals(source: ByteSource): DrawnResiduals {
-  const parsed = residualsSchema.safeParse(readJson(source));
+  const parsed = residualsSchema.and(opticalSchema).safeParse(readJson(source));
   if (!parsed.success) {
     const issue = parsed.error.issues[0];
     throw badResiduals(
@@ -52,18 +67,64 @@ export function readResiduals(source: ByteSource): DrawnResiduals {
   const { visibilities, closurePhases } = parsed.data;
   requireLists(source.name, 'visibilities', visibilities, visibilities.sigma);
   requireLists(source.name, 'closurePhases', closurePhases, closurePhases.sigmaDegrees);
-  return { amplitudes: amplitudeSeries(parsed.data), closurePhases: phaseSeries(source.name, parsed.data) };
+  return {
+    amplitudes: amplitudeSeries(parsed.data),
+    closurePhases: phaseSeries(source.name, parsed.data),
+    squared: squaredSeries(source.name, parsed.data),
+    triplePhases: tripleSeries(source.name, parsed.data),
+  };
+}
+
+type Optical = z.infer<typeof opticalSchema>;
+
+function squaredSeries(name: string, { squaredVisibilities }: Optical): DataSeries {
+  if (squaredVisibilities === undefined) return seriesOf([], [], [], []);
+  requireLists(name, 'squaredVisibilities', squaredVisibilities, squaredVisibilities.sigma);
+  const { value, sigma, model } = squaredVisibilities;
+  return seriesOf([...baselineLengths(squaredVisibilities)], value, sigma, model);
+}
+
+/** Of the products that have a phase. */
+function tripleSeries(name: string, { tripleProducts }: Optical): DataSeries {
+  if (tripleProducts === undefined) return seriesOf([], [], [], []);
+  const { length, phaseDegrees, sigmaDegrees, modelDegrees } = tripleProducts;
+  const own = sigmaDegrees.flatMap((sigma, t) => (sigma === null ? [] : [t]));
+  const of = (list: readonly number[]) => own.map((t) => list[t]);
+  const sigma = own.map((t) => sigmaDegrees[t] as number);
+  const lists = { length, phaseDegrees, modelDegrees };
+  requireLists(
+    name,
+    'tripleProducts',
+    lists,
+    sigmaDegrees.map((each) => each ?? 1),
+  );
+  requireLists(name, 'tripleProducts', {}, sigma);
+  const series = seriesOf(of(length), of(phaseDegrees), sigma, of(modelDegrees));
+  const wrapped = (degrees: number) => degrees - 360 * Math.round(degrees / 360);
+  return {
+    ...series,
+    residual: series.observed.map((value, k) => wrapped(value - series.model[k]) / sigma[k]),
+  };
+}
+
+function seriesOf(
+  length: readonly number[],
+  observed: readonly number[],
+  sigma: readonly number[],
+  model: readonly number[],
+): DataSeries {
+  return {
+    length: Float64Array.from(length),
+    observed: Float64Array.from(observed),
+    sigma: Float64Array.from(sigma),
+    model: Float64Array.from(model),
+    residual: Float64Array.from(observed, (value, k) => (value - model[k]) / sigma[k]),
+  };
 }
 
 function amplitudeSeries({ visibilities }: Residuals): DataSeries {
   const { amplitude, sigma, modelAmplitude } = visibilities;
-  return {
-    length: baselineLengths(visibilities),
-    observed: Float64Array.from(amplitude),
-    sigma: Float64Array.from(sigma),
-    model: Float64Array.from(modelAmplitude),
-    residual: Float64Array.from(amplitude, (value, k) => (value - modelAmplitude[k]) / sigma[k]),
-  };
+  return seriesOf([...baselineLengths(visibilities)], amplitude, sigma, modelAmplitude);
 }
 
 function phaseSeries(name: string, { visibilities, closurePhases }: Residuals): DataSeries {
@@ -99,7 +160,13 @@ function phaseSeries(name: string, { visibilities, closurePhases }: Residuals): 
   };
 }
 
-function baselineLengths({ u, v }: Residuals['visibilities']): Float64Array {
+function baselineLengths({
+  u,
+  v,
+}: {
+  readonly u: readonly number[];
+  readonly v: readonly number[];
+}): Float64Array {
   return Float64Array.from(u, (each, k) => Math.sqrt(each * each + v[k] * v[k]));
 }
 

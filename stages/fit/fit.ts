@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
 
 export const fit = {
   kind: 'fit',
-  version: 3,
+  version: 4,
   doc:
     'Fits flux and coefficients of a basis to visibilities in the Fourier plane: image = flux * mean + sum of ' +
     'coefficient * component, the source at the resolution of the basis; the transform of its Gaussian is taken out of ' +
@@ -89,8 +89,8 @@ export const fit = {
       to: 1e6,
       optional: true,
       doc:
-        'Prior mean of the compact flux; estimated from amplitudes when absent. Needed where no data term sees the flux (closures ' +
-        'alone, optical data): the image then has that flux.',
+        'Prior mean of the compact flux; estimated from amplitudes when absent. Needed where no data term sees the flux ' +
+        '(closures alone): the image then has that flux; 1 Jy with optical data alone, which are normalised.',
     },
     fluxPrior: {
       type: 'number',

@@ -74,6 +74,8 @@ export interface FitResiduals {
   readonly tripleProducts?: {
     readonly stations: readonly (readonly number[])[];
     readonly scan: Int32Array;
+    /** Of the longest of the three sides, wavelengths. */
+    readonly length: Float64Array;
     readonly phaseDegrees: Float64Array;
     readonly sigmaDegrees: readonly (number | null)[];
     readonly modelDegrees: Float64Array;
@@ -132,7 +134,7 @@ function squaredVisibilities(
 }
 
 function tripleProducts(data: Visibilities, at: ModelVisibilities): Pick<FitResiduals, 'tripleProducts'> {
-  const { triples: from, origin } = pointsOf(data);
+  const { u, v, triples: from, origin } = pointsOf(data);
   if (!data.triples) return {};
   const { station1, station2, station3, scan, phase, sigmaPhase, amplitude, sigmaAmplitude } = data.triples;
   const points = (t: number) => [from + 3 * t, from + 3 * t + 1, from + 3 * t + 2];
@@ -142,6 +144,9 @@ function tripleProducts(data: Visibilities, at: ModelVisibilities): Pick<FitResi
     tripleProducts: {
       stations: Array.from(station1, (first, t) => [first, station2[t], station3[t]]),
       scan,
+      length: phase.map((_, t) =>
+        Math.max(...points(t).map((point) => Math.sqrt(u[point] * u[point] + v[point] * v[point]))),
+      ),
       phaseDegrees: phase.map((value) => value * DEGREES),
       sigmaDegrees: finite(sigmaPhase, DEGREES),
       modelDegrees: phase.map(

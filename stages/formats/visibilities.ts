@@ -1,4 +1,5 @@
-/** The format `visibilities`: OIFITS 2 with one wavelength and one OI_VIS of correlated flux. Layout: CONVENTIONS.
+/** The format `visibilities`: OIFITS 2 with one wavelength and one OI_VIS of correlated flux, which optical data leave empty,
+ *  beside it OI_VIS2 and OI_T3 at most once. Layout: CONVENTIONS.
  *  Three columns are ours: NS_SCAN, and NS_WAVE and NS_BAND, since EFF_WAVE and EFF_BAND hold single precision.
  *  DATE, which OIFITS demands, is the date of observation: no output may depend on the clock. */
 
@@ -9,10 +10,11 @@ import { calendarDate, julianDateOfMjd } from '../numerics/time.ts';
 import { InputProblem } from '../problem.ts';
 import { fromDegrees, toDegrees } from './angles.ts';
 import { requireFiniteColumn, requireFiniteValues } from './column-rules.ts';
-import { requireText } from './fits/header.ts';
+import { type NewCard, requireText } from './fits/header.ts';
 import { appendEmptyPrimary, appendTableHdu, type NewColumn } from './fits/table.ts';
 import { readOifits } from './oifits.ts';
 import type { OiArray, Oifits, OiVis } from './oifits-types.ts';
+import { readSquared, readTriples, writeSquared, writeTriples } from './visibilities-optical.ts';
 
 const instrument = 'BAND';
 const unknown = 'UNKNOWN';
@@ -52,24 +54,38 @@ export function readVisibilities(source: ByteSource): Visibilities {
     im: amplitude.map((a, k) => a * sin(phase[k] as number)),
     sigma,
     sigmaPhase: column('VISPHIERR').map(fromDegrees),
+    ...opticalOf(oifits, wavelengthMetres),
+  };
+}
+
+function opticalOf(
+  { vis2, t3 }: Oifits,
+  wavelengthMetres: number,
+): Pick<Visibilities, 'squared' | 'triples'> {
+  return {
+    ...(vis2.length > 0 ? { squared: readSquared(vis2[0], wavelengthMetres) } : {}),
+    ...(t3.length > 0 ? { triples: readTriples(t3[0], wavelengthMetres) } : {}),
   };
 }
 
 function requireLayout({ targets, wavelengths, vis, vis2, t3, flux }: Oifits, place: string): OiVis {
   const [only] = vis;
   const single = targets.length === 1 && wavelengths.length === 1 && vis.length === 1;
-  const noOthers = vis2.length + t3.length + flux.length === 0;
+  const few = vis2.length <= 1 && t3.length <= 1 && flux.length === 0;
   const correlated = only?.amplitudeType === 'correlated flux' && only.unit === 'Jy';
-  const complete = only?.array !== undefined && only.channels === 1 && only.table.has('NS_SCAN');
-  if (only !== undefined && single && noOthers && correlated && complete) return only;
+  const complete = [...vis, ...vis2, ...t3].every(
+    ({ array, channels, table }) => array !== undefined && channels === 1 && table.has('NS_SCAN'),
+  );
+  if (only !== undefined && single && few && correlated && complete) return only;
   throw new InputProblem({
     code: 'wrong-layout',
     place,
-    expected: 'one OI_VIS of correlated flux in Jy with one target, one wavelength and a column NS_SCAN',
+    expected:
+      'one OI_VIS of correlated flux in Jy, one OI_VIS2 and one OI_T3 at most, with one target, one wavelength and a column NS_SCAN',
     found:
       `${vis.length} OI_VIS (${only?.amplitudeType ?? 'none'}, unit "${only?.unit ?? ''}"), ` +
       `${targets.length} targets, ${wavelengths.length} OI_WAVELENGTH, ` +
-      `${vis2.length + t3.length + flux.length} other tables of data`,
+      `${vis2.length} OI_VIS2, ${t3.length} OI_T3, ${flux.length} OI_FLUX`,
     advice: 'Other OIFITS goes through a stage of kind ingest first.',
   });
 }
@@ -101,7 +117,7 @@ function requireRows(vis: OiVis, sigma: Float64Array, scan: Float64Array): void 
 
 /** Writes visibilities. @throws InternalError for a value that is not finite */
 export function writeVisibilities(sink: ByteSink, data: Visibilities): void {
-  const date = dateOf(data.timeMjd[0] ?? 0);
+  const date = dateOf(firstTime(data));
   appendEmptyPrimary(sink, [
     ['ORIGIN', 'Platebook'],
     ['DATE', date, 'date of observation'],
@@ -117,7 +133,20 @@ export function writeVisibilities(sink: ByteSink, data: Visibilities): void {
   writeTarget(sink, data);
   writeArray(sink, data);
   writeWavelength(sink, data);
-  writeVis(sink, data, date);
+  const cards: NewCard[] = [
+    ['OI_REVN', 2],
+    ['DATE-OBS', date],
+    ['ARRNAME', data.arrayName],
+    ['INSNAME', instrument],
+  ];
+  writeVis(sink, data, cards);
+  const shared = { cards, wavelengthMetres: data.wavelengthMetres };
+  if (data.squared) writeSquared(sink, data.squared, shared);
+  if (data.triples) writeTriples(sink, data.triples, shared);
+}
+
+function firstTime({ timeMjd, squared, triples }: Visibilities): number {
+  return timeMjd[0] ?? squared?.timeMjd[0] ?? triples?.timeMjd[0] ?? 0;
 }
 
 /** `YYYY-MM-DD` of an MJD. */
@@ -200,7 +229,7 @@ function writeWavelength(sink: ByteSink, { wavelengthMetres, bandwidthMetres }: 
   });
 }
 
-function writeVis(sink: ByteSink, data: Visibilities, date: string): void {
+function writeVis(sink: ByteSink, data: Visibilities, cards: readonly NewCard[]): void {
   const { count, re, im, wavelengthMetres } = data;
   const column = (name: string, unit: string, values: Float64Array): NewColumn => {
     requireFiniteValues(values, `writeVisibilities, ${name}`);
@@ -214,14 +243,7 @@ function writeVis(sink: ByteSink, data: Visibilities, date: string): void {
   appendTableHdu(sink, {
     extname: 'OI_VIS',
     rows: count,
-    cards: [
-      ['OI_REVN', 2],
-      ['DATE-OBS', date],
-      ['ARRNAME', data.arrayName],
-      ['INSNAME', instrument],
-      ['AMPTYP', 'correlated flux'],
-      ['PHITYP', 'absolute'],
-    ],
+    cards: [...cards, ['AMPTYP', 'correlated flux'], ['PHITYP', 'absolute']],
     columns: [
       { name: 'TARGET_ID', form: '1I', values: zeros.map(() => 1) },
       column('TIME', 's', zeros),

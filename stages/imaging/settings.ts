@@ -2,7 +2,7 @@
 
 import type { Visibilities } from '../data.ts';
 import { InputProblem } from '../problem.ts';
-import { type DataKind, requireCombination, seesFlux, termsOf } from './data-terms.ts';
+import { type DataKind, isOfRows, requireCombination, seesFlux, termsOf } from './data-terms.ts';
 import type { SamplerSettings } from './sampler.ts';
 
 export type { DataKind } from './data-terms.ts';
@@ -57,17 +57,17 @@ export function readSettings(
   requireComponents(settings.components, available);
   requireStations(settings.gainPriors.stations, visibilities);
   requireCombination(settings.data);
-  if (!measuresFlux(settings) && settings.flux === undefined) {
-    throw new InputProblem({
-      code: 'flux-needed',
-      place: 'parameter flux',
-      expected: 'the compact flux, because closures and normalised products do not see it',
-      found: 'no value',
-      advice:
-        'State the flux, such as `flux: 0.6 Jy`, or take amplitudes or complex visibilities among the data.',
-    });
-  }
-  return settings;
+  if (measuresFlux(settings) || settings.flux !== undefined) return settings;
+  // Optical data are normalised: the image is of a source of flux 1.
+  if (!termsOf(settings.data).some(isOfRows)) return { ...settings, flux: 1 };
+  throw new InputProblem({
+    code: 'flux-needed',
+    place: 'parameter flux',
+    expected: 'the compact flux, because closures do not see it',
+    found: 'no value',
+    advice:
+      'State the flux, such as `flux: 0.6 Jy`, or take amplitudes or complex visibilities among the data.',
+  });
 }
 
 function requireComponents(components: FitSettings['components'], available: number): void {

@@ -1,11 +1,15 @@
 /** A known source seen through the rows of an observation: the same (u,v), scans, stations and noise, gains and station
- *  phases drawn anew. What a fit makes of it is the method's own doing. The data are invented and say so. */
+ *  phases drawn anew; and through its squared visibilities and triple products, which no station changes. What a fit makes of it is the method's own doing. The data are invented and say so. */
 
 import type { SkyImage, Visibilities } from '../data.ts';
+import { wrapPhase } from '../numerics/closures.ts';
 import { cos, exp, sin } from '../numerics/elementary.ts';
 import { visibilitiesOfAll } from '../numerics/fourier.ts';
 import { type Model, visibilitiesOfModel } from '../numerics/models.ts';
-import { randomStream } from '../numerics/random.ts';
+import { type RandomStream, randomStream } from '../numerics/random.ts';
+import type { ModelVisibilities } from './linear-model.ts';
+import { productAt } from './optical-terms.ts';
+import { type Points, pointsOf } from './points.ts';
 
 export interface SyntheticOptions {
   /** Standard deviation of the log gain of every station, by index; drawn anew for every scan. */
@@ -24,7 +28,8 @@ export function observe(
   { gainDeviations, seed, noiseFactor = 1 }: SyntheticOptions,
 ): Visibilities {
   const { count, station1, station2, scan } = template;
-  const [seenRe, seenIm] = visibilitiesOf(source, template.u, template.v);
+  const points = pointsOf(template);
+  const [seenRe, seenIm] = visibilitiesOf(source, points.u, points.v);
   const stations = stationEffects(template, gainDeviations, seed);
   const noise = randomStream(seed, 'thermal noise');
   const re = new Float64Array(count);
@@ -41,7 +46,55 @@ export function observe(
     const thermal = sigma[r] / Math.sqrt(re[r] * re[r] + im[r] * im[r]);
     sigmaPhase[r] = Math.min(Math.PI, Math.sqrt(thermal * thermal + budget * budget));
   }
-  return { ...template, remark: 'invented data', re, im, sigma, sigmaPhase };
+  const seen = { re: seenRe, im: seenIm };
+  return {
+    ...template,
+    remark: 'invented data',
+    re,
+    im,
+    sigma,
+    sigmaPhase,
+    ...opticalOf(template, points, seen, noiseFactor, randomStream(seed, 'optical noise')),
+  };
+}
+
+/** Squared visibilities and triple products with noise of the stated errors, each its own. */
+function opticalOf(
+  { squared, triples }: Visibilities,
+  { squared: from, triples: first, origin }: Points,
+  at: ModelVisibilities,
+  noiseFactor: number,
+  noise: RandomStream,
+): Pick<Visibilities, 'squared' | 'triples'> {
+  const measured = (sigma: number, value: () => number) =>
+    Number.isFinite(sigma) ? value() + sigma * noise.normal() : 0;
+  const sides = (t: number) => [first + 3 * t, first + 3 * t + 1, first + 3 * t + 2];
+  const square = (m: number) => productAt({ points: [from + m, origin], powers: [2, -2] }, at, 'amplitude');
+  const amplitude = (t: number) =>
+    productAt({ points: [...sides(t), origin], powers: [1, 1, 1, -3] }, at, 'amplitude');
+  const phase = (t: number) => wrapPhase(productAt({ points: sides(t), powers: [1, 1, -1] }, at, 'phase'));
+  const noisier = (errors: Float64Array) => errors.map((sigma) => noiseFactor * sigma);
+  const seenSquares = (sigma: Float64Array) => ({
+    sigma,
+    value: sigma.map((error, m) => measured(error, () => square(m))),
+  });
+  const seenTriples = (sigmaAmplitude: Float64Array, sigmaPhase: Float64Array) => ({
+    sigmaAmplitude,
+    sigmaPhase,
+    amplitude: sigmaAmplitude.map((error, t) => measured(error, () => amplitude(t))),
+    phase: sigmaPhase.map((error, t) => measured(error, () => phase(t))),
+  });
+  return {
+    ...(squared ? { squared: { ...squared, ...seenSquares(noisier(squared.sigma)) } } : {}),
+    ...(triples
+      ? {
+          triples: {
+            ...triples,
+            ...seenTriples(noisier(triples.sigmaAmplitude), noisier(triples.sigmaPhase)),
+          },
+        }
+      : {}),
+  };
 }
 
 function visibilitiesOf(

@@ -12,7 +12,7 @@ import { type Choices, choicesOf } from './choices.ts';
 import { observationOfOifits } from './from-oifits.ts';
 import { observationOfTable } from './from-table.ts';
 import { observationOfUvGroups } from './from-uv-groups.ts';
-import { kept, type Observation, REASONS } from './records.ts';
+import { kept, type Observation, REASONS, stationsInRows } from './records.ts';
 import { reportOf } from './report.ts';
 import { findScans } from './scans.ts';
 import { GOOD_AGREEMENT, POOR_AGREEMENT } from './uv-agreement.ts';
@@ -24,14 +24,10 @@ export function compute(task: StageTask): StageReport {
   task.note('read', { format: observation.format, rows: observation.rows });
   requireDates(observation);
   task.progress(0.6);
-  const timetable = findScans(
-    observation.records,
-    choices.gap,
-    observation.phaseErrorOf === undefined ? choices.averaging : 'none',
-  );
+  const timetable = findScans(observation.records, choices.gap, choices.averaging);
   const result = average(observation.records, timetable, choices, observation.tally);
   requireSome(observation, result);
-  const present = presentStations(result);
+  const present = presentStations(observation, result);
   const warnings = [...observation.warnings, ...warningsOf(observation, result)];
   task.progress(0.9);
   writeVisibilities(task.outputs.visibilities, visibilitiesOf(observation, result, present));
@@ -90,8 +86,8 @@ function requireDates({ records }: Observation): void {
   }
 }
 
-function requireSome({ tally }: Observation, { averages }: AveragingResult): void {
-  if (averages.count > 0) return;
+function requireSome({ tally, optical }: Observation, { averages }: AveragingResult): void {
+  if (averages.count + (optical?.squared.count ?? 0) + (optical?.triples.count ?? 0) > 0) return;
   const reasons = REASONS.filter((reason) => tally.dropped.has(reason));
   throw new InputProblem({
     code: 'nothing-left',
@@ -102,10 +98,8 @@ function requireSome({ tally }: Observation, { averages }: AveragingResult): voi
   });
 }
 
-function presentStations({ averages }: AveragingResult): ReadonlySet<number> {
-  const present = new Set<number>();
-  for (let k = 0; k < averages.count; k++) present.add(averages.station1[k]).add(averages.station2[k]);
-  return present;
+function presentStations({ optical }: Observation, { averages }: AveragingResult): ReadonlySet<number> {
+  return new Set(stationsInRows(averages, optical).flatMap((column) => [...column]));
 }
 
 function warningsOf(observation: Observation, { crowded }: AveragingResult): string[] {
@@ -136,6 +130,7 @@ function visibilitiesOf(
   const { count } = averages;
   const used = [...present].sort((a, b) => a - b);
   const place = new Map(used.map((station, k) => [station, k]));
+  const placesOf = (stations: Int32Array) => stations.map((station) => place.get(station) as number);
   const amplitude = (k: number) =>
     Math.sqrt(averages.re[k] * averages.re[k] + averages.im[k] * averages.im[k]);
   return {
@@ -146,8 +141,8 @@ function visibilitiesOf(
     wavelengthMetres: observation.wavelengthMetres,
     bandwidthMetres: observation.bandwidthMetres,
     count,
-    station1: averages.station1.slice(0, count).map((station) => place.get(station) as number),
-    station2: averages.station2.slice(0, count).map((station) => place.get(station) as number),
+    station1: placesOf(averages.station1.slice(0, count)),
+    station2: placesOf(averages.station2.slice(0, count)),
     scan: averages.interval.slice(0, count),
     timeMjd: averages.timeMjd.slice(0, count),
     integrationSeconds: averages.integrationSeconds.slice(0, count),
@@ -156,11 +151,27 @@ function visibilitiesOf(
     re: averages.re.slice(0, count),
     im: averages.im.slice(0, count),
     sigma: averages.sigma.slice(0, count),
-    sigmaPhase: averages.sigma.slice(0, count).map((sigma, k) => {
-      const { phaseErrorOf } = observation;
-      if (phaseErrorOf) return phaseErrorOf(averages.timeMjd[k], averages.station1[k], averages.station2[k]);
-      return Math.min(Math.PI, sigma / amplitude(k));
-    }),
+    sigmaPhase: averages.sigma.slice(0, count).map((sigma, k) => Math.min(Math.PI, sigma / amplitude(k))),
+    ...opticalOf(observation, placesOf),
+  };
+}
+
+/** Optical data with stations numbered anew. */
+function opticalOf(
+  { optical }: Observation,
+  placesOf: (stations: Int32Array) => Int32Array,
+): Pick<Visibilities, 'squared' | 'triples'> {
+  if (optical === undefined) return {};
+  const { squared, triples } = optical;
+  const pair = ({ station1, station2 }: { station1: Int32Array; station2: Int32Array }) => ({
+    station1: placesOf(station1),
+    station2: placesOf(station2),
+  });
+  return {
+    ...(squared.count > 0 ? { squared: { ...squared, ...pair(squared) } } : {}),
+    ...(triples.count > 0
+      ? { triples: { ...triples, ...pair(triples), station3: placesOf(triples.station3) } }
+      : {}),
   };
 }
 

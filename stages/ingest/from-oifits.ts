@@ -1,5 +1,5 @@
-/** From OIFITS to an observation: the complex visibilities of OI_VIS. Where a file has none, from-optical.ts takes OI_VIS2 and
- *  OI_T3. */
+/** From OIFITS to an observation: the complex visibilities of OI_VIS. Where a file has none with a reference, from-optical.ts
+ *  takes OI_VIS2 and OI_T3. */
 
 import type { ByteSource } from '../bytes.ts';
 import type { Station } from '../data.ts';
@@ -33,7 +33,7 @@ export function observationOfOifits(source: ByteSource, choices: Choices): Obser
   if (choices.rules !== 'ignore') requireValidOifits(source);
   const oifits = readOifits(source);
   const target = chooseTarget(oifits, choices.target, source.name);
-  if (oifits.vis.length === 0 && oifits.vis2.length > 0)
+  if (!oifits.vis.some(isReferred) && oifits.vis2.length + oifits.t3.length > 0)
     return observationOfOptical(oifits, source, target, choices);
   const tables = requireVis(oifits, source);
   const bands = chosenNumbers(choices.bands, oifits.wavelengths.length, 'bands');
@@ -71,10 +71,23 @@ export function observationOfOifits(source: ByteSource, choices: Choices): Obser
     uv: verdict.agreement,
     warnings: [
       ...(normalised ? ['The visibilities are normalised: a total flux of 1 is written as 1 Jy.'] : []),
+      ...unusedOptical(oifits),
       ...withoutPosition(list),
       ...verdict.warnings,
     ],
   };
+}
+
+function unusedOptical({ vis2, t3 }: Oifits): string[] {
+  if (vis2.length + t3.length === 0) return [];
+  return [
+    `${vis2.length} OI_VIS2 and ${t3.length} OI_T3 are left out: the complex visibilities of OI_VIS hold what they say.`,
+  ];
+}
+
+/** Whether amplitudes and phases are of the source alone, not relative to other channels. */
+function isReferred({ amplitudeType, phaseType }: OiVis): boolean {
+  return ['absolute', 'correlated flux'].includes(amplitudeType) && phaseType === 'absolute';
 }
 
 function requireVis(oifits: Oifits, source: ByteSource): readonly OiVis[] {
@@ -82,23 +95,20 @@ function requireVis(oifits: Oifits, source: ByteSource): readonly OiVis[] {
     throw new InputProblem({
       code: 'no-complex-visibilities',
       place: source.name,
-      expected: 'a table OI_VIS with complex visibilities',
-      found: `${oifits.vis2.length} OI_VIS2, ${oifits.t3.length} OI_T3 and no OI_VIS`,
-      advice:
-        'This version reads complex visibilities only; squared visibilities and closure phases alone cannot be averaged into them.',
+      expected: 'a table OI_VIS, OI_VIS2 or OI_T3',
+      found: `${oifits.flux.length} OI_FLUX and no data of baselines`,
+      advice: 'Give a file with visibilities.',
     });
   }
-  for (const { amplitudeType, phaseType, place } of oifits.vis) {
-    if (['absolute', 'correlated flux'].includes(amplitudeType) && phaseType === 'absolute') continue;
-    throw new InputProblem({
-      code: 'no-complex-visibilities',
-      place,
-      expected: 'AMPTYP absolute or correlated flux, and PHITYP absolute',
-      found: `AMPTYP ${amplitudeType}, PHITYP ${phaseType}`,
-      advice: 'Differential amplitudes and phases lack their reference: give a file with absolute ones.',
-    });
-  }
-  return oifits.vis;
+  const odd = oifits.vis.find((table) => !isReferred(table));
+  if (odd === undefined) return oifits.vis;
+  throw new InputProblem({
+    code: 'no-complex-visibilities',
+    place: odd.place,
+    expected: 'AMPTYP absolute or correlated flux, and PHITYP absolute',
+    found: `AMPTYP ${odd.amplitudeType}, PHITYP ${odd.phaseType}`,
+    advice: 'Differential amplitudes and phases lack their reference: give a file with absolute ones.',
+  });
 }
 
 function chooseTarget(oifits: Oifits, wanted: string | undefined, place: string): number {

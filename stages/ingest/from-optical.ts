@@ -1,110 +1,90 @@
-/** From OIFITS without complex visibilities to an observation: squared visibilities and triple products, as optical
- *  interferometers give them. For every time and wavelength it makes complex visibilities whose amplitudes are the roots of the
- *  squared ones and whose closure phases are the measured ones:
- *
- *    |V| = sqrt(V2), sigma = sigma(V2) / (2 |V|), at most sqrt(sigma(V2)) / 2 where V2 is lost in the noise
- *    phases: of the baselines of a tree 0, of the others what the triangles say
- *
- *  So closure phases and amplitudes (or closure amplitudes) may be fitted, and nothing else may: phases mean nothing by
- *  themselves. A closure phase's error is shared by its three baselines, 1/sqrt(3) each. Triangles beyond an independent set
- *  are left over and counted. Times and wavelengths are not averaged: each is a scan of its own. Source of the quantities:
- *  Duvert, Young & Hummel 2017, A&A 597, A8. */
+/** From OIFITS without usable complex visibilities: squared visibilities and triple products as they stand, as optical
+ *  interferometers give them. Nothing is averaged: every time and wavelength is a scan of its own, in which triples are
+ *  told to be independent or not. (u,v) are in the wavelength of each channel. Source of the quantities: Duvert, Young &
+ *  Hummel 2017, A&A 597, A8. */
 
 import type { ByteSource } from '../bytes.ts';
-import type { Station } from '../data.ts';
-import type { OiData, Oifits, OiT3, OiVis2 } from '../formats/oifits-types.ts';
-import { cos, sin } from '../numerics/elementary.ts';
-import { InputProblem } from '../problem.ts';
+import type { SquaredVisibilities, Station, TripleProducts } from '../data.ts';
+import type { OiData, Oifits, OiT3, OiVis2, OiWavelength } from '../formats/oifits-types.ts';
+import { weightOfSigma } from '../formats/visibility-table.ts';
 import type { Choices } from './choices.ts';
-import { addRecord, drop, makeRecords, makeTally, type Observation, type Tally } from './records.ts';
+import { drop, faultOf, makeRecords, makeTally, type Observation, type Tally } from './records.ts';
+import { chosenNumbers, leftOut, timeRange } from './select.ts';
 
 const DEGREE = Math.PI / 180;
 /** Tables of one exposure may differ so much in time, days: a tenth of a second. */
 const SAME_TIME = 1e-6;
-/** Between the wavelengths of one time, so that each is a record of its own. */
-const CHANNEL_STEP = 0.05 / 86400;
 
-interface Group {
+/** One channel of one row that passed what both sorts of table share. */
+interface Place {
+  /** Stations of the row. */
+  readonly stations: readonly number[];
   readonly mjd: number;
   readonly wavelength: number;
-  readonly channel: number;
-  readonly baselines: Map<string, Baseline>;
-  readonly triangles: Triangle[];
+  /** Place of the channel in the columns of data. */
+  readonly at: number;
+  readonly row: number;
+  /** What makes a scan. */
+  readonly moment: string;
 }
 
-interface Baseline {
-  readonly a: number;
-  readonly b: number;
-  readonly u: number;
-  readonly v: number;
-  readonly amplitude: number;
-  readonly sigma: number;
-  phase: number;
-  phaseError: number;
+interface Square extends Place {
+  readonly table: OiVis2;
 }
 
-interface Triangle {
-  readonly stations: readonly [number, number, number];
-  readonly phase: number;
-  readonly error: number;
+interface Triple extends Place {
+  readonly table: OiT3;
 }
 
-/** @param target  its index  @throws InputProblem where no squared visibility can be used */
+/** @param target  its index  @throws InputProblem for stations, bands or channels that the file does not have */
 export function observationOfOptical(
   oifits: Oifits,
   source: ByteSource,
   target: number,
   choices: Choices,
 ): Observation {
-  const stations = stationsOf([...oifits.vis2, ...oifits.t3], source.name);
-  const tally = makeTally();
-  const groups = new Map<string, Group>();
-  for (const table of oifits.vis2) addSquared(table, target, stations, groups, tally, choices);
-  for (const table of oifits.t3) addTriples(table, target, stations, groups, choices);
-  const left = [...groups.values()].reduce((sum, group) => sum + solvePhases(group), 0);
-  const used = [...groups.values()].sort((x, y) => x.mjd - y.mjd || x.channel - y.channel);
-  const wavelengths = used.map(({ wavelength }) => wavelength);
-  const wavelengthMetres =
-    wavelengths.length === 0 ? 1 : (Math.min(...wavelengths) + Math.max(...wavelengths)) / 2;
-  const count = used.reduce((sum, { baselines }) => sum + baselines.size, 0);
-  const records = makeRecords(count);
-  const phaseErrors = new Map<string, number>();
-  for (const group of used) {
-    for (const line of group.baselines.values()) {
-      const timeMjd = group.mjd + CHANNEL_STEP * group.channel;
-      phaseErrors.set(keyOf(timeMjd, line.a, line.b), line.phaseError);
-      addRecord(records, {
-        station1: line.a,
-        station2: line.b,
-        timeMjd,
-        integrationSeconds: 0,
-        u: line.u / group.wavelength,
-        v: line.v / group.wavelength,
-        re: line.amplitude * cos(line.phase),
-        im: line.amplitude * sin(line.phase),
-        weight: 1 / (line.sigma * line.sigma),
-        samples: 1,
-      });
-    }
-  }
+  const bands = chosenNumbers(choices.bands, oifits.wavelengths.length, 'bands');
+  const isOfBand = ({ wavelength }: OiData) => bands.includes(oifits.wavelengths.indexOf(wavelength));
+  const [vis2, t3] = [oifits.vis2.filter(isOfBand), oifits.t3.filter(isOfBand)];
+  const channels = channelsOf(
+    bands.map((band) => oifits.wavelengths[band]),
+    choices,
+  );
+  const stations = stationsOf([...vis2, ...t3]);
+  const reading = {
+    target,
+    channels,
+    stations: stations.map(({ name }) => name),
+    out: leftOut(
+      stations.map(({ name }) => name),
+      choices,
+    ),
+    isChosen: timeRange(choices, [...vis2, ...t3].find(({ rows }) => rows > 0)?.mjd[0] ?? 0),
+    tally: makeTally(),
+    seen: new Set<string>(),
+  };
+  const squares = vis2.flatMap((table) => squaresOf(table, reading));
+  const triples = t3.flatMap((table) => triplesOf(table, reading));
+  const scans = scansOf([...squares, ...triples]);
+  const waves = [...squares, ...triples].map(({ wavelength }) => wavelength);
+  const [least, most] = [smallest(waves), -smallest(waves.map((wave) => -wave))];
   const { name, raDegrees, decDegrees } = oifits.targets[target];
-  const list = [...stations.values()];
   return {
     format: 'oifits',
     target: { name, raDegrees, decDegrees },
-    arrayName: oifits.arrays[0]?.name ?? 'unnamed',
-    remark: '',
-    stations: list,
-    wavelengthMetres,
-    bandwidthMetres: Math.max(...wavelengths, 0) - Math.min(...wavelengths, wavelengthMetres),
-    rows: [...oifits.vis2, ...oifits.t3].reduce((sum, { rows }) => sum + rows, 0),
-    records,
-    tally,
+    arrayName: [...vis2, ...t3].find(({ array }) => array !== undefined)?.array?.name ?? 'unnamed',
+    remark: remarkOf(oifits),
+    stations,
+    wavelengthMetres: waves.length === 0 ? 1 : (least + most) / 2,
+    bandwidthMetres: waves.length === 0 ? 0 : most - least,
+    rows: [...vis2, ...t3].reduce((sum, { rows }) => sum + rows, 0),
+    records: makeRecords(0),
+    tally: reading.tally,
     polarisation: 'as the file holds it',
-    bands: oifits.wavelengths.map((_, k) => k + 1),
-    channels: [...new Set(used.map(({ channel }) => channel + 1))],
+    bands: bands.map((band) => band + 1),
+    channels: channels.map((channel) => channel + 1),
     hands: null,
-    leftOut: choices.leaveOut,
+    leftOut: [...reading.out],
     uv: {
       checked: false,
       largest: null,
@@ -113,206 +93,208 @@ export function observationOfOptical(
       finding: 'not checked: optical data',
       applied: 'taken as the format counts them',
     },
-    phaseErrorOf: (timeMjd, a, b) => phaseErrors.get(keyOf(timeMjd, a, b)) ?? Math.PI,
-    warnings: [
-      'The file has squared visibilities and triple products only: amplitudes are their roots, and phases mean nothing but in closures.',
-      'The visibilities are normalised: a total flux of 1 is written as 1 Jy.',
-      ...(left > 0 ? [`${left} closure phases are not independent of others and were left over.`] : []),
-    ],
+    optical: { squared: squaredColumns(squares, scans), triples: tripleColumns(triples, scans) },
+    warnings: warningsOf(oifits, source.name),
   };
 }
 
-/** A number in `keyOf`: the same for what was written and what was averaged. */
-function keyOf(timeMjd: number, a: number, b: number): string {
-  return `${Math.round(timeMjd * 86400 * 100)}:${Math.min(a, b)}:${Math.max(a, b)}`;
+function smallest(values: readonly number[]): number {
+  return values.reduce((a, b) => Math.min(a, b), Number.POSITIVE_INFINITY);
 }
 
-function stationsOf(tables: readonly OiData[], place: string): Map<string, Station> {
-  const stations = new Map<string, Station>();
-  for (const { array } of tables) {
-    if (array === undefined) {
-      throw new InputProblem({
-        code: 'no-array',
-        place,
-        expected: 'tables of data that name an OI_ARRAY',
-        found: 'one without ARRNAME',
-        advice: 'Give the stations their names: write the file as revision 2.',
-      });
-    }
-    for (const { name } of array.stations)
-      if (!stations.has(name)) stations.set(name, { name, xyz: [0, 0, 0] });
-  }
-  return stations;
+function remarkOf({ primary }: Oifits): string {
+  const remark = primary.first.get('REMARK')?.value;
+  return typeof remark === 'string' ? remark : '';
 }
 
-/** The numbers of a row's stations; null where one is left out. */
-function rowStations(
+function warningsOf({ vis, others }: Oifits, place: string): string[] {
+  return [
+    'The file has squared visibilities and triple products: fit `squared-visibilities`, `triple-phases`, `triple-amplitudes`. They are normalised: a total flux of 1 is written as 1 Jy.',
+    ...(vis.length > 0
+      ? [`${vis.length} OI_VIS of ${place} are left out: their amplitudes or phases lack a reference.`]
+      : []),
+    ...(others.includes('OI_CORR')
+      ? ['The correlations in OI_CORR are not used: errors count as independent.']
+      : []),
+  ];
+}
+
+function channelsOf(bands: readonly OiWavelength[], choices: Choices): number[] {
+  const counts = bands.map(({ wavelengths }) => wavelengths.length);
+  const count = choices.channels === undefined ? Math.max(0, ...counts) : Math.min(...counts);
+  return chosenNumbers(choices.channels, count, 'channels');
+}
+
+/** All stations of the tables' arrays by name; without an array, by the numbers in STA_INDEX. */
+function stationsOf(tables: readonly OiData[]): Station[] {
+  const names = new Set(
+    tables.flatMap((table) =>
+      table.array === undefined
+        ? [...numbersOf(table)].sort((a, b) => a - b).map(nameOfNumber)
+        : table.array.stations.map(({ name }) => name),
+    ),
+  );
+  return [...names].map((name) => ({ name, xyz: [0, 0, 0] }));
+}
+
+function numbersOf({ table }: OiData): Float64Array {
+  return table.column('STA_INDEX').numbers();
+}
+
+function nameOfNumber(number: number): string {
+  return `station ${number}`;
+}
+
+interface Reading {
+  readonly target: number;
+  readonly channels: readonly number[];
+  readonly stations: readonly string[];
+  readonly out: ReadonlySet<string>;
+  readonly isChosen: (mjd: number) => boolean;
+  readonly tally: Tally;
+  /** Rows read so far: times, stations and wavelengths. */
+  readonly seen: Set<string>;
+}
+
+function squaresOf(table: OiVis2, reading: Reading): Square[] {
+  const isPlaced = (row: number) => Number.isFinite(table.u[row] + table.v[row]);
+  return placesOf(table, 2, reading, isPlaced)
+    .filter(({ at }) => isUsable(table.squared[at], table.squaredError[at], reading.tally))
+    .map((place) => ({ ...place, table }));
+}
+
+function triplesOf(table: OiT3, reading: Reading): Triple[] {
+  const { u1, v1, u2, v2, phaseDegrees, phaseErrorDegrees, amplitude, amplitudeError } = table;
+  const isPlaced = (row: number) => Number.isFinite(u1[row] + v1[row] + u2[row] + v2[row]);
+  const silent = makeTally();
+  // A product without amplitude still has a phase, and the other way round.
+  const hasAmplitude = (at: number) => isUsable(amplitude[at], amplitudeError[at], silent);
+  return placesOf(table, 3, reading, isPlaced)
+    .filter(({ at }) => hasAmplitude(at) || isUsable(phaseDegrees[at], phaseErrorDegrees[at], reading.tally))
+    .map((place) => ({ ...place, table }));
+}
+
+/** Whether a value may be used; counts why not. */
+function isUsable(value: number, error: number, tally: Tally): boolean {
+  const fault = faultOf(value, 0, weightOfSigma(error));
+  if (fault !== undefined) drop(tally, fault, 1);
+  return fault === undefined;
+}
+
+/** Channels of rows of the target that are neither flagged nor left out. */
+function placesOf(
   table: OiData,
-  row: number,
-  stations: ReadonlyMap<string, Station>,
-  choices: Choices,
-): number[] | null {
-  const names = [...stations.keys()];
-  const own = Array.from({ length: table.stationsPerRow }, (_, k) => {
-    const at = table.stations[row * table.stationsPerRow + k];
-    return (table.array as NonNullable<OiData['array']>).stations[at].name;
-  });
-  return own.some((name) => choices.leaveOut.includes(name)) ? null : own.map((name) => names.indexOf(name));
-}
-
-function groupAt(
-  groups: Map<string, Group>,
-  table: OiData,
-  row: number,
-  channel: number,
-  make: boolean,
-): Group | undefined {
-  const mjd = Math.round(table.mjd[row] / SAME_TIME) * SAME_TIME;
-  const key = `${Math.round(table.mjd[row] / SAME_TIME)}:${table.wavelength.name}:${channel}`;
-  const found = groups.get(key);
-  if (found !== undefined || !make) return found;
-  const made: Group = {
-    mjd,
-    wavelength: table.wavelength.wavelengths[channel],
-    channel,
-    baselines: new Map(),
-    triangles: [],
-  };
-  groups.set(key, made);
-  return made;
-}
-
-function addSquared(
-  table: OiVis2,
-  target: number,
-  stations: ReadonlyMap<string, Station>,
-  groups: Map<string, Group>,
-  tally: Tally,
-  choices: Choices,
-): void {
+  perRow: number,
+  { target, channels, stations, out, isChosen, tally, seen }: Reading,
+  isPlaced: (row: number) => boolean,
+): Place[] {
+  const own = channels.filter((channel) => channel < table.channels);
+  const numbers = table.array === undefined ? numbersOf(table) : undefined;
+  const nameOf = (at: number) =>
+    numbers === undefined
+      ? (table.array?.stations[table.stations[at]].name as string)
+      : nameOfNumber(numbers[at]);
+  const places: Place[] = [];
   for (let row = 0; row < table.rows; row++) {
     if (table.target[row] !== target) continue;
-    const pair = rowStations(table, row, stations, choices);
-    tally.read += table.channels;
-    if (pair === null) {
-      drop(tally, 'station left out', table.channels);
-      continue;
-    }
-    for (let channel = 0; channel < table.channels; channel++) {
-      const at = row * table.channels + channel;
-      const [square, error] = [table.squared[at], table.squaredError[at]];
-      if (table.flag[at] !== 0) drop(tally, 'flagged in the file', 1);
-      else if (!(Number.isFinite(square) && Number.isFinite(error))) drop(tally, 'value not finite', 1);
-      else if (!(error > 0)) drop(tally, 'weight infinite', 1);
-      else if (!Number.isFinite(table.u[row] + table.v[row] + table.mjd[row]))
-        drop(tally, 'coordinates or time not finite', 1);
-      else
-        addBaseline(
-          groupAt(groups, table, row, channel, true) as Group,
-          pair,
-          table,
+    const names = Array.from({ length: perRow }, (_, k) => nameOf(perRow * row + k));
+    const time = Math.round(table.mjd[row] / SAME_TIME);
+    const key = `${time} ${table.wavelength.name} ${[...names].sort()}`;
+    tally.read += own.length;
+    if (names.some((name) => out.has(name))) drop(tally, 'station left out', own.length);
+    else if (new Set(names).size < perRow) drop(tally, 'autocorrelation', own.length);
+    else if (!(isPlaced(row) && Number.isFinite(time)))
+      drop(tally, 'coordinates or time not finite', own.length);
+    else if (!isChosen(table.mjd[row])) drop(tally, 'time not chosen', own.length);
+    else if (seen.has(key)) drop(tally, 'row doubled', own.length);
+    else {
+      const flagged = own.filter((channel) => table.flag[row * table.channels + channel] !== 0);
+      drop(tally, 'flagged in the file', flagged.length);
+      for (const channel of own) {
+        if (flagged.includes(channel)) continue;
+        places.push({
+          stations: names.map((name) => stations.indexOf(name)),
+          mjd: table.mjd[row],
+          wavelength: table.wavelength.wavelengths[channel],
+          at: row * table.channels + channel,
           row,
-          square,
-          error,
-          tally,
-        );
+          moment: `${time} ${table.wavelength.name} ${channel}`,
+        });
+      }
+      seen.add(key);
     }
   }
+  return places;
 }
 
-function addBaseline(
-  { baselines }: Group,
-  [first, second]: readonly number[],
-  table: OiVis2,
-  row: number,
-  square: number,
-  error: number,
-  tally: Tally,
-): void {
-  const turn = first > second;
-  const [a, b] = turn ? [second, first] : [first, second];
-  const key = `${a}:${b}`;
-  if (baselines.has(key)) {
-    drop(tally, 'row doubled', 1);
-    return;
-  }
-  const amplitude = Math.sqrt(Math.max(0, square));
-  baselines.set(key, {
-    a,
-    b,
-    u: turn ? -table.u[row] : table.u[row],
-    v: turn ? -table.v[row] : table.v[row],
-    amplitude,
-    sigma: Math.min(error / (2 * amplitude), Math.sqrt(error) / 2),
-    phase: 0,
-    phaseError: Math.PI,
-  });
+/** Numbers of the moments, rising with time and then with wavelength. */
+function scansOf(places: readonly Place[]): ReadonlyMap<string, number> {
+  const moments = new Map<string, Place>();
+  for (const place of places) if (!moments.has(place.moment)) moments.set(place.moment, place);
+  const sorted = [...moments.values()].sort(
+    (a, b) =>
+      Math.round(a.mjd / SAME_TIME) - Math.round(b.mjd / SAME_TIME) ||
+      a.wavelength - b.wavelength ||
+      (a.moment < b.moment ? -1 : 1),
+  );
+  return new Map(sorted.map(({ moment }, scan) => [moment, scan]));
 }
 
-function addTriples(
-  table: OiT3,
-  target: number,
-  stations: ReadonlyMap<string, Station>,
-  groups: Map<string, Group>,
-  choices: Choices,
-): void {
-  for (let row = 0; row < table.rows; row++) {
-    const three = table.target[row] === target ? rowStations(table, row, stations, choices) : null;
-    if (three === null) continue;
-    for (let channel = 0; channel < table.channels; channel++) {
-      const at = row * table.channels + channel;
-      const [phase, error] = [table.phaseDegrees[at] * DEGREE, table.phaseErrorDegrees[at] * DEGREE];
-      if (table.flag[at] !== 0 || !Number.isFinite(phase) || !(error > 0 && Number.isFinite(error))) continue;
-      groupAt(groups, table, row, channel, false)?.triangles.push({
-        stations: three as unknown as Triangle['stations'],
-        phase,
-        error,
-      });
-    }
-  }
+function squaredColumns(squares: readonly Square[], scans: ReadonlyMap<string, number>): SquaredVisibilities {
+  const { whole, real } = columnsOf(inOrder(squares, scans));
+  return {
+    count: squares.length,
+    station1: whole(({ stations }) => stations[0]),
+    station2: whole(({ stations }) => stations[1]),
+    scan: whole(({ moment }) => scans.get(moment) as number),
+    timeMjd: real(({ mjd }) => mjd),
+    u: real(({ table, row, wavelength }) => table.u[row] / wavelength),
+    v: real(({ table, row, wavelength }) => table.v[row] / wavelength),
+    value: real(({ table, at }) => table.squared[at]),
+    sigma: real(({ table, at }) => table.squaredError[at]),
+  };
 }
 
-/** Gives the baselines phases with which the triangles close as measured. @returns triangles that were left over */
-function solvePhases({ baselines, triangles }: Group): number {
-  const known = new Set<string>();
-  const sideOf = (from: number, to: number) => ({
-    key: from < to ? `${from}:${to}` : `${to}:${from}`,
-    sign: from < to ? 1 : -1,
-  });
-  const waiting = triangles
-    .map(({ stations: [a, b, c], phase, error }) => ({
-      sides: [sideOf(a, b), sideOf(b, c), sideOf(c, a)],
-      phase,
-      error,
-    }))
-    .filter(({ sides }) => sides.every(({ key }) => baselines.has(key)))
-    .sort((x, y) => x.error - y.error);
-  let left = 0;
-  while (waiting.length > 0) {
-    const unknown = ({ sides }: (typeof waiting)[number]) =>
-      sides.filter(({ key }) => !known.has(key)).length;
-    // First those that fix one more baseline; else one whose other sides may be chosen.
-    const next =
-      waiting.find((triangle) => unknown(triangle) === 1) ??
-      waiting.find((triangle) => unknown(triangle) > 1);
-    if (next === undefined) {
-      left += waiting.length;
-      break;
-    }
-    waiting.splice(waiting.indexOf(next), 1);
-    const open = next.sides.filter(({ key }) => !known.has(key));
-    const last = open[open.length - 1];
-    for (const { key } of open) known.add(key);
-    const others = next.sides.filter((side) => side !== last);
-    const sum = others.reduce(
-      (total, { key, sign }) => total + sign * (baselines.get(key) as Baseline).phase,
-      0,
-    );
-    (baselines.get(last.key) as Baseline).phase = last.sign * (next.phase - sum);
-    for (const { key } of next.sides) {
-      const line = baselines.get(key) as Baseline;
-      line.phaseError = Math.min(line.phaseError, next.error / Math.sqrt(3));
-    }
-  }
-  return left;
+function tripleColumns(triples: readonly Triple[], scans: ReadonlyMap<string, number>): TripleProducts {
+  const { whole, real } = columnsOf(inOrder(triples, scans));
+  const silent = makeTally();
+  const hasPhase = ({ table, at }: Triple) =>
+    isUsable(table.phaseDegrees[at], table.phaseErrorDegrees[at], silent);
+  const hasAmplitude = ({ table, at }: Triple) =>
+    isUsable(table.amplitude[at], table.amplitudeError[at], silent);
+  return {
+    count: triples.length,
+    station1: whole(({ stations }) => stations[0]),
+    station2: whole(({ stations }) => stations[1]),
+    station3: whole(({ stations }) => stations[2]),
+    scan: whole(({ moment }) => scans.get(moment) as number),
+    timeMjd: real(({ mjd }) => mjd),
+    u1: real(({ table, row, wavelength }) => table.u1[row] / wavelength),
+    v1: real(({ table, row, wavelength }) => table.v1[row] / wavelength),
+    u2: real(({ table, row, wavelength }) => table.u2[row] / wavelength),
+    v2: real(({ table, row, wavelength }) => table.v2[row] / wavelength),
+    amplitude: real((each) => (hasAmplitude(each) ? each.table.amplitude[each.at] : 0)),
+    sigmaAmplitude: real((each) =>
+      hasAmplitude(each) ? each.table.amplitudeError[each.at] : Number.POSITIVE_INFINITY,
+    ),
+    phase: real((each) => (hasPhase(each) ? each.table.phaseDegrees[each.at] * DEGREE : 0)),
+    sigmaPhase: real((each) =>
+      hasPhase(each) ? each.table.phaseErrorDegrees[each.at] * DEGREE : Number.POSITIVE_INFINITY,
+    ),
+  };
+}
+
+/** By scan, then by stations: the order of rows in a file has no influence. */
+function inOrder<P extends Place>(places: readonly P[], scans: ReadonlyMap<string, number>): P[] {
+  const scanOf = ({ moment }: P) => scans.get(moment) as number;
+  const byStations = (a: P, b: P) =>
+    a.stations.reduce((order, station, k) => order || station - b.stations[k], 0);
+  return [...places].sort((a, b) => scanOf(a) - scanOf(b) || byStations(a, b));
+}
+
+function columnsOf<P>(places: readonly P[]) {
+  return {
+    whole: (value: (place: P) => number) => Int32Array.from(places, value),
+    real: (value: (place: P) => number) => Float64Array.from(places, value),
+  };
 }

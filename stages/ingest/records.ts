@@ -1,7 +1,7 @@
 /** What every reader of `ingest` hands to the averaging: records, one per row of the file that has anything usable,
  *  and the tally of samples. A sample is one complex number of one row, hand, band and channel among those chosen. */
 
-import type { Station } from '../data.ts';
+import type { SquaredVisibilities, Station, TripleProducts } from '../data.ts';
 
 /** Reasons for which samples are dropped, in the order of the report. */
 export const REASONS = [
@@ -130,6 +130,17 @@ function nothingBelowZero(seconds: number): number {
   return Number.isFinite(seconds) ? Math.max(0, seconds) : 0;
 }
 
+/** Every station of every row, pair or triple. */
+export function stationsInRows(
+  { count, station1, station2 }: Pick<Records, 'count' | 'station1' | 'station2'>,
+  optical: OpticalData | undefined,
+): Int32Array[] {
+  const own = [station1.subarray(0, count), station2.subarray(0, count)];
+  if (optical === undefined) return own;
+  const { squared, triples } = optical;
+  return [...own, squared.station1, squared.station2, triples.station1, triples.station2, triples.station3];
+}
+
 /** What was found when (u,v) were computed anew from the station positions. */
 export interface UvAgreement {
   /** Whether there was anything to compare with. */
@@ -146,6 +157,12 @@ export interface UvAgreement {
   readonly exchanged?: readonly [number, number] | null;
   /** Seconds by which the times are early, with the error; null when not checked. */
   readonly clock?: { readonly seconds: number; readonly error: number } | null;
+}
+
+/** Squared visibilities and triple products; indices into the observation's stations. */
+export interface OpticalData {
+  readonly squared: SquaredVisibilities;
+  readonly triples: TripleProducts;
 }
 
 /** One observation as a reader hands it over. */
@@ -170,7 +187,7 @@ export interface Observation {
   readonly hands: { both: number; one: number; identical: number } | null;
   readonly leftOut: readonly string[];
   readonly uv: UvAgreement;
-  /** Radians, where phases have errors of their own, that is, in optical data; these are not averaged. */
-  readonly phaseErrorOf?: (timeMjd: number, station1: number, station2: number) => number;
+  /** What optical arrays measure; there are no records then. */
+  readonly optical?: OpticalData;
   readonly warnings: readonly string[];
 }

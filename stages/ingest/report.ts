@@ -4,7 +4,7 @@ import { median } from '../numerics/statistics.ts';
 import type { AveragingResult } from './averaging.ts';
 import { snrOf } from './averaging.ts';
 import type { Choices } from './choices.ts';
-import { kept, type Observation, REASONS } from './records.ts';
+import { kept, type Observation, type OpticalData, REASONS, stationsInRows } from './records.ts';
 import type { Timetable } from './scans.ts';
 import { LIGHT_SPEED } from './select.ts';
 
@@ -53,18 +53,28 @@ export function reportOf(
       baselinesDroppedAsFaint: result.faint,
       medianSnr: middle(list(averages.count, (k) => snrOf(averages, k))),
     },
+    ...(observation.optical === undefined ? {} : { optical: opticalOf(observation.optical) }),
     scatter: scatterOf(observation, timetable, result),
     coherence: coherenceOf(observation, timetable, result),
     warnings,
   };
 }
 
-function stationsOf({ stations, leftOut, records }: Observation, present: ReadonlySet<number>) {
+/** How many measurements of each sort; a triple product may lack phase or amplitude. */
+function opticalOf({ squared, triples }: OpticalData) {
+  const finite = (errors: Float64Array) => errors.filter(Number.isFinite).length;
+  return {
+    moments: new Set([...squared.scan, ...triples.scan]).size,
+    squaredVisibilities: squared.count,
+    tripleProducts: triples.count,
+    triplePhases: finite(triples.sigmaPhase),
+    tripleAmplitudes: finite(triples.sigmaAmplitude),
+  };
+}
+
+function stationsOf({ stations, leftOut, records, optical }: Observation, present: ReadonlySet<number>) {
   const rows = new Int32Array(stations.length);
-  for (let k = 0; k < records.count; k++) {
-    rows[records.station1[k]]++;
-    rows[records.station2[k]]++;
-  }
+  for (const column of stationsInRows(records, optical)) for (const station of column) rows[station]++;
   const absent = stations.filter((station, k) => !present.has(k) && !leftOut.includes(station.name));
   return {
     present: stations.flatMap(({ name }, k) => (present.has(k) ? [{ name, rows: rows[k] }] : [])),

@@ -9,7 +9,8 @@ import { gainDeviations } from '../imaging/fit-problem.ts';
 import type { AboutRing } from '../imaging/injected-rings.ts';
 import { basisVisibilities } from '../imaging/linear-model.ts';
 import { biasOf } from '../imaging/method-bias.ts';
-import { longestBaseline, selectRows } from '../imaging/select-rows.ts';
+import { pointsOf } from '../imaging/points.ts';
+import { longestBaseline, selectRows, wantedData } from '../imaging/select-rows.ts';
 import { runTrial, type Trial } from '../imaging/trial.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import { measureRing } from '../numerics/ring.ts';
@@ -29,12 +30,13 @@ export function compute(task: StageTask): StageReport {
   const image = readSkyImage(task.inputs.image[0]);
   const about = ringIn(image, basis.resolutionRadians);
   const { data } = selectRows(
-    visibilities,
+    wantedData(visibilities, settings.data),
     settings.shortest * 1e9,
     longestBaseline(basis.resolutionRadians),
   );
+  const points = pointsOf(data);
   const hints = {
-    visibilities: basisVisibilities(basis, data.u, data.v),
+    visibilities: basisVisibilities(basis, points.u, points.v),
     libraryStride: LIBRARY_STRIDE,
   };
   const deviations = gainDeviations(visibilities, settings.gainPriors);

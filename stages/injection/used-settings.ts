@@ -3,17 +3,13 @@
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
 import { readJson } from '../formats/json.ts';
-import { DATA_TERMS, DATA_WORDS, isOfRows } from '../imaging/data-terms.ts';
+import { DATA_TERMS, DATA_WORDS } from '../imaging/data-terms.ts';
 import type { FitSettings } from '../imaging/settings.ts';
 import { InputProblem } from '../problem.ts';
 
 const schema = z.object({
   settings: z.object({
-    // Of rows of visibilities: others are not made anew.
-    data: z.union([
-      z.enum(DATA_WORDS),
-      z.array(z.enum(DATA_TERMS).refine(isOfRows, 'a term of optical data')),
-    ]),
+    data: z.union([z.enum(DATA_WORDS), z.array(z.enum(DATA_TERMS))]),
     components: z.number(),
     priorWidth: z.number(),
     flux: z.number(),

@@ -19,6 +19,8 @@ def plain(x):
         return [x.real, x.imag]
     if isinstance(x, list):
         return [plain(y) for y in x]
+    if isinstance(x, (float, np.floating)) and x != x:
+        return None  # undefined; JSON has no word for it
     return x.item() if isinstance(x, np.generic) else x
 
 

@@ -197,7 +197,7 @@ test('says what is wrong with its parameters and data', () => {
     'parameter gainPriors.stations: unknown-station: expected names among Alder, Aspen, Birch, Cedar, Elder, Hazel, Larch, Rowan, got Oak. Write the name as the data do.',
   );
   expect(change({ data: 'closure-phases-and-log-closure-amplitudes' })).toThrow(
-    'parameter flux: flux-needed: expected the compact flux, because closures and normalised products do not see it, got no value. State the flux, such as `flux: 0.6 Jy`, or take amplitudes or complex visibilities among the data.',
+    'parameter flux: flux-needed: expected the compact flux, because closures do not see it, got no value. State the flux, such as `flux: 0.6 Jy`, or take amplitudes or complex visibilities among the data.',
   );
   const broken = { ...good, sigma: good.sigma.map((value, r) => (r === 3 ? 0 : value)) };
   expect(() => runFit(broken, basis, SETTINGS)).toThrow(

@@ -11,7 +11,7 @@ import { readPosterior, writePosterior } from '../../../stages/formats/posterior
 import { readSkyCube, readSkyImage, startSkyCube, writeSkyImage } from '../../../stages/formats/sky-image.ts';
 import { readVisibilities, writeVisibilities } from '../../../stages/formats/visibilities.ts';
 import { fixture, problemOf, written } from './fits/fixtures.ts';
-import { basis, image, posterior, visibilities } from './our-files.ts';
+import { basis, image, optical, posterior, visibilities } from './our-files.ts';
 
 describe('images', () => {
   test('come back to the bit, but for the last bit of the pixel size when first written', () => {
@@ -228,10 +228,52 @@ describe('visibilities', () => {
     expect(readVisibilities(written((sink) => writeVisibilities(sink, none)))).toEqual(none);
   });
 
+  test('come back with squared visibilities and triple products', () => {
+    const again = readVisibilities(written((sink) => writeVisibilities(sink, optical)));
+    expect(again.count).toBe(0);
+    // Metres and degrees: a few roundings of 1.1e-16 each; indices, times, values and what is missing to the bit.
+    for (const part of ['squared', 'triples'] as const) {
+      const [found, put] = [again[part], optical[part]] as unknown as Record<string, Float64Array>[];
+      for (const [key, values] of Object.entries(put)) {
+        if (key === 'count') continue;
+        for (const [k, value] of values.entries()) {
+          const exact = found[key][k] === value;
+          const isScaled = /^[uv]|phase/i.test(key);
+          expect(exact || (isScaled && Math.abs(found[key][k] / value - 1) < 1e-15), `${key} ${k}`).toBe(
+            true,
+          );
+        }
+      }
+    }
+    // A standing file: written again it has the same bytes.
+    const bytesOf = (data: typeof again) =>
+      Buffer.from(written((sink) => writeVisibilities(sink, data)).read(0, 5760));
+    expect(bytesOf(again).equals(bytesOf(optical))).toBe(true);
+  });
+
+  test('are refused with a squared visibility or a triple product that no stage writes', () => {
+    const { squared, triples } = optical as Required<typeof optical>;
+    const write = (change: object) => written((sink) => writeVisibilities(sink, { ...optical, ...change }));
+    const error = write({ squared: { ...squared, sigma: Float64Array.of(0.1, 0) } });
+    expect(problemOf(() => readVisibilities(error)).message).toBe(
+      'written, HDU 6 (OI_VIS2), row 2: bad-row: expected a row in use with errors above 0 and NS_SCAN from 0, got VIS2ERR ' +
+        '0. Give the output of a stage, or take the file through a stage of kind ingest.',
+    );
+    const none = new Float64Array(3).fill(Number.POSITIVE_INFINITY);
+    const nothing = write({ triples: { ...triples, sigmaAmplitude: none, sigmaPhase: none } });
+    expect(problemOf(() => readVisibilities(nothing)).found).toBe('T3AMPERR NaN, T3PHIERR NaN');
+    const early = write({ triples: { ...triples, scan: Int32Array.of(0, -1, 0) } });
+    expect(problemOf(() => readVisibilities(early)).found).toBe('NS_SCAN -1');
+    expect(() => write({ squared: { ...squared, value: Float64Array.of(Number.NaN, 0) } })).toThrow(
+      'VIS2DATA: value 0 is NaN',
+    );
+  });
+
   test('are refused when they are other OIFITS', () => {
     expect(problemOf(() => readVisibilities(fixture('double.oifits'))).message).toBe(
-      'double.oifits: wrong-layout: expected one OI_VIS of correlated flux in Jy with one target, one wavelength and a ' +
-        'column NS_SCAN, got 1 OI_VIS (absolute, unit ""), 1 targets, 1 OI_WAVELENGTH, 3 other tables of data. ' +
+      'double.oifits: wrong-layout: expected one OI_VIS of correlated flux in Jy, one OI_VIS2 and one OI_T3 at most, with ' +
+        'one target, one wavelength and a column NS_SCAN, got 1 OI_VIS (absolute, unit ""), 1 targets, 1 OI_WAVELENGTH, ' +
+        '1 OI_VIS2, 1 OI_T3, 1 OI_FLUX. ' +
         'Other OIFITS goes through a stage of kind ingest first.',
     );
   });

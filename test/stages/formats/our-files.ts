@@ -63,6 +63,48 @@ export const visibilities: Visibilities = {
   sigmaPhase: Float64Array.of(0.02, 0.08, 0.04),
 };
 
+/** Nothing but squared visibilities and triple products; one product has no amplitude, one no phase. */
+export const optical: Visibilities = {
+  ...visibilities,
+  wavelengthMetres: 1.6e-6,
+  bandwidthMetres: 1e-7,
+  count: 0,
+  ...Object.fromEntries(['station1', 'station2', 'scan'].map((key) => [key, new Int32Array(0)])),
+  ...Object.fromEntries(
+    ['timeMjd', 'integrationSeconds', 'u', 'v', 're', 'im', 'sigma', 'sigmaPhase'].map((key) => [
+      key,
+      new Float64Array(0),
+    ]),
+  ),
+  squared: {
+    count: 2,
+    station1: Int32Array.of(0, 2),
+    station2: Int32Array.of(1, 0),
+    scan: Int32Array.of(0, 1),
+    timeMjd: Float64Array.of(62000.25, 62000.5),
+    u: Float64Array.of(1.5e7, -2.25e7),
+    v: Float64Array.of(-3.1e7, 4.7e7),
+    value: Float64Array.of(0.25, -0.0625),
+    sigma: Float64Array.of(0.01, 0.125),
+  },
+  triples: {
+    count: 3,
+    station1: Int32Array.of(0, 1, 2),
+    station2: Int32Array.of(1, 2, 0),
+    station3: Int32Array.of(2, 0, 1),
+    scan: Int32Array.of(0, 0, 1),
+    timeMjd: Float64Array.of(62000.25, 62000.25, 62000.5),
+    u1: Float64Array.of(1.5e7, -2.25e7, 1e7),
+    v1: Float64Array.of(-3.1e7, 4.7e7, 0),
+    u2: Float64Array.of(2e7, 3e7, -4e7),
+    v2: Float64Array.of(0, -1e7, 2.5e7),
+    amplitude: Float64Array.of(0.125, 0, 0.5),
+    sigmaAmplitude: Float64Array.of(0.03125, Number.POSITIVE_INFINITY, 0.25),
+    phase: Float64Array.of(-0.5, 3, 0),
+    sigmaPhase: Float64Array.of(0.125, 0.25, Number.POSITIVE_INFINITY),
+  },
+};
+
 function bytes(write: (sink: ReturnType<typeof memorySink>) => void): Uint8Array {
   const sink = memorySink();
   write(sink);
@@ -81,6 +123,7 @@ export const ourFiles: Readonly<Record<string, () => Uint8Array>> = {
   'basis.fits': () => bytes((sink) => writeBasis(sink, basis)),
   'posterior.fits': () => bytes((sink) => writePosterior(sink, posterior)),
   'visibilities.fits': () => bytes((sink) => writeVisibilities(sink, visibilities)),
+  'optical.fits': () => bytes((sink) => writeVisibilities(sink, optical)),
   'forms.fits': () =>
     bytes((sink) => {
       appendEmptyPrimary(sink);

@@ -81,6 +81,28 @@ describe('astropy reads', () => {
     expect(STAXYZ).toEqual(visibilities.stations.map(({ xyz }) => xyz));
   });
 
+  test('squared visibilities and triple products, undefined where nothing was measured', () => {
+    const squares = contentOf('optical.fits', 5) as Record<string, number[]>;
+    expect(squares.VIS2DATA).toEqual([0.25, -0.0625]);
+    expect(squares.STA_INDEX).toEqual([
+      [1, 2],
+      [3, 1],
+    ]);
+    expect(squares.UCOORD?.[0]).toBeCloseTo(24, 13); // 1.5e7 wavelengths of 1.6 um
+    const triples = contentOf('optical.fits', 6) as Record<string, (number | null)[]>;
+    expect(triples.T3AMP).toEqual([0.125, null, 0.5]);
+    expect(triples.T3AMPERR).toEqual([0.03125, null, 0.25]);
+    // 0.5 rad and 3 rad in degrees: 90/pi and 540/pi, Python's math.
+    expect(triples.T3PHI?.[0]).toBeCloseTo(-28.64788975654116, 13);
+    expect(triples.T3PHI?.[1]).toBeCloseTo(171.88733853924697, 12);
+    expect(triples.T3PHI?.[2]).toBeNull();
+    expect(triples.STA_INDEX).toEqual([
+      [1, 2, 3],
+      [2, 3, 1],
+      [3, 1, 2],
+    ]);
+  });
+
   test('every form of column, an image extension and random groups', () => {
     expect(contentOf('forms.fits', 1)).toEqual({
       FLAG: [

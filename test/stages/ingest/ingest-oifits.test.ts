@@ -36,6 +36,9 @@ describe('OIFITS', () => {
     expect(stage.warnings?.[0]).toBe(
       'The visibilities are normalised: a total flux of 1 is written as 1 Jy.',
     );
+    expect(stage.warnings?.[1]).toBe(
+      '1 OI_VIS2 and 1 OI_T3 are left out: the complex visibilities of OI_VIS hold what they say.',
+    );
   });
 
   it('does not average wavelengths that lie far apart', () => {
