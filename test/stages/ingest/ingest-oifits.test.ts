@@ -41,6 +41,41 @@ describe('OIFITS', () => {
     );
   });
 
+  it('gives squared visibilities and triple products where complex ones lack a reference', () => {
+    const text = Buffer.from(fixture('double.oifits')).toString('latin1');
+    // The card's length stays; the sums, which would be wrong, get names that mean nothing.
+    const differential = text
+      .replace("'absolute'    ", "'differential'")
+      .replaceAll('CHECKSUM=', 'UNCHECKS=')
+      .replaceAll('DATASUM =', 'UNDATASU=');
+    expect(differential).not.toBe(text);
+    const bytes = Buffer.from(differential, 'latin1');
+    expect(bytes.length).toBe(text.length);
+    const { visibilities, stage } = runIngest(bytes, { channels: [2] });
+    expect(visibilities.count).toBe(0);
+    expect(stage.warnings?.join(' ')).toContain(
+      '1 OI_VIS of data are left out: their amplitudes or phases lack a reference.',
+    );
+    // Source: the same script. V2 = |V|^2, T3PHI = arg V12 V23 conj(V13).
+    const mas = Math.PI / 180 / 3.6e6;
+    const V = (u: number, v: number) => {
+      const phase = -2 * Math.PI * (u * 3 * mas - v * 1.5 * mas);
+      return [(1 + 0.4 * Math.cos(phase)) / 1.4, (0.4 * Math.sin(phase)) / 1.4];
+    };
+    const { squared, triples } = visibilities as Required<Visibilities>;
+    expect([squared.count, triples.count > 0]).toEqual([6, true]);
+    for (let k = 0; k < 6; k++) {
+      const [re, im] = V(squared.u[k], squared.v[k]);
+      expect(squared.value[k]).toBeCloseTo(re * re + im * im, 10);
+    }
+    for (let t = 0; t < triples.count; t++) {
+      const [u1, v1, u2, v2] = [triples.u1[t], triples.v1[t], triples.u2[t], triples.v2[t]];
+      const angle = ([re, im]: number[]) => Math.atan2(im, re);
+      const phase = angle(V(u1, v1)) + angle(V(u2, v2)) - angle(V(u1 + u2, v1 + v2));
+      expect(Math.sin(triples.phase[t] - phase)).toBeCloseTo(0, 9);
+    }
+  });
+
   it('does not average wavelengths that lie far apart', () => {
     expect(problemOf(fixture('double.oifits')).code).toBe('wide-band');
     expect(runIngest(fixture('double.oifits'), { channels: [1, 2] }).report.samples.read).toBe(12);
