@@ -61,7 +61,11 @@ export function isHeldOut(image: number, part: number): boolean {
   return Math.floor((image + 1) * part) > Math.floor(image * part);
 }
 
-/** Builds the basis. Reads every image twice: for the covariance, then for its scores.
+/** Projections that are kept between the two passes, bytes: of some 11,000 images on 724 modes. */
+const KEPT_BYTES = 64e6;
+
+/** Builds the basis. Needs the projection of every image twice: for the covariance, then for its scores. As many as fit
+ *  into KEPT_BYTES are kept; of the others the image is read again.
  *  @param look  is shown every image of the library, in order, on the finished basis
  *  @throws InputProblem when the library cannot carry so many components, or the field has too many frequencies */
 export function buildBasis(
@@ -73,7 +77,8 @@ export function buildBasis(
   const { components, heldOut, resolutionRadians, progress = () => {} } = options;
   const modes = makeModes(library, resolutionRadians, TAPER_CUT);
   requireModes(modes.count, components);
-  const moments = sumMoments(library, modes, options);
+  const project = keepingProjection(library, modes);
+  const moments = sumMoments(library, modes, options, project);
   progress(COVARIANCE_PART);
   const found = principalComponents(moments, components);
   requireRank(found.eigenvalues, moments.count);
@@ -83,7 +88,7 @@ export function buildBasis(
   modes.synthesize(mean, moments.mean, 1);
   const scores = new Float64Array(moments.count * components);
   let row = 0;
-  for (const projection of projectImages(library, modes, moments.mean, vectors, options)) {
+  for (const projection of projectImages(library, project, moments.mean, vectors, options)) {
     if (!projection.heldOut) scores.set(projection.scores, components * row++);
     look(projection);
   }
@@ -102,17 +107,35 @@ export function buildBasis(
   return { basis, modes: modes.count };
 }
 
+/** Writes an image's projection on the modes. */
+type Project = (out: Float64Array, image: number) => void;
+
+function keepingProjection(library: Library, modes: Modes): Project {
+  const room = Math.min(library.count, Math.floor(KEPT_BYTES / (8 * modes.count)));
+  const kept: Float64Array[] = [];
+  return (out, image) => {
+    const known = kept[image];
+    if (known !== undefined) {
+      out.set(known);
+      return;
+    }
+    modes.project(out, library.image(image));
+    if (image < room) kept[image] = out.slice();
+  };
+}
+
 function sumMoments(
   library: Library,
   modes: Modes,
   { heldOut, blockRows, components }: BuildOptions,
+  project: Project,
 ): Moments {
   const sum = makeMomentSum(modes.count, blockRows);
   const row = new Float64Array(modes.count);
   let count = 0;
   for (let image = 0; image < library.count; image++) {
     if (isHeldOut(image, heldOut)) continue;
-    modes.project(row, library.image(image));
+    project(row, image);
     sum.add(row);
     count++;
   }
@@ -140,17 +163,17 @@ function orient(
 
 function* projectImages(
   library: Library,
-  modes: Modes,
+  project: Project,
   mean: Float64Array,
   vectors: readonly Float64Array[],
   { heldOut, progress = () => {} }: BuildOptions,
 ): Generator<Projection> {
-  const row = new Float64Array(modes.count);
+  const row = new Float64Array(mean.length);
   const scores = new Float64Array(vectors.length);
   // The constant function's coefficient, which the modes leave out.
   const constant = 1 / (library.nx * library.ny);
   for (let image = 0; image < library.count; image++) {
-    modes.project(row, library.image(image));
+    project(row, image);
     let square = constant;
     let deviation = 0;
     for (let m = 0; m < row.length; m++) {

@@ -11,7 +11,13 @@
 import { makeTransform2d } from './dft.ts';
 import { cos, sin } from './elementary.ts';
 import type { PixelGrid } from './fourier.ts';
-import { gaussianTaper, type Model, makeShapeTransform } from './models.ts';
+import {
+  gaussianTaper,
+  isCircular,
+  type Model,
+  makeMirroredTransform,
+  makeShapeTransform,
+} from './models.ts';
 
 /** Full width of the Gaussian, in pixels, that makes a sharp edge drawable: it leaves 3 % of the amplitude at the
  *  grid's highest frequency, ripples below 1 % of an edge's height. */
@@ -67,24 +73,37 @@ function addHalfPlane(
 ): void {
   const taperX = U.map((u) => gaussianTaper(u * u, model.blur));
   const taperY = V.map((v) => gaussianTaper(v * v, model.blur));
-  const value = new Float64Array(2);
+  const value = new Float64Array(3);
   for (const part of model.parts) {
-    const shape = makeShapeTransform(part);
     // exp(+2 pi i (u x_0 + v y_0)) for the first pixel's place, exp(-2 pi i (u x + v y)) for the part's.
     const x = phasesAt(U, ((nx - 1) / 2) * pixelRadians - part.x);
     const y = phasesAt(V, -((ny - 1) / 2) * pixelRadians - part.y);
+    const isNothing = (l: number, k: number) =>
+      !(Math.abs(part.flux * (taperX[k] as number) * (taperY[l] as number)) > NEGLIGIBLE_TAPER);
+    const add = (l: number, k: number, real: number, imaginary: number) => {
+      const taper = part.flux * (taperX[k] as number) * (taperY[l] as number);
+      const c =
+        taper * ((x.re[k] as number) * (y.re[l] as number) - (x.im[k] as number) * (y.im[l] as number));
+      const s =
+        taper * ((x.re[k] as number) * (y.im[l] as number) + (x.im[k] as number) * (y.re[l] as number));
+      const at = l * nx + k;
+      re[at] = (re[at] as number) + real * c - imaginary * s;
+      im[at] = (im[at] as number) + real * s + imaginary * c;
+    };
+    const [shape, mirrored] = [makeShapeTransform(part), makeMirroredTransform(part)];
+    // A circular part needs one evaluation for both signs of u. The frequency without a mirror is taken as nothing anyway.
+    const [paired, single] = isCircular(part) ? [(nx - 1) >> 1, 1] : [0, nx];
     for (let l = 0; 2 * l < ny; l++) {
-      for (let k = 0; k < nx; k++) {
-        const taper = part.flux * (taperX[k] as number) * (taperY[l] as number);
-        if (!(Math.abs(taper) > NEGLIGIBLE_TAPER)) continue;
+      for (let k = 0; k < single; k++) {
+        if (isNothing(l, k)) continue;
         shape(value, U[k] as number, V[l] as number);
-        const c =
-          taper * ((x.re[k] as number) * (y.re[l] as number) - (x.im[k] as number) * (y.im[l] as number));
-        const s =
-          taper * ((x.re[k] as number) * (y.im[l] as number) + (x.im[k] as number) * (y.re[l] as number));
-        const at = l * nx + k;
-        re[at] = (re[at] as number) + (value[0] as number) * c - (value[1] as number) * s;
-        im[at] = (im[at] as number) + (value[0] as number) * s + (value[1] as number) * c;
+        add(l, k, value[0] as number, value[1] as number);
+      }
+      for (let k = 1; k <= paired; k++) {
+        if (isNothing(l, k)) continue;
+        mirrored(value, U[k] as number, V[l] as number);
+        add(l, k, value[0] as number, value[1] as number);
+        add(l, nx - k, value[0] as number, value[2] as number);
       }
     }
   }

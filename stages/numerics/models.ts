@@ -72,19 +72,54 @@ export type ShapeTransform = (out: Float64Array, u: number, v: number) => void;
 
 /** Makes a part's transform about its own centre. */
 export function makeShapeTransform(part: ModelPart): ShapeTransform {
-  const { shape, length, breadth, asymmetry } = part;
-  const sinAxis = sin(part.axis);
-  const cosAxis = cos(part.axis);
-  const along = asymmetry * cos(part.brightest - part.axis);
-  const across = asymmetry * sin(part.brightest - part.axis);
+  const { shape, length, breadth } = part;
+  const { sinAxis, cosAxis, along, across } = directions(part);
   return (out, u, v) => {
     const p = (u * sinAxis + v * cosAxis) * length;
     const q = (u * cosAxis - v * sinAxis) * breadth;
     const rho = Math.sqrt(p * p + q * q);
-    const imaginary = shape === 'ring' && asymmetry !== 0 && rho > 0;
     out[0] = realTransform(shape, p, q, rho);
-    out[1] = imaginary ? (-2 * besselJ1(Math.PI * rho) * (p * along + q * across)) / rho : 0;
+    out[1] = imaginary(part, rho) ? (-2 * besselJ1(Math.PI * rho) * (p * along + q * across)) / rho : 0;
   };
+}
+
+/** Whether a part looks the same however it is turned, but for a ring's asymmetry, whose direction counts alone. */
+export function isCircular({ shape, length, breadth }: ModelPart): boolean {
+  return length === breadth && shape !== 'box';
+}
+
+/** Makes the transform of a circular part at (u,v) and at (-u,v) in one: writes to out[0] the real part of both, to out[1]
+ *  and out[2] the imaginary parts. */
+export function makeMirroredTransform(part: ModelPart): ShapeTransform {
+  const { shape, length } = part;
+  const { along, across } = directions(part);
+  return (out, u, v) => {
+    const p = v * length;
+    const q = u * length;
+    const rho = Math.sqrt(p * p + q * q);
+    out[0] = realTransform(shape, p, q, rho);
+    out[1] = 0;
+    out[2] = 0;
+    if (!imaginary(part, rho)) return;
+    const size = -2 * besselJ1(Math.PI * rho);
+    out[1] = (size * (p * along + q * across)) / rho;
+    out[2] = (size * (p * along - q * across)) / rho;
+  };
+}
+
+/** The part's axis, and its asymmetry along and across it. */
+function directions(part: ModelPart) {
+  const axis = isCircular(part) ? 0 : part.axis;
+  return {
+    sinAxis: sin(axis),
+    cosAxis: cos(axis),
+    along: part.asymmetry * cos(part.brightest - axis),
+    across: part.asymmetry * sin(part.brightest - axis),
+  };
+}
+
+function imaginary({ shape, asymmetry }: ModelPart, rho: number): boolean {
+  return shape === 'ring' && asymmetry !== 0 && rho > 0;
 }
 
 function realTransform(shape: Shape, p: number, q: number, rho: number): number {

@@ -19,6 +19,8 @@ const GRID_DIVISOR = 14;
 const FEW_RAYS = 16;
 /** Pixels between samples along a ray. */
 export const RAY_STEP = 0.5;
+/** The same while the centre is searched: the parabolas that follow find the top as well. */
+const SEARCH_STEP = 1;
 
 export interface Ridge {
   readonly radii: Float64Array;
@@ -91,7 +93,7 @@ function mostEvenPlace(spline: SplineImage, [column, row]: [number, number]): [n
         clamp(column + i * step, 2, spline.nx - 3),
         clamp(row + j * step, 2, spline.ny - 3),
       ];
-      const uneven = unevenness(findRidge(spline, at[0], at[1], rays));
+      const uneven = unevenness(findRidge(spline, at[0], at[1], rays, SEARCH_STEP));
       if (uneven < least) {
         least = uneven;
         best = at;
@@ -108,7 +110,7 @@ function searchCentre(spline: SplineImage, start: [number, number], rays: Rays):
   let best: Centre | undefined;
   let idle = 0;
   for (let step = 0; step < MOST_STEPS; step++) {
-    const ridge = findRidge(spline, column, row, rays);
+    const ridge = findRidge(spline, column, row, rays, SEARCH_STEP);
     if (!best || unevenness(ridge) < unevenness(best.ridge)) {
       best = { column, row, ridge };
       idle = 0;
@@ -119,17 +121,19 @@ function searchCentre(spline: SplineImage, start: [number, number], rays: Rays):
     column = clamp(column - east, 2, spline.nx - 3);
     row = clamp(row + north, 2, spline.ny - 3);
   }
-  return best as Centre;
+  const centre = best as Centre;
+  return { ...centre, ridge: findRidge(spline, centre.column, centre.row, rays, RAY_STEP) };
 }
 
-function findRidge(spline: SplineImage, column: number, row: number, rays: Rays): Ridge {
+/** @param step  pixels between samples */
+function findRidge(spline: SplineImage, column: number, row: number, rays: Rays, step: number): Ridge {
   const count = rays.sines.length;
   const reach = reachFrom(spline, column, row);
   const radii = new Float64Array(count);
   const brightness = new Float64Array(count);
   for (let k = 0; k < count; k++) {
     const along = ray(spline, column, row, rays, k);
-    const radius = brightestRadius(along, reach);
+    const radius = brightestRadius(along, reach, step);
     radii[k] = radius;
     brightness[k] = along(radius);
   }
@@ -147,18 +151,18 @@ export function ray(spline: SplineImage, column: number, row: number, rays: Rays
 }
 
 /** Radius of the largest brightness: samples, then two parabolas, the second through points close by. */
-function brightestRadius(along: (radius: number) => number, reach: number): number {
+function brightestRadius(along: (radius: number) => number, reach: number, step: number): number {
   let best = 0;
   let brightest = along(0);
-  for (let radius = RAY_STEP; radius <= reach; radius += RAY_STEP) {
+  for (let radius = step; radius <= reach; radius += step) {
     const value = along(radius);
     if (value > brightest) {
       brightest = value;
       best = radius;
     }
   }
-  if (best < RAY_STEP || best > reach - RAY_STEP) return best;
-  const first = parabolaTop(along, best, RAY_STEP);
+  if (best < step || best > reach - step) return best;
+  const first = parabolaTop(along, best, step);
   return first < RAY_STEP ? first : parabolaTop(along, first, RAY_STEP / 8);
 }
 

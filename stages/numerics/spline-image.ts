@@ -63,6 +63,17 @@ export function splineValue(spline: SplineImage, column: number, row: number): n
   const b1 = 2 / 3 - (t * t * (2 - t)) / 2;
   const b3 = (t * t * t) / 6;
   const b2 = 1 - b0 - b1 - b3;
+  if (i >= 1 && j >= 1 && i + 2 < nx && j + 2 < ny) {
+    const c = coefficients;
+    const k = (j - 1) * nx + i - 1;
+    const [l, m, n] = [k + nx, k + 2 * nx, k + 3 * nx];
+    return (
+      b0 * (a0 * c[k] + a1 * c[k + 1] + a2 * c[k + 2] + a3 * c[k + 3]) +
+      b1 * (a0 * c[l] + a1 * c[l + 1] + a2 * c[l + 2] + a3 * c[l + 3]) +
+      b2 * (a0 * c[m] + a1 * c[m + 1] + a2 * c[m + 2] + a3 * c[m + 3]) +
+      b3 * (a0 * c[n] + a1 * c[n + 1] + a2 * c[n + 2] + a3 * c[n + 3])
+    );
+  }
   const x0 = mirror(i - 1, nx);
   const x1 = mirror(i, nx);
   const x2 = mirror(i + 1, nx);

@@ -69,5 +69,6 @@ test.each([0, 40, 90, 200, 310])('finds asymmetry 0.2 at a position angle of %d 
   const image = blurredRingImage({ nx: 96, pixel: 1, diameter: 50, blur: 5, b: 0.2, angle });
   const found = measureRing(image);
   expect(Math.abs(found.asymmetry - 0.2)).toBeLessThan(1e-3);
-  expect(Math.abs(found.positionAngleDegrees - angle)).toBeLessThan(0.1);
+  const off = found.positionAngleDegrees - angle;
+  expect(Math.abs(off - 360 * Math.round(off / 360))).toBeLessThan(0.1);
 });
