@@ -121,7 +121,7 @@ async function perform(
       program: job.program ?? null,
       parameters: job.parameters,
       inputs: mapLists(inputs, (input) => input.path),
-      outputs: madeOutputs(job.kind, job.inputs),
+      outputs: madeOutputs(job.kind, job.inputs, job.parameters),
       engine: job.program?.engine ?? options.engine,
       signal: options.signal,
       onProgress: (fraction: number) => options.reporter.progress(job, fraction),

@@ -2,7 +2,7 @@
  *  entries of an earlier run (`rerun`). */
 
 import type { Json, Origin, RecordedCode, RecordedFinding, StageState, StoredFile } from '../ledger/entry.ts';
-import type { Format, StageKind } from '../stages/kind.ts';
+import type { Format, OutputDeclaration, StageKind } from '../stages/kind.ts';
 
 export type JobInput =
   | {
@@ -57,11 +57,26 @@ export interface Outcome {
   readonly codeDigest: string | null;
 }
 
-/** Outputs of a kind that are made when these inputs are given. */
-export function madeOutputs(kind: StageKind, inputs: Readonly<Record<string, unknown>>): string[] {
+/** Outputs of a kind that are made with these inputs and parameters. */
+export function madeOutputs(
+  kind: StageKind,
+  inputs: Readonly<Record<string, unknown>>,
+  parameters: Readonly<Record<string, unknown>>,
+): string[] {
   return Object.entries(kind.outputs)
     .filter(([, output]) => (output.needs ?? []).every((name) => name in inputs))
+    .filter(([name, output]) => isChosen(name, output, parameters))
     .map(([name]) => name);
+}
+
+/** Whether the parameters leave an output in. */
+export function isChosen(
+  name: string,
+  { chosenBy }: OutputDeclaration,
+  parameters: Readonly<Record<string, unknown>>,
+): boolean {
+  const chosen = chosenBy === undefined ? undefined : parameters[chosenBy];
+  return !Array.isArray(chosen) || chosen.includes(name);
 }
 
 /** Names of the stages that a job takes from. */

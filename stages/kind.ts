@@ -93,6 +93,8 @@ export interface OutputDeclaration {
   readonly numbers?: readonly string[];
   /** Names of optional inputs without which this output is not made. */
   readonly needs?: readonly string[];
+  /** Name of an optional parameter, a list of words: when it is given, this output is made only if its name is in it. */
+  readonly chosenBy?: string;
 }
 
 /** One test of the data with its limits, as the entry, the terminal and the figures show it. */
@@ -121,7 +123,7 @@ export interface StageTask {
   readonly inputs: Readonly<Record<string, readonly ByteSource[]>>;
   /** Resolved parameters: defaults filled in, quantities as numbers in the declared unit. */
   readonly parameters: Readonly<Record<string, unknown>>;
-  /** One sink per declared output whose `needs` are met. Every one of them must be written. */
+  /** One sink per declared output whose `needs` are met and that is chosen. Every one of them must be written. */
   readonly outputs: Readonly<Record<string, ByteSink>>;
   /** Writes a line to the stage's log. */
   readonly note: (message: string, fields?: Readonly<Record<string, unknown>>) => void;

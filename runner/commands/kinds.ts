@@ -100,7 +100,9 @@ function formatInput(name: string, input: InputDeclaration): string[] {
 
 function formatOutput(name: string, output: OutputDeclaration): string[] {
   const needs = output.needs === undefined ? '' : `; made when ${enumerate(output.needs, 'and')} is given`;
-  return [wrapped(`${name}: ${output.format}${needs}`, WIDTH, 2), wrapped(output.doc, WIDTH, 6)];
+  const chosen =
+    output.chosenBy === undefined ? '' : `; unless the parameter ${output.chosenBy} leaves it out`;
+  return [wrapped(`${name}: ${output.format}${needs}${chosen}`, WIDTH, 2), wrapped(output.doc, WIDTH, 6)];
 }
 
 /** Name, type and default on the first line; below it what it is and why; fields of groups further in. */

@@ -2,10 +2,12 @@
 
 import type { Format, InputDeclaration, OutputDeclaration, StageKind } from '../../stages/kind.ts';
 import { didYouMean } from '../../stages/near-miss.ts';
+import { isChosen } from '../job.ts';
 import { describeCell, quoted } from './cells.ts';
 import { enumerate, formatsOf, oneOf } from './describe.ts';
 import { type FileRules, findFile } from './files.ts';
 import { readKeys, readMap, readText, type Subject } from './keys.ts';
+import type { Resolved } from './parameters.ts';
 import type { ProblemList } from './recipe-problems.ts';
 
 export interface FileReference {
@@ -174,6 +176,7 @@ export interface ReferredStage {
   /** Undefined when the kind is unknown, which is reported elsewhere. */
   readonly kind: StageKind | undefined;
   readonly inputs: ReadInputs;
+  readonly parameters: Resolved | undefined;
 }
 
 /** The stage and its output exist, the output is made, and has one of the formats. */
@@ -226,8 +229,14 @@ function checkOutput(
     });
   }
   const absent = (declaration.needs ?? []).filter((input) => !referred.inputs.has(input));
-  if (absent.length === 0) return;
+  const parameters = (referred.parameters?.value ?? {}) as Readonly<Record<string, unknown>>;
+  const isLeftOut = !isChosen(output, declaration, parameters);
+  if (absent.length === 0 && !isLeftOut) return;
   const expected = `an output that stage \`${stage}\` makes`;
-  const found = `${quoted(output)}, which needs the input ${enumerate(absent, 'and')}`;
-  problems.add({ spot, code: 'output-not-made', path, expected, found });
+  const why = isLeftOut
+    ? `its parameter \`${declaration.chosenBy}\` leaves out`
+    : `needs the input ${enumerate(absent, 'and')}`;
+  const advice = isLeftOut ? 'Name it in that parameter, or refer to another output.' : undefined;
+  const found = `${quoted(output)}, which ${why}`;
+  problems.add({ spot, code: 'output-not-made', path, expected, found, advice });
 }

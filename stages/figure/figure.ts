@@ -40,6 +40,17 @@ export const figure = {
       optional: true,
       doc: 'Width of the part of the sky that the image shows; all of it when absent.',
     },
+    figures: {
+      type: 'list',
+      of: {
+        type: 'word',
+        words: ['coverage', 'data', 'image', 'profile', 'components', 'scree', 'posterior', 'calibration'],
+        doc: 'Name of a figure.',
+      },
+      least: 1,
+      optional: true,
+      doc: 'Which figures to draw; all that the inputs allow when absent.',
+    },
     shown: {
       type: 'integer',
       from: 1,
@@ -60,33 +71,49 @@ export const figure = {
   outputs: {
     coverage: {
       format: 'svg',
+      chosenBy: 'figures',
       needs: ['visibilities'],
       doc: 'Points of the Fourier plane that were measured.',
     },
     data: {
       format: 'svg',
+      chosenBy: 'figures',
       needs: ['residuals'],
       doc: 'Amplitudes and closure phases against baseline length, with model and residuals.',
     },
     image: {
       format: 'svg',
+      chosenBy: 'figures',
       needs: ['image'],
       doc: 'The image in false colour, beside it the truth if there is one.',
     },
     profile: {
       format: 'svg',
+      chosenBy: 'figures',
       needs: ['image'],
       doc: 'Brightness against radius, with the band of the posterior.',
     },
-    components: { format: 'svg', needs: ['basis'], doc: 'Mean and leading components of the library.' },
-    scree: { format: 'svg', needs: ['basis'], doc: 'Variance of each component and explained variance.' },
+    components: {
+      format: 'svg',
+      chosenBy: 'figures',
+      needs: ['basis'],
+      doc: 'Mean and leading components of the library.',
+    },
+    scree: {
+      format: 'svg',
+      chosenBy: 'figures',
+      needs: ['basis'],
+      doc: 'Variance of each component and explained variance.',
+    },
     posterior: {
       format: 'svg',
+      chosenBy: 'figures',
       needs: ['samples', 'basis'],
       doc: 'Histograms of flux, ring and leading coefficients over the posterior.',
     },
     calibration: {
       format: 'svg',
+      chosenBy: 'figures',
       needs: ['calibration'],
       doc: 'Every check with its value, limits and finding; gains against time.',
     },
