@@ -201,9 +201,9 @@ export const fit = {
           type: 'integer',
           from: 10,
           to: 100000,
-          default: 200,
+          default: 100,
           doc: 'Trajectories of each chain in a round.',
-          why: 'Well-mixed chains meet the targets in two rounds.',
+          why: 'Well-mixed chains meet the targets in some four rounds, and are asked after each.',
         },
         most: {
           type: 'integer',
