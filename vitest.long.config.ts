@@ -4,7 +4,9 @@ import { defineConfig } from 'vitest/config';
 
 export default defineConfig({
   test: {
-    include: ['test/long/**/*.test.ts'],
+    // Damage to a ledger at every byte: `npm test` takes every third.
+    include: ['test/long/**/*.test.ts', 'test/ledger/damage.test.ts'],
+    env: { PLATEBOOK_EVERY_BYTE: '1' },
     globalSetup: ['test/temporary-folder.ts'],
     setupFiles: ['test/property-seed.ts'],
     testTimeout: 600_000,
