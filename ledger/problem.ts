@@ -96,7 +96,7 @@ export function bookUnreadable(file: string, cause: unknown): LedgerProblem {
 export function cannotWrite(file: string, cause: unknown): LedgerProblem {
   return new LedgerProblem(
     'cannot-write',
-    `${file}: cannot be written (${reasonOf(cause)}). The book is as before; mend the cause and repeat.`,
+    `${file}: cannot be written (${reasonOf(cause)}). What was entered is safe; mend the cause and repeat.`,
     { file },
     { cause },
   );
@@ -278,9 +278,16 @@ const REASONS: Readonly<Record<string, string>> = {
   EACCES: 'permission denied',
   EPERM: 'not permitted',
   EISDIR: 'it is a directory',
+  ENOTDIR: 'a part of the path is no directory',
+  ENAMETOOLONG: 'the name is too long',
+  ELOOP: 'links lead in a circle',
+  EXDEV: 'it lies in another file system',
   ENOSPC: 'no space left on the disk',
   EDQUOT: 'the disk quota is used up',
+  EFBIG: 'the file would be too large',
   EROFS: 'the file system is read-only',
   EMFILE: 'too many files are open',
+  ENFILE: 'too many files are open on this machine',
+  EAGAIN: 'no further process can be started',
   EIO: 'the disk reports an error',
 };

@@ -40,6 +40,9 @@ const ADVICE: Readonly<Record<string, string>> = {
   ENOSPC: 'Make room, and repeat: what is finished is carried forward.',
   EDQUOT: 'Make room, and repeat: what is finished is carried forward.',
   EROFS: 'Name a place that can be written.',
+  EMFILE: 'Allow more open files (`ulimit -n`), and repeat: what is finished is carried forward.',
+  ENFILE: 'Close other programs, and repeat: what is finished is carried forward.',
+  EAGAIN: 'Allow more processes (`ulimit -u`), and repeat: what is finished is carried forward.',
 };
 
 function described(

@@ -1,7 +1,7 @@
 /** Executes jobs in the order of their dependencies, side by side within a number of cores, and enters each in the
  *  book. A job whose key stands in the book is carried forward; a job whose upstream failed is not reached. */
 
-import { copyFileSync } from 'node:fs';
+import { readFileSync, rmSync } from 'node:fs';
 import { join } from 'node:path';
 import type { Book } from '../ledger/book.ts';
 import { canonicalJson } from '../ledger/canonical.ts';
@@ -20,6 +20,7 @@ import { isGood, type Job, type JobInput, madeOutputs, type Outcome, upstreamOf 
 import { RunnerProblem } from './problem.ts';
 import { keepCode } from './recorded-code/keep.ts';
 import { makeScratch, removeScratch, runStage, StageFailure, type StageResult } from './stage-process.ts';
+import { writeWhole } from './write-whole.ts';
 
 export interface ExecutionReporter {
   started(job: Job): void;
@@ -291,7 +292,13 @@ function mapLists<A, B>(
   return Object.fromEntries(Object.entries(lists).map(([name, items]) => [name, items.map(each)]));
 }
 
-/** The log lies in the store, where its digest guards it, and under a name that a person finds. */
+/** The log lies in the store, where its digest guards it, and under a name that a person finds. Its entry is written by
+ *  now: a copy for which there is no room is left out, and no reason to stop. */
 function layLog(book: Book, file: string, entry: number, stage: string): void {
-  copyFileSync(file, join(book.directory, 'logs', `${entry}-${stage}.jsonl`));
+  const to = join(book.directory, 'logs', `${entry}-${stage}.jsonl`);
+  try {
+    writeWhole(to, readFileSync(file));
+  } catch {
+    rmSync(to, { force: true });
+  }
 }

@@ -1,6 +1,8 @@
 /** The command line. `main` is a function of words and an Io; only `runProcess` touches the process. */
 
+import { writeSync } from 'node:fs';
 import { CommanderError } from 'commander';
+import { reasonOf } from '../ledger/problem.ts';
 import type { ExitStatus, Io } from './command.ts';
 import { makeProgram } from './command-line.ts';
 import { describeProblem } from './describe-problem.ts';
@@ -37,6 +39,22 @@ export async function runProcess(target: NodeJS.Process): Promise<void> {
   };
   target.on('SIGINT', interrupt);
   target.on('SIGTERM', interrupt);
+  let lost = false;
+  for (const stream of [target.stdout, target.stderr]) {
+    stream.on('error', (error: NodeJS.ErrnoException) => {
+      // Where nobody reads on (`| head`) there is nothing left to say; the work goes on and ends as it would.
+      if (error.code === 'EPIPE') return;
+      const why = `standard output: cannot be written (${reasonOf(error)}). Mend the cause and repeat.\n`;
+      if (!lost) sayLast(why);
+      lost = true;
+      target.exitCode ||= 1;
+    });
+  }
+  // What nothing else has caught, such as a process that cannot be started: a sentence, never a stack.
+  target.on('uncaughtException', (error) => {
+    sayLast(`${describeProblem(error).text}\n`);
+    target.exit(1);
+  });
   const io: Io = {
     out: (text) => target.stdout.write(text),
     err: (text) => target.stderr.write(text),
@@ -46,5 +64,15 @@ export async function runProcess(target: NodeJS.Process): Promise<void> {
     terminal: target.stderr.isTTY === true,
     columns: target.stdout.columns ?? 100,
   };
-  target.exitCode = await main(target.argv.slice(2), io, interruption.signal);
+  const status = await main(target.argv.slice(2), io, interruption.signal);
+  target.exitCode = lost && status === 0 ? 1 : status;
+}
+
+/** Says something when nothing else can be relied on. */
+function sayLast(text: string): void {
+  try {
+    writeSync(2, text);
+  } catch {
+    // Standard error is what cannot be written to.
+  }
 }

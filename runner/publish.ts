@@ -1,8 +1,8 @@
 /** Publishing: figures become plates, numbers are collected with their entries, and both are laid where the user finds
  *  them. Figures themselves stay as they are in the store. */
 
-import { mkdirSync, writeFileSync } from 'node:fs';
-import { join } from 'node:path';
+import { mkdirSync } from 'node:fs';
+import { dirname, join } from 'node:path';
 import type { Book } from '../ledger/book.ts';
 import type { PlateDraft, PublishedNumber } from '../ledger/entry.ts';
 import { findPlate } from '../ledger/find.ts';
@@ -15,6 +15,7 @@ import { type Job, type Outcome, upstreamOf } from './job.ts';
 import { formatNumbersJson, formatNumbersTex } from './numbers-files.ts';
 import { cannotWriteOutside } from './problem.ts';
 import type { Recipe } from './recipe/recipe.ts';
+import { writeWhole } from './write-whole.ts';
 
 export interface Plate {
   readonly name: string;
@@ -186,8 +187,8 @@ export function layNumbers(
 
 function layDown(path: string, bytes: Uint8Array): void {
   try {
-    mkdirSync(join(path, '..'), { recursive: true });
-    writeFileSync(path, bytes);
+    mkdirSync(dirname(path), { recursive: true });
+    writeWhole(path, bytes);
   } catch (cause) {
     throw cannotWriteOutside(path, cause);
   }

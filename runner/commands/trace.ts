@@ -1,6 +1,5 @@
 /** `trace WHAT`: where does this come from, back to the bytes. */
 
-import { writeFileSync } from 'node:fs';
 import { resolve } from 'node:path';
 import { type Book, openBook } from '../../ledger/book.ts';
 import { cannotWrite, noProof } from '../../ledger/problem.ts';
@@ -8,6 +7,7 @@ import { prove } from '../../ledger/proof.ts';
 import { findSubject, type Subject } from '../../ledger/subject.ts';
 import { trace } from '../../ledger/trace.ts';
 import type { CommonOptions, ExitStatus, Io } from '../command.ts';
+import { writeWhole } from '../write-whole.ts';
 import { traceText } from './trace-text.ts';
 
 export interface TraceOptions extends CommonOptions {
@@ -41,7 +41,7 @@ function writeProof(book: Book, subject: Subject, file: string, io: Io): void {
     );
   const proof = prove(book, entry);
   try {
-    writeFileSync(file, `${JSON.stringify(proof, null, 2)}\n`);
+    writeWhole(file, Buffer.from(`${JSON.stringify(proof, null, 2)}\n`));
   } catch (cause) {
     throw cannotWrite(file, cause);
   }
