@@ -5,7 +5,7 @@ export interface Io {
   out(text: string): void;
   err(text: string): void;
   /** The stream behind `err`, for drawing on a terminal. */
-  readonly errorStream: NodeJS.WritableStream;
+  readonly errorStream: NodeJS.WritableStream & { readonly columns?: number };
   readonly cwd: string;
   readonly env: Readonly<Record<string, string | undefined>>;
   /** Whether standard error is a terminal of so many columns. */

@@ -7,14 +7,18 @@ import type { RunOptions, RunSummary } from './commands/run.ts';
 import { roundedLike, roundedNumber } from './numbers-files.ts';
 import { wrapped } from './wrapped.ts';
 
+/** Wider text is hard to read. */
+const MOST_COLUMNS = 100;
+
 /** The whole text, ending in a line feed. */
 export function runText(summary: RunSummary, options: RunOptions, io: Io): string {
   const { run } = summary;
+  const columns = Math.min(MOST_COLUMNS, io.columns);
   const ended = run.finished ? 'finished' : 'did not finish';
   return [
     `\nRun ${run.run} of ${summary.recipe.name} ${ended}: entry ${run.number} of book ${shownPath(options.book, io)}\n`,
-    numbersTable(summary),
-    ...summary.numbers.absent.map((text) => `${wrapped(`not published: ${text}`, 100, 2, 2)}\n`),
+    numbersTable(summary, columns),
+    ...summary.numbers.absent.map((text) => `${wrapped(`not published: ${text}`, columns, 2, 2)}\n`),
     plateList(summary, io),
     suggestions(summary, options, io),
   ]
@@ -23,7 +27,7 @@ export function runText(summary: RunSummary, options: RunOptions, io: Io): strin
 }
 
 /** Number, value with its 68 % interval, unit, truth, entry. What depends on something withdrawn is marked. */
-function numbersTable({ numbers: { numbers }, withdrawn }: RunSummary): string {
+function numbersTable({ numbers: { numbers }, withdrawn }: RunSummary, columns: number): string {
   if (numbers.length === 0) return '';
   const withTruth = numbers.some((number) => number.against !== null);
   const head = ['', 'value', '68 % interval', 'unit', ...(withTruth ? ['truth'] : []), 'entry'];
@@ -44,7 +48,7 @@ function numbersTable({ numbers: { numbers }, withdrawn }: RunSummary): string {
   const table = alignedRows([head, ...rows], [false, true, false, false, withTruth, true]);
   const by = [...new Set(withdrawn.flat())].sort((a, b) => a - b);
   const note = `${WITHDRAWN} depends on something withdrawn: does not stand any more (entry ${by.join(', ')})`;
-  return by.length === 0 ? `${table}\n` : `${table}\n\n${wrapped(note, 100, 2, 2)}\n`;
+  return by.length === 0 ? `${table}\n` : `${table}\n\n${wrapped(note, columns, 2, 2)}\n`;
 }
 
 function alignedRows(rows: readonly (readonly string[])[], right: readonly boolean[]): string {
