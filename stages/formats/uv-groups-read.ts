@@ -1,5 +1,5 @@
 /** Reads uv data from FITS random groups; what the file may vary in is settled here: parameters are found by the
- *  beginning of their names, axes by CTYPE, several DATE parameters are added, PSCAL and PZERO always applied, and the
+ *  beginning of their names, axes by CTYPE, parameters of one name are added (FITS Standard 4.0, section 6.1.2), as are all DATEs, PSCAL and PZERO always applied, and the
  *  baseline code is taken apart. Nothing is judged: weights and values come as they stand. See uv-groups.ts. */
 
 import type { ByteSource } from '../bytes.ts';
@@ -61,9 +61,10 @@ export function readUvGroups(source: ByteSource, hdus: readonly Hdu[] = listHdus
 }
 
 interface Parameters extends StationParameters {
-  readonly u: number;
-  readonly v: number;
-  readonly w: number | undefined;
+  /** Each one place, or several that are to be added. */
+  readonly u: readonly number[];
+  readonly v: readonly number[];
+  readonly w: readonly number[];
   readonly dates: readonly number[];
   readonly integration: number | undefined;
   readonly source: number | undefined;
@@ -77,13 +78,17 @@ function findParameters(hdu: Hdu, groups: GroupsData): Parameters {
     return at < 0 ? undefined : at;
   };
   const dates = names.flatMap((name, k) => (name.startsWith('DATE') ? [k] : []));
-  const u = find('UU');
-  const v = find('VV');
+  const sameName = (start: string) => {
+    const at = find(start);
+    return at === undefined ? [] : names.flatMap((name, k) => (name === names[at] ? [k] : []));
+  };
+  const u = sameName('UU');
+  const v = sameName('VV');
   const baseline = find('BASELINE');
   const antenna1 = find('ANTENNA1');
   const antenna2 = find('ANTENNA2');
   const paired = antenna1 !== undefined && antenna2 !== undefined;
-  if (u === undefined || v === undefined || dates.length === 0 || (baseline === undefined && !paired)) {
+  if (u.length === 0 || v.length === 0 || dates.length === 0 || (baseline === undefined && !paired)) {
     throw uvProblem(
       'missing-parameter',
       hdu.place,
@@ -94,7 +99,7 @@ function findParameters(hdu: Hdu, groups: GroupsData): Parameters {
   return {
     u,
     v,
-    w: find('WW'),
+    w: sameName('WW'),
     dates,
     baseline,
     antenna1,
@@ -138,13 +143,21 @@ function readBlock(
   const block = groups.block(from, count);
   const optional = (at: number | undefined) =>
     at === undefined ? new Float64Array(count) : block.parameter(at);
+  const sumOf = (places: readonly number[]) => {
+    const sum = optional(places[0]).slice();
+    for (const at of places.slice(1)) {
+      const more = block.parameter(at);
+      for (let row = 0; row < count; row++) sum[row] += more[row];
+    }
+    return sum;
+  };
   const data = block.data;
   return {
     from,
     count,
-    u: block.parameter(parameters.u),
-    v: block.parameter(parameters.v),
-    w: optional(parameters.w),
+    u: sumOf(parameters.u),
+    v: sumOf(parameters.v),
+    w: sumOf(parameters.w),
     timeMjd: sumOfDates(
       parameters.dates.map((at) => block.parameter(at)),
       lessUtcDays,

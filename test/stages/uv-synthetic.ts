@@ -149,6 +149,8 @@ export interface FileOptions {
   antennaCards?: NewCard[];
   cards?: NewCard[];
   bandwidth?: number;
+  /** Of every band; −1 for a lower one. */
+  sideband?: number;
   extra?: { name: string; values: number[] }[];
   noIntegration?: boolean;
   ra?: number;
@@ -281,7 +283,10 @@ function antennaTable(sink: ReturnType<typeof memorySink>, stations: TestStation
   });
 }
 
-function frequencyTable(sink: ReturnType<typeof memorySink>, { bands = [], bandwidth = 2e9 }: FileOptions) {
+function frequencyTable(
+  sink: ReturnType<typeof memorySink>,
+  { bands = [], bandwidth = 2e9, sideband = 1 }: FileOptions,
+) {
   const n = bands.length;
   appendTableHdu(sink, {
     extname: 'TEST FQ',
@@ -291,7 +296,7 @@ function frequencyTable(sink: ReturnType<typeof memorySink>, { bands = [], bandw
       { name: 'IF FREQ', form: `${n}D`, values: bands },
       { name: 'CH WIDTH', form: `${n}E`, values: bands.map(() => bandwidth) },
       { name: 'TOTAL BANDWIDTH', form: `${n}E`, values: bands.map(() => bandwidth) },
-      { name: 'SIDEBAND', form: `${n}J`, values: bands.map(() => 1) },
+      { name: 'SIDEBAND', form: `${n}J`, values: bands.map(() => sideband) },
     ],
   });
 }

@@ -155,6 +155,18 @@ describe('what files vary in', () => {
     for (const [k, row] of list.entries()) expect(Math.abs(block.u[k] - row.u)).toBeLessThan(2e-9);
   });
 
+  // Source: FITS Standard 4.0, section 6.1.2: parameters of one name are to be added.
+  it('adds parameters of one name, and leaves alone what only begins alike', () => {
+    const fine = list.map((_, k) => 1e-12 * (k + 1));
+    const extra = [
+      { name: 'UU---SIN', values: fine },
+      { name: 'VV-OTHER', values: fine },
+    ];
+    const block = read(uvFile(list, { extra })).block(0, list.length);
+    for (const k of list.keys()) expect(block.u[k]).toBe(usual.u[k] + Math.fround(fine[k]));
+    expect(block.v).toEqual(usual.v);
+  });
+
   it('adds two DATE parameters, and one alone has a quantum of a quarter of a day', () => {
     for (const [k, row] of list.entries()) {
       expect(Math.abs(usual.timeMjd[k] - (REFERENCE_MJD + row.day)) * 86400).toBeLessThan(2e-3);

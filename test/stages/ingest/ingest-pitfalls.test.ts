@@ -1,6 +1,7 @@
 /** What real uv data do, one case each (design, section 6, kind ingest). Sources beside each expectation; unmarked ones
  *  are common practice of the trade. */
 
+import * as fc from 'fast-check';
 import { describe, expect, it } from 'vitest';
 import {
   C,
@@ -382,6 +383,91 @@ describe('bands and channels', () => {
   it('too far apart are not averaged', () => {
     const apart = rows({ frequencies: [[FREQUENCY], [FREQUENCY * 1.2]] });
     expect(problemOf(uvFile(apart, { bands: [0, FREQUENCY * 0.2] })).code).toBe('wide-band');
+  });
+});
+
+describe('conventions of the STOKES axis (check value fits.stokes)', () => {
+  /** The hands of a row in the order of the axis, each with a value of its own: 10, 20, … */
+  const marked = (hands: number) =>
+    edit(rows({ days: [0.25], hands }), (_, _k, hand) => [10 * (hand + 1), 0, 4]);
+  const valueWith = (hands: number, crval: number, cdelt: number, parameters = {}) => {
+    const { visibilities, report } = runIngest(
+      uvFile(marked(hands), { stokes: { crval, cdelt } }),
+      parameters,
+    );
+    return [visibilities.re[0], report.chosen.polarisation];
+  };
+
+  it.each([
+    // I Q U V; RR LL RL LR; XX YY XY YX: (first + second) / 2 of equal weights, but for Stokes I itself.
+    [4, 1, 1, 10, 'I'],
+    [1, 1, 1, 10, 'I'],
+    [4, -1, -1, 15, 'RR and LL'],
+    [2, -1, -1, 15, 'RR and LL'],
+    [4, -5, -1, 15, 'XX and YY'],
+    [2, -5, -1, 15, 'XX and YY'],
+    // The axis counts the other way: LR RL LL RR, YY XX, V U Q I.
+    [4, -4, 1, 35, 'RR and LL'],
+    [2, -6, 1, 15, 'XX and YY'],
+    [4, 4, -1, 40, 'I'],
+    // One hand alone stands for both.
+    [1, -1, -1, 10, 'RR'],
+    [1, -2, -1, 10, 'LL'],
+    [1, -6, -1, 10, 'YY'],
+  ])('%d values from %d in steps of %d are %d, %s', (hands, crval, cdelt, value, name) => {
+    expect(valueWith(hands, crval, cdelt)).toEqual([value, name]);
+  });
+
+  it('give one hand when it is asked for, and are refused where Stokes I cannot be had', () => {
+    expect(valueWith(4, -1, -1, { polarisation: 'LL' })).toEqual([20, 'LL']);
+    expect(valueWith(4, -5, -1, { polarisation: 'YY' })).toEqual([20, 'YY']);
+    const cross = uvFile(marked(2), { stokes: { crval: -3, cdelt: -1 } });
+    expect(problemOf(cross).message).toContain(
+      'expected Stokes I or a parallel hand (RR, LL, XX, YY), got RL, LR',
+    );
+  });
+});
+
+describe('axes in any order', () => {
+  // Identity: the order of the axes is none of the data's.
+  it('give the same visibilities, with several bands, channels and hands', () => {
+    const frequencies = [
+      [FREQUENCY, FREQUENCY + 5e8, FREQUENCY + 1e9],
+      [FREQUENCY + 2e9, FREQUENCY + 2.5e9, FREQUENCY + 3e9],
+    ];
+    const list_ = noisy(rows({ days: times(1, 2), frequencies, hands: 4 }));
+    const options = { bands: [0, 2e9], bandwidth: 5e8, channelStep: 5e8 };
+    const usual = runIngest(uvFile(list_, options)).bytes;
+    const names = ['COMPLEX', 'STOKES', 'FREQ', 'IF', 'RA', 'DEC'];
+    fc.assert(
+      fc.property(fc.shuffledSubarray(names, { minLength: 6 }), (axes) => {
+        expect(
+          Buffer.from(runIngest(uvFile(list_, { ...options, axes })).bytes).equals(Buffer.from(usual)),
+        ).toBe(true);
+      }),
+      { numRuns: 12 },
+    );
+  });
+
+  it('fall in frequency in a lower sideband', () => {
+    const step = 5e8;
+    const frequencies = [
+      [FREQUENCY, FREQUENCY - step],
+      [FREQUENCY + 2e9, FREQUENCY + 2e9 - step],
+    ];
+    const file = uvFile(rows({ days: [0.25], frequencies }), {
+      bands: [0, 2e9],
+      bandwidth: step,
+      channelStep: step,
+      sideband: -1,
+    });
+    for (const [band, channel] of [
+      [1, 2],
+      [2, 1],
+    ]) {
+      const { visibilities } = runIngest(file, { bands: [band], channels: [channel] });
+      expect(visibilities.wavelengthMetres).toBeCloseTo(C / frequencies[band - 1][channel - 1], 15);
+    }
   });
 });
 
