@@ -33,10 +33,12 @@ export interface Timetable {
  *  @param averaging   `scan`, `none`, or the length of an interval in seconds */
 export function findScans(rows: Records, gapSeconds: number, averaging: 'scan' | 'none' | number): Timetable {
   const { recordOf, recordMjd, startMjd, endMjd } = findRecords(rows);
+  // Times are rounded: a gap of just this length is one.
+  const leastGap = gapSeconds - SAME_RECORD_SECONDS;
   const scans: Scan[] = [];
   for (let r = 0, first = 0; r < recordMjd.length; r++) {
     const isLast = r + 1 === recordMjd.length;
-    if (!isLast && (startMjd[r + 1] - endMjd[r]) * DAY_SECONDS <= gapSeconds) continue;
+    if (!isLast && (startMjd[r + 1] - endMjd[r]) * DAY_SECONDS < leastGap) continue;
     scans.push({ first, last: r, startMjd: startMjd[first], endMjd: endMjd[r] });
     first = r + 1;
   }

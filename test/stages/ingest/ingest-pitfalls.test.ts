@@ -317,6 +317,12 @@ describe('scans', () => {
     expect(runIngest(uvFile(list()), { gap }).report.scans.length).toBe(2);
   });
 
+  it('end at a gap of just the length that is stated, rounded as times are', () => {
+    const file = uvFile(rows({ days: times(5, 6, 10, 60) }));
+    expect(runIngest(file, { gap: 60 }).report.scans).toHaveLength(5);
+    expect(runIngest(file, { gap: 61 }).report.scans).toHaveLength(1);
+  });
+
   it('are counted from the end of a record to the start of the next', () => {
     const spaced = rows({ days: times(1, 5, 90, 0), seconds: 90 });
     expect(runIngest(uvFile(spaced)).report.scans.length).toBe(1);
