@@ -8,6 +8,7 @@ import { InputProblem } from '../problem.ts';
 import type { Hdu } from './fits/hdu.ts';
 import { type Header, headerValue } from './fits/header.ts';
 import { readTable, type Table } from './fits/table.ts';
+import { uvProblem } from './uv-problem.ts';
 
 export interface UvAntenna {
   readonly number: number;
@@ -49,7 +50,7 @@ export function readAntennaTables(source: ByteSource, hdus: readonly Hdu[]): Ant
       tables.push(antennaTable(hdu, table, tables.length + 1));
     }
   }
-  if (tables.length > 0) return tables;
+  if (tables.length > 0) return oneOfEach(tables);
   throw new InputProblem({
     code: 'no-antenna-table',
     place: source.name,
@@ -63,6 +64,23 @@ export function readAntennaTables(source: ByteSource, hdus: readonly Hdu[]): Ant
     }`,
     advice: 'Write the file with its antenna table: without it baselines have no stations.',
   });
+}
+
+/** @throws InputProblem when two tables are of one subarray: rows would not tell which they mean */
+function oneOfEach(tables: AntennaTable[]): AntennaTable[] {
+  const seen = new Map<number, AntennaTable>();
+  for (const table of tables) {
+    const before = seen.get(table.subarray);
+    if (before !== undefined) {
+      throw badTable(
+        table,
+        'an EXTVER of its own, the number of the subarray',
+        `${table.subarray}, as in ${before.place}`,
+      );
+    }
+    seen.set(table.subarray, table);
+  }
+  return tables;
 }
 
 function antennaTable(hdu: Hdu, table: Table, ordinal: number): AntennaTable {
@@ -79,7 +97,7 @@ function antennaTable(hdu: Hdu, table: Table, ordinal: number): AntennaTable {
     referenceMjd: typeof rdate === 'string' && rdate.trim() !== '' ? mjdOfDate(rdate, hdu.place) : undefined,
     gst0Degrees: numberOf(header, 'GSTIA0'),
     degreesPerDay: usualUnlessPositive(numberOf(header, 'DEGPDY')),
-    lessUtcSeconds: lessUtc(header),
+    lessUtcSeconds: lessUtc(hdu),
   };
 }
 
@@ -87,11 +105,14 @@ function usualUnlessPositive(rate: number | undefined): number {
   return rate !== undefined && rate > 0 ? rate : SIDEREAL_DEGREES_PER_DAY;
 }
 
-/** TIMSYS names the time scale; with atomic time IATUTC is its lead over UTC. */
-function lessUtc(header: Header): number {
+/** TIMSYS names the time scale; with atomic time IATUTC, or else DATUTC, is its lead over UTC. */
+function lessUtc(hdu: Hdu): number {
+  const { header } = hdu;
   const system = textOf(header, 'TIMSYS').toUpperCase() || textOf(header, 'TIMESYS').toUpperCase();
-  const atomic = system.startsWith('IAT') || system.startsWith('TAI');
-  return atomic ? (numberOf(header, 'IATUTC') ?? 0) : 0;
+  if (!(system.startsWith('IAT') || system.startsWith('TAI'))) return 0;
+  const lead = numberOf(header, 'IATUTC') ?? numberOf(header, 'DATUTC');
+  if (lead !== undefined) return lead;
+  throw badTable(hdu, `IATUTC, the lead over UTC in seconds, with TIMSYS ${system}`, 'none');
 }
 
 function readAntennas(hdu: Hdu, table: Table): UvAntenna[] {
@@ -128,11 +149,14 @@ function readAntennas(hdu: Hdu, table: Table): UvAntenna[] {
 }
 
 function requireUnique(hdu: Hdu, column: string, values: readonly string[]): void {
-  const double = values.find((value, k) => values.indexOf(value) !== k);
-  if (double !== undefined) throw badTable(hdu, `every ${column} once`, `${double} twice`);
+  const seen = new Set<string>();
+  for (const value of values) {
+    if (seen.has(value)) throw badTable(hdu, `every ${column} once`, `${value} twice`);
+    seen.add(value);
+  }
 }
 
-function badTable(hdu: Hdu, expected: string, found: string): InputProblem {
+function badTable(hdu: { readonly place: string }, expected: string, found: string): InputProblem {
   return new InputProblem({
     code: 'bad-antenna-table',
     place: hdu.place,
@@ -174,24 +198,41 @@ export function readFrequencySetups(source: ByteSource, hdus: readonly Hdu[]): F
 }
 
 function setupsOf(table: Table): FrequencySetup[] {
+  if (table.rows === 0) return [];
   const offsets = table.column('IF FREQ');
   const bands = offsets.repeat;
   const values = offsets.numbers();
-  const optional = (name: string) => (table.has(name) ? table.column(name).numbers() : undefined);
-  const numbers = optional('FRQSEL');
-  const widths = optional('CH WIDTH');
-  const totals = optional('TOTAL BANDWIDTH');
-  const sidebands = optional('SIDEBAND');
-  const perBand = Array.from({ length: bands }, (_, band) => band);
-  return Array.from({ length: table.rows }, (_, row) => ({
-    number: numbers?.[row] ?? row + 1,
-    offsetHz: perBand.map((band) => values[row * bands + band]),
-    channelHz: perBand.map((band) => {
-      const at = row * bands + band;
-      return (widths?.[at] ?? 0) * ((sidebands?.[at] ?? 1) < 0 ? -1 : 1);
-    }),
-    totalHz: perBand.map((band) => totals?.[row * bands + band] ?? 0),
-  }));
+  const numbers = optionalColumn(table, 'FRQSEL', 1);
+  const widths = optionalColumn(table, 'CH WIDTH', bands);
+  const totals = optionalColumn(table, 'TOTAL BANDWIDTH', bands);
+  const sidebands = optionalColumn(table, 'SIDEBAND', bands);
+  return Array.from({ length: table.rows }, (_, row) => {
+    const places = Array.from({ length: bands }, (_, band) => row * bands + band);
+    return {
+      number: numbers?.[row] ?? row + 1,
+      offsetHz: places.map((at) => values[at]),
+      channelHz: places.map((at) => signedWidth(widths?.[at] ?? 0, sidebands?.[at] ?? 1)),
+      totalHz: places.map((at) => totals?.[at] ?? 0),
+    };
+  });
+}
+
+/** Frequency falls in a lower sideband, whether the table says so by SIDEBAND, by a negative width or by both. */
+function signedWidth(width: number, sideband: number): number {
+  return sideband < 0 ? -Math.abs(width) : width;
+}
+
+/** @throws InputProblem when a row holds another number of values: they would be taken for those of other bands */
+function optionalColumn(table: Table, name: string, repeat: number): Float64Array | undefined {
+  if (!table.has(name)) return undefined;
+  const column = table.column(name);
+  if (column.repeat === repeat) return column.numbers();
+  throw uvProblem(
+    'bad-frequency-table',
+    `${table.place}, column ${name}`,
+    `${repeat} values in a row, as many as ${repeat === 1 ? 'setups' : 'IF FREQ has'}`,
+    `TFORM ${column.form}`,
+  );
 }
 
 export function numberOf(header: Header, keyword: string): number | undefined {

@@ -68,15 +68,30 @@ export function findAxes(hdu: Hdu, groups: GroupsData): Axes {
       channel ? `${channel.crval} Hz` : 'none',
     );
   }
+  const stokes = found.get('STOKES');
+  if (stokes !== undefined) requireCodes(hdu, stokes);
   const single = (crval: number): Axis => ({ n: 1, crval, crpix: 1, cdelt: 1, stride: 0 });
   return {
     part,
     channel,
-    stokes: found.get('STOKES') ?? single(1),
+    stokes: stokes ?? single(1),
     band: found.get('IF') ?? single(1),
     ra: found.get('RA'),
     dec: found.get('DEC'),
   };
+}
+
+/** Codes of the products are whole and unlike: otherwise two products would go by one name. */
+function requireCodes(hdu: Hdu, axis: Axis): void {
+  const codes = [valueAt(axis, 1), valueAt(axis, axis.n)];
+  if (codes.every(Number.isInteger) && Number.isInteger(axis.cdelt) && (axis.n === 1 || axis.cdelt !== 0))
+    return;
+  throw uvProblem(
+    'bad-stokes',
+    hdu.place,
+    'whole numbers, each once, on the axis STOKES',
+    `codes from ${codes[0]} to ${codes[1]} in steps of CDELT ${axis.cdelt}`,
+  );
 }
 
 export function coordinate(hdu: Hdu, axis: Axis | undefined, keyword: string): number {
@@ -101,7 +116,10 @@ export function frequencies(hdu: Hdu, channel: Axis, bands: number, setup: Frequ
   const widthHz = new Float64Array(bands);
   for (let band = 0; band < bands; band++) {
     const stated = setup?.channelHz[band] ?? 0;
-    const step = channel.n > 1 && stated === 0 ? channel.cdelt : stated || channel.cdelt;
+    const step = stated || channel.cdelt;
+    if (channel.n > 1 && step === 0) {
+      throw uvProblem('no-frequency', hdu.place, `a step of frequency along ${channel.n} channels`, '0 Hz');
+    }
     const total = setup?.totalHz[band] ?? 0;
     widthHz[band] = channel.n === 1 && total > 0 && Number.isFinite(total) ? total : Math.abs(step);
     for (let c = 0; c < channel.n; c++) {

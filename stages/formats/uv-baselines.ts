@@ -4,6 +4,9 @@ import type { InputProblem } from '../problem.ts';
 import type { Hdu } from './fits/hdu.ts';
 import { uvProblem } from './uv-problem.ts';
 
+/** No array has more stations or subarrays; beyond it a number is damage. */
+const MOST_NUMBERED = 65535;
+
 /** Parameters that hold the stations: one code, or station numbers and subarray in parameters of their own. */
 export interface StationParameters {
   readonly baseline: number | undefined;
@@ -38,31 +41,42 @@ export function stationsOf(
   const first = parameter(parameters.antenna1 as number);
   const second = parameter(parameters.antenna2 as number);
   const array = parameters.subarray === undefined ? undefined : parameter(parameters.subarray);
+  const isNumber = (value: number, least: number) => value >= least && value <= MOST_NUMBERED;
   for (let row = 0; row < count; row++) {
-    number1[row] = Math.round(first[row]);
-    number2[row] = Math.round(second[row]);
-    subarray[row] = array === undefined ? 1 : Math.round(array[row]);
-    if (!(number1[row] >= 1 && number2[row] >= 1)) {
-      throw badBaseline(place(row), `ANTENNA1 ${first[row]}, ANTENNA2 ${second[row]}`);
+    const [i, j, s] = [first[row], second[row], array?.[row] ?? 1].map(Math.round);
+    if (!(isNumber(i, 1) && isNumber(j, 1) && isNumber(s, 0))) {
+      const of = array === undefined ? '' : `, SUBARRAY ${array[row]}`;
+      throw badBaseline(place(row), `ANTENNA1 ${first[row]}, ANTENNA2 ${second[row]}${of}`);
     }
+    number1[row] = i;
+    number2[row] = j;
+    subarray[row] = s;
   }
   return { number1, number2, subarray };
 }
 
-/** Station numbers and subarray of a baseline code: 256·i + j, or 2048·i + j + 65536 with more than 255 stations, plus
- *  (subarray − 1)/100. The whole part is rounded first, since scaling may leave 257.9999. Undefined for no code.
- *  Common practice. */
+/** Station numbers and subarray of a baseline code: 256·i + j plus (subarray − 1)/100, or 2048·i + j + 65536 with more
+ *  than 255 stations, which leaves no digits for a subarray in single precision. The whole part is rounded first, since
+ *  scaling may leave 257.9999. Undefined for no code. Common practice. */
 export function decodeBaseline(
   code: number,
 ): { number1: number; number2: number; subarray: number } | undefined {
   const whole = Math.round(code);
-  const subarray = Math.max(1, Math.round((code - whole) * 100) + 1);
-  const [base, factor] = whole > 65536 ? [whole - 65536, 2048] : [whole, 256];
+  const hundredths = Math.round((code - whole) * 100);
+  const isLong = whole > 65536;
+  if (hundredths < 0 || (isLong && hundredths > 0)) return undefined;
+  const [base, factor] = isLong ? [whole - 65536, 2048] : [whole, 256];
   const number1 = Math.floor(base / factor);
   const number2 = base - factor * number1;
-  return number1 >= 1 && number2 >= 1 && number1 < factor ? { number1, number2, subarray } : undefined;
+  const isCode = number1 >= 1 && number2 >= 1 && number1 < factor;
+  return isCode ? { number1, number2, subarray: hundredths + 1 } : undefined;
 }
 
 function badBaseline(place: string, found: string): InputProblem {
-  return uvProblem('bad-baseline', place, 'a baseline of two stations with numbers from 1', found);
+  return uvProblem(
+    'bad-baseline',
+    place,
+    `a baseline of two stations with numbers from 1 to ${MOST_NUMBERED}`,
+    found,
+  );
 }

@@ -6,6 +6,7 @@ import type { ByteSource } from '../bytes.ts';
 import { type GroupsData, readGroups } from './fits/groups.ts';
 import { type Hdu, listHdus } from './fits/hdu.ts';
 import {
+  type AntennaTable,
   type FrequencySetup,
   numberOf,
   readAntennaTables,
@@ -38,7 +39,6 @@ export function readUvGroups(source: ByteSource, hdus: readonly Hdu[] = listHdus
   const antennas = readAntennaTables(source, hdus);
   const bands = axes.band.n;
   const setups = readFrequencySetups(source, hdus);
-  const lessUtcDays = antennas[0].lessUtcSeconds / 86400;
   return {
     target: {
       name: textOf(hdu.header, 'OBJECT') || 'unnamed',
@@ -56,7 +56,7 @@ export function readUvGroups(source: ByteSource, hdus: readonly Hdu[] = listHdus
     antennas,
     count: groups.count,
     hasIntegration: parameters.integration !== undefined,
-    block: (from, rows) => readBlock(hdu, groups, parameters, axes, lessUtcDays, from, rows),
+    block: (from, rows) => readBlock(hdu, groups, parameters, axes, antennas, from, rows),
   };
 }
 
@@ -72,7 +72,8 @@ interface Parameters extends StationParameters {
 }
 
 function findParameters(hdu: Hdu, groups: GroupsData): Parameters {
-  const names = groups.parameters.map((each) => each.name.trim().toUpperCase());
+  // Some writers cannot have two parameters of one name and call the second _DATE.
+  const names = groups.parameters.map((each) => each.name.trim().toUpperCase().replace(/^_+/, ''));
   const find = (start: string) => {
     const at = names.findIndex((name) => name.startsWith(start));
     return at < 0 ? undefined : at;
@@ -111,22 +112,27 @@ function findParameters(hdu: Hdu, groups: GroupsData): Parameters {
   };
 }
 
-/** The row of the frequency table that the data use. @throws InputProblem when they use several. */
+/** The row of the frequency table that the data use. @throws InputProblem when it is not there, or nothing says which */
 function setupInUse(
   hdu: Hdu,
   setups: readonly FrequencySetup[],
   groups: GroupsData,
   parameters: Parameters,
 ): FrequencySetup | undefined {
-  if (setups.length <= 1 || parameters.frequencySetup === undefined || groups.count === 0) return setups[0];
-  const number = groups.block(0, 1).parameter(parameters.frequencySetup)[0];
+  if (setups.length === 0) return undefined;
+  const number =
+    parameters.frequencySetup === undefined
+      ? undefined
+      : Math.round(groups.block(0, 1).parameter(parameters.frequencySetup)[0]);
+  // With one setup a number below 1 stands for any.
+  if (setups.length === 1 && (number === undefined || number < 1)) return setups[0];
   const setup = setups.find((each) => each.number === number);
   if (setup !== undefined) return setup;
   throw uvProblem(
     'bad-frequency-table',
     hdu.place,
     `a frequency setup among ${setups.map((each) => each.number).join(', ')}`,
-    `FREQSEL ${number} in row 1`,
+    number === undefined ? 'no parameter FREQSEL' : `FREQSEL ${number} in row 1`,
   );
 }
 
@@ -135,7 +141,7 @@ function readBlock(
   groups: GroupsData,
   parameters: Parameters,
   axes: Axes,
-  lessUtcDays: number,
+  antennas: readonly AntennaTable[],
   from: number,
   rows: number,
 ): UvBlock {
@@ -152,6 +158,8 @@ function readBlock(
     return sum;
   };
   const data = block.data;
+  const stations = stationsOf(hdu, parameters, block.parameter, from, count);
+  const whole = (at: number | undefined) => Int32Array.from(optional(at), Math.round);
   return {
     from,
     count,
@@ -160,14 +168,14 @@ function readBlock(
     w: sumOf(parameters.w),
     timeMjd: sumOfDates(
       parameters.dates.map((at) => block.parameter(at)),
-      lessUtcDays,
+      leadOf(antennas, stations.subarray),
       hdu,
       from,
     ),
-    ...stationsOf(hdu, parameters, block.parameter, from, count),
+    ...stations,
     integrationSeconds: optional(parameters.integration),
-    source: Int32Array.from(optional(parameters.source)),
-    frequencySetup: Int32Array.from(optional(parameters.frequencySetup)),
+    source: whole(parameters.source),
+    frequencySetup: whole(parameters.frequencySetup),
     data,
     rowStride: count === 0 ? 0 : data.length / count,
     partStride: axes.part.stride,
@@ -176,11 +184,18 @@ function readBlock(
   };
 }
 
+/** Lead over UTC of the times of each row, days: that of its subarray's antenna table, or of the first. */
+function leadOf(antennas: readonly AntennaTable[], subarrays: Int32Array): (row: number) => number {
+  const leads = new Map(antennas.map(({ subarray, lessUtcSeconds }) => [subarray, lessUtcSeconds / 86400]));
+  const otherwise = antennas[0].lessUtcSeconds / 86400;
+  return (row) => leads.get(subarrays[row]) ?? otherwise;
+}
+
 /** MJD from the parts of a Julian date. 2400000.5 is taken off the largest part before the others are added, so that
  *  none of their digits is lost. A time that is not finite stays so and is dropped with its row. */
 function sumOfDates(
   parts: readonly Float64Array[],
-  lessUtcDays: number,
+  lessUtcDays: (row: number) => number,
   hdu: Hdu,
   from: number,
 ): Float64Array {
@@ -198,7 +213,7 @@ function sumOfDates(
         `${sum + MJD_ZERO}`,
       );
     }
-    mjd[row] = sum - lessUtcDays;
+    mjd[row] = sum - lessUtcDays(row);
   }
   return mjd;
 }

@@ -46,7 +46,7 @@ export interface UvBlock {
   readonly u: Float64Array;
   readonly v: Float64Array;
   readonly w: Float64Array;
-  /** MJD in the time scale of the antenna table. */
+  /** UTC: the lead that the antenna table states is taken off. */
   readonly timeMjd: Float64Array;
   /** Station numbers of the antenna table. */
   readonly number1: Int32Array;

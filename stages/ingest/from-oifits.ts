@@ -2,7 +2,6 @@
  *  takes OI_VIS2 and OI_T3. */
 
 import type { ByteSource } from '../bytes.ts';
-import type { Station } from '../data.ts';
 import { readOifits } from '../formats/oifits.ts';
 import { requireValidOifits } from '../formats/oifits-strict.ts';
 import type { Oifits, OiVis } from '../formats/oifits-types.ts';
@@ -12,6 +11,7 @@ import { InputProblem } from '../problem.ts';
 import { convert } from '../units.ts';
 import type { Choices } from './choices.ts';
 import { observationOfOptical } from './from-optical.ts';
+import { type NamedStations, namedStations } from './oifits-stations.ts';
 import {
   addRecord,
   drop,
@@ -39,10 +39,11 @@ export function observationOfOifits(source: ByteSource, choices: Choices): Obser
   const bands = chosenNumbers(choices.bands, oifits.wavelengths.length, 'bands');
   const channels = chooseChannels(oifits, bands, choices);
   const { frequencyHz, bandwidthHz } = middleFrequency(oifits, bands, channels, source.name);
-  const stations = stationsOf(tables);
+  const { stations, namesIn } = namedStations(tables);
   const out = leftOut([...stations.keys()], choices);
   const wavelengthMetres = LIGHT_SPEED / frequencyHz;
-  const setting = { target, bands, channels, stations: [...stations.keys()], out, wavelengthMetres };
+  const index = new Map([...stations.keys()].map((name, k) => [name, k]));
+  const setting = { target, bands, channels, index, namesIn, out, wavelengthMetres };
   const { records, tally, rows } = readTables(oifits, tables, setting, choices);
   const place = `${source.name}, UCOORD and VCOORD`;
   if (records.count > 0) requirePlausible(longestOf(records), undefined, place);
@@ -165,29 +166,13 @@ function middleFrequency(
   return middleOf(frequencies, widths, `${place}, OI_WAVELENGTH`);
 }
 
-/** All stations of the data's arrays by name; without an array, by the numbers in STA_INDEX. Positions count when the
- *  frame is GEOCENTRIC and are (0, 0, 0) otherwise. */
-function stationsOf(tables: readonly OiVis[]): Map<string, Station> {
-  const stations = new Map<string, Station>();
-  for (const vis of tables) {
-    for (const { name, xyz } of vis.array?.stations ?? []) {
-      const known = vis.array?.frame === 'GEOCENTRIC' && xyz.every(Number.isFinite);
-      if (!stations.has(name)) stations.set(name, { name, xyz: known ? xyz : [0, 0, 0] });
-    }
-    if (vis.array !== undefined) continue;
-    for (const number of vis.table.column('STA_INDEX').numbers().toSorted()) {
-      const name = `station ${number}`;
-      if (!stations.has(name)) stations.set(name, { name, xyz: [0, 0, 0] });
-    }
-  }
-  return stations;
-}
-
 interface Setting {
   readonly target: number;
   readonly bands: readonly number[];
   readonly channels: readonly number[];
-  readonly stations: readonly string[];
+  /** Of a station by its name. */
+  readonly index: ReadonlyMap<string, number>;
+  readonly namesIn: NamedStations['namesIn'];
   readonly out: ReadonlySet<string>;
   readonly wavelengthMetres: number;
 }
@@ -212,13 +197,11 @@ function readTable(
 ): void {
   const channels = setting.channels.filter((channel) => channel < vis.channels);
   const toJy = vis.amplitudeType === 'correlated flux' ? convert(1, vis.unit || 'Jy', 'Jy') : 1;
-  const numbers = vis.array === undefined ? vis.table.column('STA_INDEX').numbers() : undefined;
-  const nameOf = (at: number) =>
-    numbers === undefined ? vis.array?.stations[vis.stations[at]].name : `station ${numbers[at]}`;
+  const nameOf = setting.namesIn(vis);
   for (let row = 0; row < vis.rows; row++) {
     if (vis.target[row] !== setting.target) continue;
     tally.read += channels.length;
-    const [name1, name2] = [nameOf(2 * row) as string, nameOf(2 * row + 1) as string];
+    const [name1, name2] = [nameOf(2 * row), nameOf(2 * row + 1)];
     const place = vis.u[row] + vis.v[row] + vis.mjd[row];
     if (setting.out.has(name1) || setting.out.has(name2)) drop(tally, 'station left out', channels.length);
     else if (name1 === name2) drop(tally, 'autocorrelation', channels.length);
@@ -228,8 +211,8 @@ function readTable(
       const sum = combine(vis, row, channels, toJy, tally);
       if (sum.samples === 0) continue;
       addRecord(records, {
-        station1: setting.stations.indexOf(name1),
-        station2: setting.stations.indexOf(name2),
+        station1: setting.index.get(name1) as number,
+        station2: setting.index.get(name2) as number,
         timeMjd: vis.mjd[row],
         integrationSeconds: vis.integrationSeconds[row],
         u: vis.u[row] / setting.wavelengthMetres,

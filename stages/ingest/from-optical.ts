@@ -8,6 +8,7 @@ import type { SquaredVisibilities, Station, TripleProducts } from '../data.ts';
 import type { OiData, Oifits, OiT3, OiVis2, OiWavelength } from '../formats/oifits-types.ts';
 import { weightOfSigma } from '../formats/visibility-table.ts';
 import type { Choices } from './choices.ts';
+import { type NamedStations, namedStations } from './oifits-stations.ts';
 import { drop, faultOf, makeRecords, makeTally, type Observation, type Tally } from './records.ts';
 import { chosenNumbers, leftOut, timeRange } from './select.ts';
 
@@ -50,15 +51,14 @@ export function observationOfOptical(
     bands.map((band) => oifits.wavelengths[band]),
     choices,
   );
-  const stations = stationsOf([...vis2, ...t3]);
+  const { stations: byName, namesIn } = namedStations([...vis2, ...t3]);
+  const names = [...byName.keys()];
   const reading = {
     target,
     channels,
-    stations: stations.map(({ name }) => name),
-    out: leftOut(
-      stations.map(({ name }) => name),
-      choices,
-    ),
+    index: new Map(names.map((each, k) => [each, k])),
+    namesIn,
+    out: leftOut(names, choices),
     isChosen: timeRange(choices, [...vis2, ...t3].find(({ rows }) => rows > 0)?.mjd[0] ?? 0),
     tally: makeTally(),
     seen: new Set<string>(),
@@ -74,7 +74,7 @@ export function observationOfOptical(
     target: { name, raDegrees, decDegrees },
     arrayName: [...vis2, ...t3].find(({ array }) => array !== undefined)?.array?.name ?? 'unnamed',
     remark: remarkOf(oifits),
-    stations,
+    stations: names.map((each): Station => ({ name: each, xyz: [0, 0, 0] })),
     wavelengthMetres: waves.length === 0 ? 1 : (least + most) / 2,
     bandwidthMetres: waves.length === 0 ? 0 : most - least,
     rows: [...vis2, ...t3].reduce((sum, { rows }) => sum + rows, 0),
@@ -125,30 +125,11 @@ function channelsOf(bands: readonly OiWavelength[], choices: Choices): number[] 
   return chosenNumbers(choices.channels, count, 'channels');
 }
 
-/** All stations of the tables' arrays by name; without an array, by the numbers in STA_INDEX. */
-function stationsOf(tables: readonly OiData[]): Station[] {
-  const names = new Set(
-    tables.flatMap((table) =>
-      table.array === undefined
-        ? [...numbersOf(table)].sort((a, b) => a - b).map(nameOfNumber)
-        : table.array.stations.map(({ name }) => name),
-    ),
-  );
-  return [...names].map((name) => ({ name, xyz: [0, 0, 0] }));
-}
-
-function numbersOf({ table }: OiData): Float64Array {
-  return table.column('STA_INDEX').numbers();
-}
-
-function nameOfNumber(number: number): string {
-  return `station ${number}`;
-}
-
 interface Reading {
   readonly target: number;
   readonly channels: readonly number[];
-  readonly stations: readonly string[];
+  readonly index: ReadonlyMap<string, number>;
+  readonly namesIn: NamedStations['namesIn'];
   readonly out: ReadonlySet<string>;
   readonly isChosen: (mjd: number) => boolean;
   readonly tally: Tally;
@@ -185,15 +166,11 @@ function isUsable(value: number, error: number, tally: Tally): boolean {
 function placesOf(
   table: OiData,
   perRow: number,
-  { target, channels, stations, out, isChosen, tally, seen }: Reading,
+  { target, channels, index, namesIn, out, isChosen, tally, seen }: Reading,
   isPlaced: (row: number) => boolean,
 ): Place[] {
   const own = channels.filter((channel) => channel < table.channels);
-  const numbers = table.array === undefined ? numbersOf(table) : undefined;
-  const nameOf = (at: number) =>
-    numbers === undefined
-      ? (table.array?.stations[table.stations[at]].name as string)
-      : nameOfNumber(numbers[at]);
+  const nameOf = namesIn(table);
   const places: Place[] = [];
   for (let row = 0; row < table.rows; row++) {
     if (table.target[row] !== target) continue;
@@ -208,12 +185,12 @@ function placesOf(
     else if (!isChosen(table.mjd[row])) drop(tally, 'time not chosen', own.length);
     else if (seen.has(key)) drop(tally, 'row doubled', own.length);
     else {
-      const flagged = own.filter((channel) => table.flag[row * table.channels + channel] !== 0);
-      drop(tally, 'flagged in the file', flagged.length);
+      const isFlagged = (channel: number) => table.flag[row * table.channels + channel] !== 0;
+      drop(tally, 'flagged in the file', own.filter(isFlagged).length);
       for (const channel of own) {
-        if (flagged.includes(channel)) continue;
+        if (isFlagged(channel)) continue;
         places.push({
-          stations: names.map((name) => stations.indexOf(name)),
+          stations: names.map((name) => index.get(name) as number),
           mjd: table.mjd[row],
           wavelength: table.wavelength.wavelengths[channel],
           at: row * table.channels + channel,

@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
 
 export const ingest = {
   kind: 'ingest',
-  version: 4,
+  version: 5,
   doc:
     'Reads FITS random groups (uv data), OIFITS 1 and 2 or a table (CSV); what it is, the content says. Selects band, ' +
     'polarisation, stations and times; drops what is flagged, not finite or of no finite positive weight and counts ' +

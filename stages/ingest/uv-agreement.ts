@@ -91,7 +91,10 @@ export function compareUv(rows: UvRows, geometry: Geometry): Comparison | undefi
   };
 }
 
-/** The pair of stations after whose exchange (u,v) agree; null when there is none. */
+/** With more stations the search over all pairs would take minutes. */
+const MOST_EXCHANGED = 64;
+
+/** The pair of stations after whose exchange (u,v) agree; null when there is none, or the stations are too many. */
 function exchangedStations(
   rows: UvRows,
   geometry: Geometry,
@@ -100,6 +103,7 @@ function exchangedStations(
 ): readonly [number, number] | null {
   const step = Math.max(1, Math.floor(rows.count / TRIAL_ROWS));
   const { positions } = geometry;
+  if (positions.length > MOST_EXCHANGED) return null;
   const plain = candidates(geometry).filter(({ mirrored }) => !mirrored);
   for (let i = 0; i < positions.length; i++) {
     for (let j = i + 1; j < positions.length; j++) {

@@ -116,31 +116,51 @@ function placeOf(place: string, card: Card | undefined): string {
 export function parseHeader(source: ByteSource, offset: number): { header: Header; dataOffset: number } {
   const place = `${source.name}, header at byte ${offset}`;
   const cards: Card[] = [];
-  for (let at = offset; cards.length <= mostCards; at += blockLength) {
+  const most = offset + mostCards * cardLength;
+  for (let at = offset; at < most; at += blockLength) {
     if (at + blockLength > source.size) throw noEnd(place, `the end of the file at byte ${source.size}`);
     const bytes = source.read(at, blockLength);
     const block = Buffer.from(bytes.buffer, bytes.byteOffset, bytes.length).toString('latin1');
     for (let column = 0; column < blockLength; column += cardLength) {
       const text = block.slice(column, column + cardLength);
       if (text.trimEnd() === 'END') {
-        return { header: headerOf(cards, place), dataOffset: at + blockLength };
+        return { header: headerOf(joined(cards), place), dataOffset: at + blockLength };
       }
-      addCard(cards, parseCard(text, at + column, source.name));
+      cards.push(parseCard(text, at + column, source.name));
     }
   }
   throw noEnd(place, `${cards.length} cards without END`);
 }
 
-/** Adds a card, or what CONTINUE carries to the string before it (section 4.2.1.2). */
-function addCard(cards: Card[], card: Card): void {
-  const last = cards.at(-1);
-  const open = last !== undefined && typeof last.value === 'string' && last.value.endsWith('&');
-  if (card.keyword !== 'CONTINUE' || typeof card.value !== 'string' || !open || isCommentary(last.keyword)) {
-    cards.push(card);
-    return;
+/** The cards, with what CONTINUE carries put to the string before it (section 4.2.1.2). Cost O(cards): the pieces of a
+ *  string are joined once, when it ends. */
+function joined(cards: readonly Card[]): Card[] {
+  const result: Card[] = [];
+  for (let at = 0; at < cards.length; ) {
+    const pieces = [cards[at] as Card];
+    while (isOpen(pieces.at(-1) as Card) && continues(cards[at + pieces.length])) {
+      pieces.push(cards[at + pieces.length] as Card);
+    }
+    result.push(pieces.length === 1 ? (pieces[0] as Card) : joinedCard(pieces));
+    at += pieces.length;
   }
-  const value = String(last.value).slice(0, -1) + card.value;
-  cards[cards.length - 1] = { ...last, value, comment: (last.comment + card.comment).trim() };
+  return result;
+}
+
+function isOpen({ keyword, value }: Card): boolean {
+  return !isCommentary(keyword) && typeof value === 'string' && value.endsWith('&');
+}
+
+function continues(card: Card | undefined): boolean {
+  return card?.keyword === 'CONTINUE' && typeof card.value === 'string';
+}
+
+function joinedCard(pieces: readonly Card[]): Card {
+  const texts = pieces.map(({ value }, k) =>
+    k < pieces.length - 1 ? String(value).slice(0, -1) : String(value),
+  );
+  const comment = pieces.map((piece) => piece.comment).join('');
+  return { ...(pieces[0] as Card), value: texts.join(''), comment: comment.trim() };
 }
 
 function noEnd(place: string, found: string): InputProblem {
