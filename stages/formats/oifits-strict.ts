@@ -1,170 +1,159 @@
-/** The rules of OIFITS that make a file invalid, beyond those without which it cannot be read (oifits.ts, oifits-data.ts): mandatory
- *  keywords and columns, the revisions of tables, values that no measurement has, the order of wavelengths, the
- *  correlation table.
- *  Source: Duvert, Young & Hummel 2017, A&A 597, A8 (revision 2); Pauls et al. 2005, PASP 117, 1255 (revision 1). Tables OI_VIS
- *  and OI_T3 and the primary keywords were read as published, other lists are from memory. */
+/** The rules of OIFITS that make a file invalid, beyond those without which it cannot be read (oifits.ts, oifits-data.ts):
+ *  what must be there (oifits-tables.ts), the revisions of tables, what tables refer to, values that no measurement has, the
+ *  order of wavelengths. Correlations: oifits-correlations.ts. Sources: oifits-tables.ts. */
 
 import type { ByteSource } from '../bytes.ts';
 import { openFits } from './fits/hdu.ts';
-import { headerValue } from './fits/header.ts';
+import { type Header, headerValue } from './fits/header.ts';
 import { readTable, type Table } from './fits/table.ts';
-import { ruleBroken } from './oifits-rules.ts';
+import { requireCorrelations } from './oifits-correlations.ts';
+import { exactly, ruleBroken, uniqueIn } from './oifits-rules.ts';
+import { type FormRule, OIFITS_TABLES, PRIMARY_KEYWORDS, type TableRules, WORDS } from './oifits-tables.ts';
 
-const PRIMARY = [
-  'ORIGIN',
-  'DATE',
-  'DATE-OBS',
-  'CONTENT',
-  'TELESCOP',
-  'INSTRUME',
-  'OBSERVER',
-  'OBJECT',
-  'INSMODE',
-];
-
-const SHARED = ['TARGET_ID', 'TIME', 'MJD', 'INT_TIME'];
-
-/** Of each table: keywords, columns, columns that revision 2 adds, and the revision that stands in a file of OIFITS 2. */
-const TABLES: Readonly<Record<string, TableRules>> = {
-  OI_TARGET: {
-    keywords: [],
-    columns: [
-      ...[
-        'TARGET_ID',
-        'TARGET',
-        'RAEP0',
-        'DECEP0',
-        'EQUINOX',
-        'RA_ERR',
-        'DEC_ERR',
-        'SYSVEL',
-        'VELTYP',
-        'VELDEF',
-      ],
-      ...['PMRA', 'PMDEC', 'PMRA_ERR', 'PMDEC_ERR', 'PARALLAX', 'PARA_ERR', 'SPECTYP'],
-    ],
-    revision: 2,
-  },
-  OI_ARRAY: {
-    keywords: ['ARRNAME', 'FRAME', 'ARRAYX', 'ARRAYY', 'ARRAYZ'],
-    columns: ['TEL_NAME', 'STA_NAME', 'STA_INDEX', 'DIAMETER', 'STAXYZ'],
-    added: ['FOV', 'FOVTYPE'],
-    revision: 2,
-  },
-  OI_WAVELENGTH: { keywords: ['INSNAME'], columns: ['EFF_WAVE', 'EFF_BAND'], revision: 2 },
-  OI_VIS: {
-    keywords: ['DATE-OBS', 'INSNAME'],
-    columns: [
-      ...SHARED,
-      'VISAMP',
-      'VISAMPERR',
-      'VISPHI',
-      'VISPHIERR',
-      'UCOORD',
-      'VCOORD',
-      'STA_INDEX',
-      'FLAG',
-    ],
-    revision: 2,
-    errors: ['VISAMPERR', 'VISPHIERR'],
-  },
-  OI_VIS2: {
-    keywords: ['DATE-OBS', 'INSNAME'],
-    columns: [...SHARED, 'VIS2DATA', 'VIS2ERR', 'UCOORD', 'VCOORD', 'STA_INDEX', 'FLAG'],
-    revision: 2,
-    errors: ['VIS2ERR'],
-  },
-  OI_T3: {
-    keywords: ['DATE-OBS', 'INSNAME'],
-    columns: [
-      ...SHARED,
-      ...[
-        'T3AMP',
-        'T3AMPERR',
-        'T3PHI',
-        'T3PHIERR',
-        'U1COORD',
-        'V1COORD',
-        'U2COORD',
-        'V2COORD',
-        'STA_INDEX',
-        'FLAG',
-      ],
-    ],
-    revision: 2,
-    errors: ['T3AMPERR', 'T3PHIERR'],
-  },
-  OI_FLUX: {
-    keywords: ['DATE-OBS', 'INSNAME'],
-    columns: ['TARGET_ID', 'MJD', 'INT_TIME', 'FLUXDATA', 'FLUXERR', 'FLAG'],
-    revision: 1,
-    errors: ['FLUXERR'],
-  },
-  OI_CORR: { keywords: ['CORRNAME', 'NDATA'], columns: ['IINDX', 'JINDX', 'CORR'], revision: 1 },
-};
-
-interface TableRules {
-  readonly keywords: readonly string[];
-  readonly columns: readonly string[];
-  readonly added?: readonly string[];
-  readonly revision: number;
-  /** Columns of errors: none may be below 0 in a row in use. */
-  readonly errors?: readonly string[];
+/** A table that the standard knows. */
+interface Known {
+  readonly extname: string;
+  readonly rules: TableRules;
+  readonly table: Table;
 }
 
-const FRAMES = ['GEOCENTRIC', 'SKY'];
-const AMPLITUDE_TYPES = ['absolute', 'differential', 'correlated flux'];
-const PHASE_TYPES = ['absolute', 'differential'];
+/** What tables refer to, by name. */
+interface Names {
+  readonly isSecond: boolean;
+  /** Rows of each OI_WAVELENGTH by INSNAME. */
+  readonly channels: ReadonlyMap<string, number>;
+  /** Numbers of the stations of each OI_ARRAY by ARRNAME. */
+  readonly stations: ReadonlyMap<string, ReadonlySet<number>>;
+  readonly targets: ReadonlySet<number>;
+}
 
 /** @throws InputProblem naming table, row and rule of the first rule that is broken. Cost: one read of the tables. */
 export function requireValidOifits(source: ByteSource): void {
   const hdus = openFits(source);
-  const primary = hdus[0].header;
-  const isSecond = text(headerValue(primary, 'CONTENT')).toUpperCase() === 'OIFITS2';
-  if (isSecond) {
-    for (const keyword of PRIMARY) {
-      if (headerValue(primary, keyword) === undefined)
-        throw ruleBroken(
-          `${source.name}, primary header`,
-          `the keyword ${keyword} (mandatory in OIFITS 2)`,
-          'none',
-        );
-    }
-  }
-  const tables = hdus.flatMap((hdu) =>
-    hdu.kind === 'table' && Object.hasOwn(TABLES, hdu.extname)
-      ? [{ extname: hdu.extname, table: readTable(source, hdu) }]
-      : [],
-  );
-  for (const { extname, table } of tables) requireTableRules(extname, table, isSecond);
-  requireCorrelations(tables, isSecond);
+  const isSecond = requirePrimary(hdus[0].header, source.name);
+  const tables = hdus.flatMap((hdu): Known[] => {
+    const rules = Object.hasOwn(OIFITS_TABLES, hdu.extname) ? OIFITS_TABLES[hdu.extname] : undefined;
+    return hdu.kind === 'table' && rules !== undefined
+      ? [{ extname: hdu.extname, rules, table: readTable(source, hdu) }]
+      : [];
+  });
+  for (const known of tables) requireParts(known, isSecond);
+  const names = namesOf(tables, isSecond, source.name);
+  for (const known of tables) requireTable(known, names);
+  if (isSecond) requireCorrelations(tables);
 }
 
-function requireTableRules(extname: string, table: Table, isSecond: boolean): void {
-  const rules = TABLES[extname] as TableRules;
-  const revision = headerValue(table.header, 'OI_REVN');
-  if (isSecond && revision !== rules.revision)
+/** Whether the file says that it is OIFITS 2; then its primary header is complete. */
+function requirePrimary(header: Header, name: string): boolean {
+  if (text(headerValue(header, 'CONTENT')).toUpperCase() !== 'OIFITS2') return false;
+  const place = `${name}, primary header`;
+  for (const keyword of PRIMARY_KEYWORDS) {
+    if (isThere(header, keyword)) continue;
+    throw ruleBroken(place, `the keyword ${keyword} (mandatory in OIFITS 2)`, 'none');
+  }
+  return true;
+}
+
+function isThere(header: Header, keyword: string): boolean {
+  return (headerValue(header, keyword) ?? null) !== null;
+}
+
+/** Revision, keywords and columns. */
+function requireParts({ rules, table }: Known, isSecond: boolean): void {
+  const { header, place } = table;
+  const revision = headerValue(header, 'OI_REVN');
+  const due = isSecond ? rules.revision : 1;
+  if (revision !== due) {
+    const hint = isSecond ? '' : ', or CONTENT = OIFITS2 in the primary header';
+    const edition = isSecond ? 2 : 1;
     throw ruleBroken(
-      table.place,
-      `OI_REVN ${rules.revision} in a file of OIFITS 2`,
+      place,
+      `OI_REVN ${due} in a file of OIFITS ${edition}${hint}`,
       String(revision ?? 'none'),
     );
+  }
   for (const keyword of rules.keywords) {
-    if (headerValue(table.header, keyword) === undefined)
-      throw ruleBroken(table.place, `the keyword ${keyword}`, 'none');
+    if (!isThere(header, keyword)) throw ruleBroken(place, `the keyword ${keyword}`, 'none');
   }
-  for (const column of [...rules.columns, ...(isSecond ? (rules.added ?? []) : [])]) {
+  for (const column of Object.keys({ ...rules.columns, ...(isSecond ? rules.added : {}) })) {
     if (!table.has(column))
-      throw ruleBroken(table.place, `the column ${column}`, `columns ${table.names.join(', ')}`);
+      throw ruleBroken(place, `the column ${column}`, `columns ${table.names.join(', ')}`);
   }
-  requireErrors(table, rules.errors ?? []);
-  if (extname === 'OI_WAVELENGTH') requireWavelengths(table);
-  if (extname === 'OI_ARRAY' && isSecond) requireWord(table, 'FRAME', FRAMES);
-  if (extname === 'OI_VIS' && isSecond) {
-    requireWord(table, 'AMPTYP', AMPLITUDE_TYPES);
-    requireWord(table, 'PHITYP', PHASE_TYPES);
+}
+
+function namesOf(tables: readonly Known[], isSecond: boolean, place: string): Names {
+  const of = (extname: string) => tables.filter((each) => each.extname === extname).map(({ table }) => table);
+  const idsOf = (table: Table, name: string) => {
+    const ids = exactly(table, name, 1).numbers();
+    uniqueIn(ids, name, table.place);
+    return new Set(ids);
+  };
+  const nameOf = ({ header }: Table, keyword: string) => text(headerValue(header, keyword));
+  const targets = of('OI_TARGET');
+  if (targets.length !== 1) throw ruleBroken(place, 'exactly one table OI_TARGET', `${targets.length}`);
+  return {
+    isSecond,
+    channels: new Map(of('OI_WAVELENGTH').map((table) => [nameOf(table, 'INSNAME'), table.rows])),
+    stations: new Map(of('OI_ARRAY').map((table) => [nameOf(table, 'ARRNAME'), idsOf(table, 'STA_INDEX')])),
+    targets: idsOf(targets[0], 'TARGET_ID'),
+  };
+}
+
+function requireTable({ extname, rules, table }: Known, names: Names): void {
+  const { header, place } = table;
+  const insname = headerValue(header, 'INSNAME');
+  const arrname = headerValue(header, 'ARRNAME');
+  const isOfData = rules.keywords.includes('DATE-OBS');
+  if (isOfData) requireKnown(place, 'OI_WAVELENGTH', 'INSNAME', text(insname), names.channels);
+  const isBare = extname === 'OI_FLUX' && text(headerValue(header, 'CALSTAT')).toUpperCase() === 'C';
+  if (isOfData && names.isSecond && !isBare && text(arrname) === '')
+    throw ruleBroken(place, 'the keyword ARRNAME', 'none');
+  if (isOfData && text(arrname) !== '')
+    requireKnown(place, 'OI_ARRAY', 'ARRNAME', text(arrname), names.stations);
+  const channels = names.channels.get(text(insname)) ?? 0;
+  for (const [name, rule] of Object.entries({ ...rules.columns, ...rules.added, ...rules.optional })) {
+    const ofRows = extname === 'OI_INSPOL' && rule.repeat === 'NWAVE';
+    if (table.has(name) && !ofRows) requireForm(table, name, rule, channels);
   }
+  if (isOfData) requireDate(table);
+  requireErrors(
+    table,
+    (rules.errors ?? []).filter((name) => table.has(name)),
+  );
   for (const column of ['TARGET_ID', 'STA_INDEX']) if (table.has(column)) requireFromOne(table, column);
+  if (extname === 'OI_WAVELENGTH') requireWavelengths(table);
+  if (extname === 'OI_INSPOL') requirePolarisation(table, names);
+  if (names.isSecond) requireWords(extname, table);
+  if (names.isSecond) requireUnits(extname, table);
+}
+
+function requireKnown(
+  place: string,
+  extname: string,
+  keyword: string,
+  name: string,
+  known: ReadonlyMap<string, unknown>,
+): void {
+  if (known.has(name)) return;
+  const found = [...known.keys()].join(', ') || 'none';
+  throw ruleBroken(place, `an ${extname} with ${keyword} ${name}`, `${keyword} ${found}`);
+}
+
+function requireForm(table: Table, name: string, rule: FormRule, channels: number): void {
+  const { form, repeat } = table.column(name);
+  const letter = form.trim().replace(/^\d*/, '')[0];
+  const due = rule.repeat === 'text' ? repeat : rule.repeat === 'NWAVE' ? channels : rule.repeat;
+  if (rule.letters.includes(letter) && repeat === due) return;
+  const count = rule.repeat === 'NWAVE' ? `${due}, one for each wavelength` : `${due}`;
+  const expected = rule.repeat === 'text' ? rule.what : `${rule.what}, ${count} in a row`;
+  throw ruleBroken(`${table.place}, column ${name}`, expected, `TFORM ${form}`);
+}
+
+/** DATE-OBS begins with a date as FITS writes it (FITS Standard 4.0, section 9.1.1). */
+function requireDate({ header, place }: Table): void {
+  const date = text(headerValue(header, 'DATE-OBS'));
+  if (/^\d{4}-\d\d-\d\d(T.*)?$/.test(date)) return;
+  throw ruleBroken(place, 'DATE-OBS as YYYY-MM-DD', date || 'nothing');
 }
 
 /** No error of a measurement in use is below 0. */
@@ -197,22 +186,65 @@ function requireWavelengths(table: Table): void {
       `EFF_WAVE ${waves[k]} m after ${waves[k - 1]} m`,
     );
   }
-  const odd = table
-    .column('EFF_BAND')
-    .numbers()
-    .findIndex((width) => width < 0);
-  if (odd >= 0)
-    throw ruleBroken(
-      `${table.place}, row ${odd + 1}, column EFF_BAND`,
-      'a width of 0 or more',
-      'a negative one',
-    );
+  const widths = table.column('EFF_BAND').numbers();
+  const odd = widths.findIndex((width) => !(width >= 0));
+  if (odd < 0) return;
+  const place = `${table.place}, row ${odd + 1}, column EFF_BAND`;
+  throw ruleBroken(place, 'a width of 0 or more', `${widths[odd]}`);
 }
 
-function requireWord(table: Table, keyword: string, words: readonly string[]): void {
-  const value = headerValue(table.header, keyword);
-  if (value === undefined || words.some((word) => word.toLowerCase() === text(value).toLowerCase())) return;
-  throw ruleBroken(table.place, `${keyword} ${words.join(' or ')}`, text(value));
+/** Every row of an OI_INSPOL refers to a target, a station and wavelengths, of which its matrices have as many. */
+function requirePolarisation(table: Table, { channels, stations, targets }: Names): void {
+  const arrname = text(headerValue(table.header, 'ARRNAME'));
+  requireKnown(table.place, 'OI_ARRAY', 'ARRNAME', arrname, stations);
+  const [ids, indices] = ['TARGET_ID', 'STA_INDEX'].map((name) => table.column(name).numbers());
+  const rules = (OIFITS_TABLES.OI_INSPOL as TableRules).columns;
+  for (const [row, insname] of table.column('INSNAME').texts().entries()) {
+    const place = `${table.place}, row ${row + 1}`;
+    requireKnown(place, 'OI_WAVELENGTH', 'INSNAME', insname, channels);
+    for (const name of ['JXX', 'JYY', 'JXY', 'JYX'])
+      requireForm(table, name, rules[name], channels.get(insname) as number);
+    if (!targets.has(ids[row])) throw ruleBroken(place, 'a TARGET_ID of OI_TARGET', `${ids[row]}`);
+    if (!stations.get(arrname)?.has(indices[row]))
+      throw ruleBroken(place, `a STA_INDEX of OI_ARRAY ${arrname}`, `${indices[row]}`);
+  }
+}
+
+function requireWords(extname: string, table: Table): void {
+  const of: Readonly<Record<string, readonly (keyof typeof WORDS)[]>> = {
+    OI_ARRAY: ['FRAME'],
+    OI_VIS: ['AMPTYP', 'PHITYP'],
+    OI_FLUX: ['CALSTAT'],
+  };
+  for (const keyword of of[extname] ?? []) {
+    const value = headerValue(table.header, keyword);
+    if (value !== undefined) requireWord(table.place, keyword, text(value));
+  }
+  const columns = (['FOVTYPE', 'CATEGORY'] as const).filter(
+    (name) => extname !== 'OI_FLUX' && table.has(name),
+  );
+  for (const name of columns) {
+    for (const [row, value] of table.column(name).texts().entries())
+      requireWord(`${table.place}, row ${row + 1}`, name, value);
+  }
+}
+
+function requireWord(place: string, name: keyof typeof WORDS, value: string): void {
+  const words: readonly string[] = WORDS[name];
+  if (words.some((word) => word.toLowerCase() === value.toLowerCase())) return;
+  throw ruleBroken(place, `${name} ${words.join(' or ')}`, value || 'nothing');
+}
+
+/** Correlated fluxes and spectra have a unit; a spectrum that is not calibrated belongs to a station. */
+function requireUnits(extname: string, table: Table): void {
+  const { header, place } = table;
+  const isFlux = text(headerValue(header, 'AMPTYP')).toLowerCase() === 'correlated flux';
+  const named = extname === 'OI_FLUX' ? 'FLUXDATA' : extname === 'OI_VIS' && isFlux ? 'VISAMP' : undefined;
+  if (named !== undefined && table.column(named).unit.trim() === '')
+    throw ruleBroken(`${place}, column ${named}`, 'a unit (TUNIT) of the flux', 'none');
+  const isRaw = extname === 'OI_FLUX' && text(headerValue(header, 'CALSTAT')).toUpperCase() === 'U';
+  if (isRaw && !table.has('STA_INDEX'))
+    throw ruleBroken(place, 'the column STA_INDEX with CALSTAT U', `columns ${table.names.join(', ')}`);
 }
 
 function requireFromOne(table: Table, name: string): void {
@@ -224,34 +256,6 @@ function requireFromOne(table: Table, name: string): void {
     'a number from 1',
     `${column.numbers()[odd]}`,
   );
-}
-
-/** A table that is referred to by CORRNAME is there, and its entries are correlations of data that there are. */
-function requireCorrelations(tables: readonly { extname: string; table: Table }[], isSecond: boolean): void {
-  if (!isSecond) return;
-  const correlations = tables.filter(({ extname }) => extname === 'OI_CORR').map(({ table }) => table);
-  const names = correlations.map(({ header }) => text(headerValue(header, 'CORRNAME')));
-  const doubled = names.find((name, k) => names.indexOf(name) !== k);
-  if (doubled !== undefined)
-    throw ruleBroken(correlations[0].place, 'every CORRNAME once', `${doubled} twice`);
-  for (const { extname, table } of tables) {
-    const name = headerValue(table.header, 'CORRNAME');
-    if (extname === 'OI_CORR' || name === undefined || names.includes(text(name))) continue;
-    throw ruleBroken(table.place, `an OI_CORR with CORRNAME ${text(name)}`, names.join(', ') || 'none');
-  }
-  for (const table of correlations) requireEntries(table);
-}
-
-function requireEntries(table: Table): void {
-  const count = Number(headerValue(table.header, 'NDATA'));
-  const [i, j, values] = ['IINDX', 'JINDX', 'CORR'].map((name) => table.column(name).numbers());
-  for (let k = 0; k < table.rows; k++) {
-    const place = `${table.place}, row ${k + 1}`;
-    if (!(i[k] >= 1 && i[k] < j[k] && j[k] <= count))
-      throw ruleBroken(place, `1 <= IINDX < JINDX <= NDATA (${count})`, `IINDX ${i[k]}, JINDX ${j[k]}`);
-    if (!(Math.abs(values[k]) <= 1))
-      throw ruleBroken(place, 'a correlation from -1 to 1', `CORR ${values[k]}`);
-  }
 }
 
 function text(value: unknown): string {
