@@ -76,14 +76,19 @@ function misplaced(document: unknown): string | null {
 function misplacedField(number: unknown): string | null {
   if (!isRecord(number)) return '';
   for (const [field, type] of Object.entries(requiredFields)) {
-    if (typeof number[field] !== type) return `.${field}`;
+    if (typeof number[field] !== type || isEndless(number[field])) return `.${field}`;
   }
   for (const [field, value] of Object.entries(number)) {
     if (field in requiredFields) continue;
     const known = intervalFields.some((each) => each === field);
-    if (!known || typeof value !== 'number') return `.${field}`;
+    if (!known || typeof value !== 'number' || isEndless(value)) return `.${field}`;
   }
   return null;
+}
+
+/** JSON's grammar allows 1e999, which no double holds. */
+function isEndless(value: unknown): boolean {
+  return typeof value === 'number' && !Number.isFinite(value);
 }
 
 function isRecord(value: unknown): value is Record<string, unknown> {

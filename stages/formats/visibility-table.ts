@@ -59,6 +59,8 @@ export interface VisibilityTable {
   /** 1/Jy²; negative for a negative sigma, infinite for a sigma of 0. */
   readonly weight: Float64Array;
   readonly flagged: Uint8Array;
+  /** Whether the last line ends as lines do; if not, a number at its end may have lost digits. */
+  readonly isEnded: boolean;
 }
 
 interface Rows {
@@ -67,6 +69,7 @@ interface Rows {
   /** Line of each row, from 1. */
   readonly lines: readonly number[];
   readonly place: string;
+  readonly isEnded: boolean;
 }
 
 /** Reads all rows. @throws InputProblem with line and column. */
@@ -100,6 +103,7 @@ export function readVisibilityTable(source: ByteSource, request: TableRequest): 
       ? scaled('weight', to('Jy**-2'))
       : scaled('sigma', to('Jy')).map((sigma) => weightOfSigma(sigma)),
     flagged: has('flag') ? flags(rows, request.columns.flag as ColumnOf) : new Uint8Array(rows.cells.length),
+    isEnded: rows.isEnded,
   };
 }
 
@@ -143,6 +147,7 @@ function readRows(source: ByteSource): Rows {
     cells: rest.map((each) => each.record),
     lines: rest.map((each) => each.info.lines),
     place: source.name,
+    isEnded: /[\r\n]$/.test(text),
   };
 }
 

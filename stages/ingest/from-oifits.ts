@@ -115,14 +115,16 @@ function requireVis(oifits: Oifits, source: ByteSource): readonly OiVis[] {
 function chooseTarget(oifits: Oifits, wanted: string | undefined, place: string): number {
   const names = oifits.targets.map((target) => target.name);
   const at = wanted === undefined ? 0 : names.indexOf(wanted);
-  if (at >= 0 && (wanted !== undefined || names.length === 1)) {
+  const isOne = wanted === undefined ? names.length === 1 : at === names.lastIndexOf(wanted);
+  if (at >= 0 && isOne) {
     requirePosition(oifits.targets[at], place);
     return at;
   }
   throw new InputProblem({
     code: 'several-targets',
     place: `${place}, OI_TARGET`,
-    expected: wanted === undefined ? 'one target, or the parameter target' : JSON.stringify(wanted),
+    expected:
+      wanted === undefined ? 'one target, or the parameter target' : `${JSON.stringify(wanted)}, once`,
     found: names.join(', '),
     advice: 'Choose one with the parameter target.',
   });

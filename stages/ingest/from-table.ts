@@ -51,7 +51,11 @@ export function observationOfTable(source: ByteSource, choices: Choices): Observ
     hands: null,
     leftOut: [...out],
     uv: verdict.agreement,
-    warnings: [...withoutPosition(stations), ...verdict.warnings],
+    warnings: [
+      ...(rows.isEnded ? [] : ['The last line has no line break: the table may be cut short.']),
+      ...withoutPosition(stations),
+      ...verdict.warnings,
+    ],
   };
 }
 

@@ -3,6 +3,7 @@ import { describe, expect, it } from 'vitest';
 import { memorySink } from '../../../stages/bytes.ts';
 import type { Visibilities } from '../../../stages/data.ts';
 import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { all, type OiFile, setValue, sourceOfFile, validFile } from '../formats/oifits-files.ts';
 import { project, REFERENCE_MJD, rows, STATIONS, times, uvFile } from '../uv-synthetic.ts';
 import { problemOf, runIngest } from './run-ingest.ts';
 
@@ -74,6 +75,63 @@ describe('OIFITS', () => {
       const phase = angle(V(u1, v1)) + angle(V(u2, v2)) - angle(V(u1 + u2, v1 + v2));
       expect(Math.sin(triples.phase[t] - phase)).toBeCloseTo(0, 9);
     }
+  });
+
+  describe('with two arrays', () => {
+    // WICK stands in both arrays, at two places; Lamp was seen by both.
+    const twoArrays = (change: (file: OiFile) => void = () => {}) => {
+      const file = validFile();
+      file.tables = file.tables.filter(({ extname }) => !['OI_VIS', 'OI_T3', 'OI_FLUX'].includes(extname));
+      setValue('OI_VIS2', 'TARGET_ID', 0, 4)(file);
+      setValue('OI_VIS2', 'TARGET_ID', 1, 4)(file);
+      change(file);
+      const source = sourceOfFile(file);
+      return source.read(0, source.size);
+    };
+    const namesOf = (bytes: Uint8Array) =>
+      runIngest(bytes, { target: 'Lamp' }).visibilities.stations.map(({ name }) => name);
+
+    it('keeps stations of one name apart by the name of their array', () => {
+      const { visibilities } = runIngest(twoArrays(), { target: 'Lamp' });
+      const { stations, squared } = visibilities as Required<Visibilities>;
+      expect(stations.map(({ name }) => name)).toEqual(['WICK', 'FLINT', 'EMBER', 'WICK (FAR)', 'COAL']);
+      // Two baselines at two wavelengths of NEAR, one at three of FAR.
+      const pairs = Array.from(squared.station1, (first, k) => `${first}-${squared.station2[k]}`).sort();
+      expect(pairs).toEqual(['0-1', '0-1', '0-2', '0-2', '3-4', '3-4', '3-4']);
+      const without = runIngest(twoArrays(), { target: 'Lamp', leaveOut: ['WICK (FAR)'] });
+      expect(without.visibilities.squared?.count).toBe(4);
+    });
+
+    it('takes one station described twice for one', () => {
+      const near = twoArrays((file) => {
+        const [first, second] = file.tables.filter(({ extname }) => extname === 'OI_ARRAY');
+        second.cards = second.cards.map(([name, value]) => [name, name === 'FRAME' ? 'GEOCENTRIC' : value]);
+        const places = first.columns.find(({ name }) => name === 'STAXYZ') as unknown as {
+          values: number[];
+        };
+        const place = places.values.slice(0, 3);
+        second.columns = second.columns.map((each) =>
+          each.name === 'STAXYZ' ? { ...each, values: [...place, 9, 9, 9] } : each,
+        );
+      });
+      expect(namesOf(near)).toEqual(['WICK', 'FLINT', 'EMBER', 'COAL']);
+    });
+
+    it('calls a station without name by its telescope or number, and refuses two of one name', () => {
+      expect(namesOf(twoArrays(setValue('OI_ARRAY', 'STA_NAME', 1, '')))).toContain('FLINT');
+      const bare = all(setValue('OI_ARRAY', 'STA_NAME', 1, ''), setValue('OI_ARRAY', 'TEL_NAME', 1, ''));
+      expect(namesOf(twoArrays(bare))).toContain('station 2');
+      expect(
+        problemOf(twoArrays(setValue('OI_ARRAY', 'STA_NAME', 1, 'WICK')), { target: 'Lamp' }).message,
+      ).toBe(
+        'OI_ARRAY NEAR, STA_INDEX 2: doubled-station: expected a STA_NAME of its own for every station of the array, got "WICK". Correct the table with the program that wrote the file.',
+      );
+    });
+
+    it('refuses a target whose name is that of two', () => {
+      const bytes = twoArrays(setValue('OI_TARGET', 'TARGET', 0, 'Lamp'));
+      expect(problemOf(bytes, { target: 'Lamp' }).found).toBe('Lamp, Lamp');
+    });
   });
 
   it('does not average wavelengths that lie far apart', () => {

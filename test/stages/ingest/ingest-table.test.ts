@@ -82,6 +82,12 @@ describe('a table of visibilities', () => {
     }
   });
 
+  it('warns when the last line has no end: a number there may have lost digits', () => {
+    const warning = 'The last line has no line break: the table may be cut short.';
+    expect(runIngest(csv(), parameters).stage.warnings).not.toContain(warning);
+    expect(runIngest(csv().slice(0, -1), parameters).stage.warnings).toContain(warning);
+  });
+
   it('keeps the phase −2π(ux + vy)', () => {
     const { visibilities } = runIngest(csv(), { ...parameters, averaging: 'none' });
     for (let k = 0; k < visibilities.count; k++) {
