@@ -2,6 +2,7 @@
 
 import type { ByteSink, ByteSource } from '../bytes.ts';
 import type { Posterior } from '../data.ts';
+import { InputProblem } from '../problem.ts';
 import { requireFiniteColumn, requireFiniteValues, requireRepeat } from './column-rules.ts';
 import { openFits, requireTable } from './fits/hdu.ts';
 import { requireInteger, requireText } from './fits/header.ts';
@@ -26,25 +27,36 @@ function posteriorOf(table: Table): Posterior {
   };
 }
 
+const ROLES = ['gains fixed', 'components'] as const;
+
 /** Other posteriors beside the main one, and what each is. */
 export interface PosteriorVariant {
   /** `gains fixed`: with the gains held at the optimum. `components`: with another number of components. */
-  readonly role: 'gains fixed' | 'components';
+  readonly role: (typeof ROLES)[number];
   readonly posterior: Posterior;
 }
 
-/** Reads the variants: tables VARIANT. */
+/** Reads the variants: tables VARIANT. @throws InputProblem as `readPosterior`, and for a ROLE that is none */
 export function readVariants(source: ByteSource): PosteriorVariant[] {
   return openFits(source)
     .filter((hdu) => hdu.kind === 'table' && hdu.extname === 'VARIANT')
     .map((hdu) => {
       const table = readTable(source, hdu);
-      const role = requireText(table.header, 'ROLE');
-      return {
-        role: role === 'gains fixed' ? 'gains fixed' : 'components',
-        posterior: posteriorOf(table),
-      };
+      return { role: roleOf(table), posterior: posteriorOf(table) };
     });
+}
+
+function roleOf({ header, place }: Table): PosteriorVariant['role'] {
+  const role = requireText(header, 'ROLE');
+  const known = ROLES.find((each) => each === role);
+  if (known !== undefined) return known;
+  throw new InputProblem({
+    code: 'bad-value',
+    place,
+    expected: `ROLE ${ROLES.join(' or ')}`,
+    found: JSON.stringify(role),
+    advice: 'Give the output of a stage of kind fit.',
+  });
 }
 
 /** Writes the draws. @throws InternalError when the arrays have other lengths than they must or a value is not finite. */

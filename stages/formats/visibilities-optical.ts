@@ -72,9 +72,15 @@ function pairOf(values: Float64Array, errors: Float64Array) {
   };
 }
 
+/** Scans are numbered by whole numbers from 0 that 32 bits hold. */
+export function isScanNumber(scan: number): boolean {
+  return Number.isInteger(scan) && scan >= 0 && scan <= 0x7fff_ffff;
+}
+
 function requireRows(table: OiData, scan: Float64Array, faultOf: (row: number) => string | undefined): void {
   for (let row = 0; row < table.rows; row++) {
-    const found = table.flag[row] !== 0 ? 'FLAG set' : scan[row] < 0 ? `NS_SCAN ${scan[row]}` : faultOf(row);
+    const found =
+      table.flag[row] !== 0 ? 'FLAG set' : !isScanNumber(scan[row]) ? `NS_SCAN ${scan[row]}` : faultOf(row);
     if (found === undefined) continue;
     throw new InputProblem({
       code: 'bad-row',

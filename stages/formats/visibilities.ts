@@ -14,7 +14,13 @@ import { type NewCard, requireText } from './fits/header.ts';
 import { appendEmptyPrimary, appendTableHdu, type NewColumn } from './fits/table.ts';
 import { readOifits } from './oifits.ts';
 import type { OiArray, Oifits, OiVis } from './oifits-types.ts';
-import { readSquared, readTriples, writeSquared, writeTriples } from './visibilities-optical.ts';
+import {
+  isScanNumber,
+  readSquared,
+  readTriples,
+  writeSquared,
+  writeTriples,
+} from './visibilities-optical.ts';
 
 const instrument = 'BAND';
 const unknown = 'UNKNOWN';
@@ -34,6 +40,7 @@ export function readVisibilities(source: ByteSource): Visibilities {
   const scan = column('NS_SCAN');
   const target = oifits.targets[0] as Oifits['targets'][number];
   const array = vis.array as OiArray;
+  requireFinite(oifits, vis);
   requireRows(vis, sigma, scan);
   return {
     target: { name: target.name, raDegrees: target.raDegrees, decDegrees: target.decDegrees },
@@ -90,6 +97,28 @@ function requireLayout({ targets, wavelengths, vis, vis2, t3, flux }: Oifits, pl
   });
 }
 
+/** @throws InputProblem for a position or a band that is not finite */
+function requireFinite({ targets: [target] }: Oifits, { array, wavelength, place }: OiVis): void {
+  const facts: [string, number[]][] = [
+    ['RAEP0 and DECEP0', [target.raDegrees, target.decDegrees]],
+    ['EFF_BAND', [wavelength.bandwidths[0]]],
+    ...((array as OiArray).stations.map(({ name, xyz }) => [`STAXYZ of ${name}`, [...xyz]]) as [
+      string,
+      number[],
+    ][]),
+  ];
+  for (const [what, values] of facts) {
+    if (values.every(Number.isFinite)) continue;
+    throw new InputProblem({
+      code: 'not-finite',
+      place,
+      expected: `${what} finite`,
+      found: values.join(', '),
+      advice: 'Give the output of a stage, or take the file through a stage of kind ingest.',
+    });
+  }
+}
+
 function requireRows(vis: OiVis, sigma: Float64Array, scan: Float64Array): void {
   for (let row = 0; row < vis.rows; row++) {
     const inOrder = (vis.stations[2 * row] as number) < (vis.stations[2 * row + 1] as number);
@@ -101,7 +130,7 @@ function requireRows(vis: OiVis, sigma: Float64Array, scan: Float64Array): void 
           ? `VISAMPERR ${sigma[row]}`
           : !inOrder
             ? 'stations against the order of OI_ARRAY'
-            : s < 0
+            : !isScanNumber(s)
               ? `NS_SCAN ${s}`
               : undefined;
     if (found === undefined) continue;

@@ -10,7 +10,7 @@ import { cos, sin } from '../numerics/elementary.ts';
 import { InputProblem } from '../problem.ts';
 import { convert } from '../units.ts';
 import type { Choices } from './choices.ts';
-import { observationOfOptical } from './from-optical.ts';
+import { correlationsUnused, observationOfOptical } from './from-optical.ts';
 import { type NamedStations, namedStations } from './oifits-stations.ts';
 import {
   addRecord,
@@ -71,12 +71,20 @@ export function observationOfOifits(source: ByteSource, choices: Choices): Obser
     leftOut: [...out],
     uv: verdict.agreement,
     warnings: [
+      ...unitless(tables),
       ...(normalised ? ['The visibilities are normalised: a total flux of 1 is written as 1 Jy.'] : []),
       ...unusedOptical(oifits),
+      ...correlationsUnused(oifits.others),
       ...withoutPosition(list),
       ...verdict.warnings,
     ],
   };
+}
+
+function unitless(tables: readonly OiVis[]): string[] {
+  return tables
+    .filter(({ amplitudeType, unit }) => amplitudeType === 'correlated flux' && unit.trim() === '')
+    .map(({ place }) => `The correlated fluxes of ${place} have no unit: they are taken for Jy.`);
 }
 
 function unusedOptical({ vis2, t3 }: Oifits): string[] {

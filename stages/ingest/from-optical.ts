@@ -107,15 +107,19 @@ function remarkOf({ primary }: Oifits): string {
   return typeof remark === 'string' ? remark : '';
 }
 
+export function correlationsUnused(extnames: readonly string[]): string[] {
+  return extnames.includes('OI_CORR')
+    ? ['The correlations in OI_CORR are not used: errors count as independent.']
+    : [];
+}
+
 function warningsOf({ vis, others }: Oifits, place: string): string[] {
   return [
     'The file has squared visibilities and triple products: fit `squared-visibilities`, `triple-phases`, `triple-amplitudes`. They are normalised: a total flux of 1 is written as 1 Jy.',
     ...(vis.length > 0
       ? [`${vis.length} OI_VIS of ${place} are left out: their amplitudes or phases lack a reference.`]
       : []),
-    ...(others.includes('OI_CORR')
-      ? ['The correlations in OI_CORR are not used: errors count as independent.']
-      : []),
+    ...correlationsUnused(others),
   ];
 }
 

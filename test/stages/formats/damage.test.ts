@@ -243,6 +243,25 @@ describe.each(formats)('%s', (_, bytes, read) => {
   });
 });
 
+test('lists of all rows that share one piece of the heap are not copied for each', () => {
+  const [rows, length] = [1000, 4000];
+  const data = new DataView(new ArrayBuffer(8 * rows + length));
+  for (let row = 0; row < rows; row++) data.setInt32(8 * row, length);
+  const primary = handmade(['SIMPLE  = T', 'BITPIX  = 8', 'NAXIS   = 0']);
+  const table = handmade(
+    [
+      ...["XTENSION= 'BINTABLE'", 'BITPIX  = 8', 'NAXIS   = 2', 'NAXIS1  = 8', `NAXIS2  = ${rows}`],
+      ...[`PCOUNT  = ${length}`, 'GCOUNT  = 1', 'TFIELDS = 1', "TTYPE1  = 'LIST'", "TFORM1  = '1PB'"],
+    ],
+    new Uint8Array(data.buffer),
+  );
+  const bytes = new Uint8Array(Buffer.concat([primary, table]));
+  expect(outcome(bytes, tablesOf)).toBeUndefined();
+  expect(problemOf(() => tablesOf(sourceOf(bytes))).message).toBe(
+    'input, HDU 2, column LIST, row 2: bad-size: expected a list within the heap of 4000 bytes, got 4000 elements from its byte 0 on. The file is damaged: fetch it again.',
+  );
+});
+
 describe('headers', () => {
   const card = (text: string) => text.padEnd(CARD);
 

@@ -7,7 +7,7 @@ import { fromArcsec, fromDegrees, toArcsec, toDegrees } from '../../../stages/fo
 import { readBasis, writeBasis } from '../../../stages/formats/basis.ts';
 import type { NewCard } from '../../../stages/formats/fits/header.ts';
 import { appendImageHdu } from '../../../stages/formats/fits/image.ts';
-import { readPosterior, writePosterior } from '../../../stages/formats/posterior.ts';
+import { readPosterior, readVariants, writePosterior } from '../../../stages/formats/posterior.ts';
 import { readSkyCube, readSkyImage, startSkyCube, writeSkyImage } from '../../../stages/formats/sky-image.ts';
 import { readVisibilities, writeVisibilities } from '../../../stages/formats/visibilities.ts';
 import { fixture, problemOf, written } from './fits/fixtures.ts';
@@ -180,6 +180,18 @@ describe('posterior', () => {
   });
 });
 
+test('variants of a posterior come back by their role, and another role is refused', () => {
+  const file = (role: string) =>
+    written((sink) =>
+      writePosterior(sink, posterior, { variants: [{ role: role as 'components', posterior }] }),
+    );
+  for (const role of ['gains fixed', 'components'])
+    expect(readVariants(file(role))).toEqual([{ role, posterior }]);
+  expect(problemOf(() => readVariants(file('other'))).message).toBe(
+    'written, HDU 3 (VARIANT): bad-value: expected ROLE gains fixed or components, got "other". Give the output of a stage of kind fit.',
+  );
+});
+
 describe('visibilities', () => {
   const back = readVisibilities(written((sink) => writeVisibilities(sink, visibilities)));
 
@@ -291,6 +303,17 @@ describe('visibilities', () => {
       'stations against the order of OI_ARRAY',
     );
     expect(() => write({ re: Float64Array.of(Number.NaN, 0, 0) })).toThrow('VISAMP: value 0 is NaN');
+    const nowhere = {
+      stations: visibilities.stations.map(({ name }) => ({ name, xyz: [0, Number.NaN, 0] })),
+    };
+    const target = { ...visibilities.target, decDegrees: Number.POSITIVE_INFINITY };
+    for (const [change, expected] of [
+      [nowhere, 'STAXYZ of AA finite'],
+      [{ target }, 'RAEP0 and DECEP0 finite'],
+      [{ bandwidthMetres: Number.NaN }, 'EFF_BAND finite'],
+    ] as const) {
+      expect(problemOf(() => readVisibilities(write(change))).expected).toBe(expected);
+    }
   });
 });
 

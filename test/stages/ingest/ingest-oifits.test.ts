@@ -3,7 +3,7 @@ import { describe, expect, it } from 'vitest';
 import { memorySink } from '../../../stages/bytes.ts';
 import type { Visibilities } from '../../../stages/data.ts';
 import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
-import { all, type OiFile, setValue, sourceOfFile, validFile } from '../formats/oifits-files.ts';
+import { all, type OiFile, setCard, setValue, sourceOfFile, validFile } from '../formats/oifits-files.ts';
 import { project, REFERENCE_MJD, rows, STATIONS, times, uvFile } from '../uv-synthetic.ts';
 import { problemOf, runIngest } from './run-ingest.ts';
 
@@ -125,6 +125,23 @@ describe('OIFITS', () => {
         problemOf(twoArrays(setValue('OI_ARRAY', 'STA_NAME', 1, 'WICK')), { target: 'Lamp' }).message,
       ).toBe(
         'OI_ARRAY NEAR, STA_INDEX 2: doubled-station: expected a STA_NAME of its own for every station of the array, got "WICK". Correct the table with the program that wrote the file.',
+      );
+    });
+
+    it('says that correlations are not used, and that a flux without unit is taken for Jy', () => {
+      const file = validFile();
+      file.tables = file.tables.filter(({ extname }) => extname !== 'OI_VIS2');
+      setCard('OI_VIS', 'AMPTYP', 'correlated flux')(file);
+      setValue('OI_VIS', 'UCOORD', 0, 60)(file);
+      const source = sourceOfFile(file);
+      const { stage } = runIngest(source.read(0, source.size), {
+        ...{ target: 'Lantern', bands: [1], channels: [1], rules: 'ignore', uvSign: 'as-written' },
+      });
+      expect(stage.warnings).toContain(
+        'The correlations in OI_CORR are not used: errors count as independent.',
+      );
+      expect(stage.warnings).toContain(
+        'The correlated fluxes of data, HDU 7 (OI_VIS) have no unit: they are taken for Jy.',
       );
     });
 
