@@ -16,6 +16,8 @@ export interface RoundedNumber {
   readonly exponent: number;
 }
 
+/** Relative length of a side below which it is rounding: a thousand units in a double's last place. */
+const ROUNDING = 1e-13;
 /** Decimals that are still written out; beyond them a power of ten is split off. */
 const MOST_DECIMALS = 6;
 
@@ -24,7 +26,9 @@ const MOST_DECIMALS = 6;
 export function roundNumber(value: number, low: number | null, high: number | null): RoundedNumber {
   if (!Number.isFinite(value)) return { value: String(value), exponent: 0 };
   const sides = [low === null ? Number.NaN : value - low, high === null ? Number.NaN : high - value];
-  const positive = sides.filter((side) => side > 0 && Number.isFinite(side));
+  // A side that is the rounding of its numbers has no length.
+  const least = ROUNDING * Math.max(Math.abs(value), ...sides);
+  const positive = sides.filter((side) => side > least && Number.isFinite(side));
   if (
     low === null ||
     high === null ||

@@ -116,3 +116,13 @@ describe('rounding', () => {
     );
   });
 });
+
+// ISO 80000-1, annex B: two digits of the side of 0.0263; the other is 2e-16, a unit in the last place of 1.
+it('a side that is only rounding has no length', () => {
+  expect(roundNumber(1, 0.9737, 1 + 2 ** -52)).toMatchObject({
+    value: '1.000',
+    low: '0.974',
+    high: '1.000',
+    down: '0.026',
+  });
+});
