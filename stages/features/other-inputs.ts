@@ -17,6 +17,7 @@ const quantity = z.object({
   covariance: z.tuple([z.number(), z.number(), z.number()]),
   squares: z.number().min(0),
   byOwnSpread: z.boolean(),
+  spread: z.number().positive(),
   scatter: z.number().min(0),
   trials: z.number(),
 });

@@ -2,14 +2,11 @@
  *
  *    error_i = a + b (measured_i - centre) + e_i,    e_i normal with variance v
  *
- *  A value is corrected by a + b (value - centre); v and the error of a and b are what is left of its error. A conjugate
- *  regression (Gelman, Carlin, Stern, Dunson, Vehtari & Rubin, Bayesian Data Analysis, 3rd ed., section 14.2): with n trials
- *  and S the sum of squares about the line, v is scaled inverse chi-square of n0 + n - 1 degrees of freedom and scale
- *
- *    (n0 s^2 + S) / (n0 + n - 1)
- *
- *  and the corrected value is Student t. The posterior's own variance s^2 is the guess before any trial, worth n0 = 1 of
- *  them, so that an observation whose posterior is much wider than those of the trials does not lose that.
+ *  A value is corrected by a + b (value - centre); v and the error of a and b are what is left of its error. By least squares with
+ *  a prior on b, v = S / (n - 1) of n trials with S the sum of squares about the line; the corrected value is Student t of n - 1
+ *  degrees of freedom (Gelman, Carlin, Stern, Dunson, Vehtari & Rubin, Bayesian Data Analysis, 3rd ed., section 14.2). So that
+ *  a posterior much wider than those of the trials is not lost, v is taken times (n - 1 + s^2 / t^2) / n with s^2 the
+ *  posterior's variance and t^2 the mean of those of the trials: its own width counts for one trial.
  *
  *  Why s^2 + S / (n - 1) would count twice. With a linear model, data of curvature D and a prior of curvature P, the
  *  posterior covariance is C = (D + P)^-1 = C D C + C P C: the scatter of the optimum over noise and gains, and the spread
@@ -38,6 +35,8 @@ export interface BiasOfQuantity {
   /** Sum of the squared errors about the line; where `byOwnSpread`, each over its posterior's variance. */
   readonly squares: number;
   readonly byOwnSpread: boolean;
+  /** Root of the mean variance of the posteriors. */
+  readonly spread: number;
   /** Standard deviation of the errors about the line. */
   readonly scatter: number;
   readonly trials: number;
@@ -55,8 +54,6 @@ const SLOPE_PRIOR: Readonly<Record<Exclude<Quantity, 'position-angle'>, number>>
   'central-depression': 0.5,
 };
 const LEAST_TRIALS = 4;
-/** Trials that the posterior's own variance counts for. */
-const OWN_TRIALS = 1;
 /** The weight of the slope's prior depends on the variance that is found: fixed after three rounds to a thousandth. */
 const ROUNDS = 8;
 /** Draws that stand for one where an error is folded in; their scales are as many equally likely ones of its variance. */
@@ -95,25 +92,27 @@ function biasOfQuantity(trials: readonly Omit<Trial, 'result'>[], name: Quantity
   });
   const centre = isAngle ? 0 : mean(rows.map(({ value }) => value));
   const relative = isAngle ? rows.map(({ variance }) => variance) : rows.map(() => 1);
-  const own = isAngle ? 1 : mean(rows.map(({ variance }) => variance));
-  let factor = own;
+  const spread = Math.sqrt(mean(rows.map(({ variance }) => variance)));
+  let factor = isAngle ? 1 : spread * spread;
   const solveAt = (variance: number) => solve(rows, relative, centre, { factor: variance, slopePrior });
   let found = solveAt(factor);
   for (let k = 0; k < ROUNDS; k++) {
-    factor = varianceOf(own, found.squares, rows.length);
+    factor = found.squares / (rows.length - 1) + 1e-18;
     found = solveAt(factor);
   }
   const { offset, slope, covariance, squares } = found;
   const scatter = Math.sqrt((squares * mean(relative)) / (rows.length - 1));
-  return { offset, slope, centre, covariance, squares, byOwnSpread: isAngle, scatter, trials: rows.length };
-}
-
-function varianceOf(own: number, squares: number, trials: number): number {
-  return (OWN_TRIALS * own + squares) / degreesOf(trials);
-}
-
-function degreesOf(trials: number): number {
-  return OWN_TRIALS + trials - 1;
+  return {
+    offset,
+    slope,
+    centre,
+    covariance,
+    squares,
+    byOwnSpread: isAngle,
+    spread,
+    scatter,
+    trials: rows.length,
+  };
 }
 
 /** The line by least squares, each row of variance factor times its relative one. */
@@ -160,13 +159,14 @@ export function correctionAt(bias: BiasOfQuantity, value: number, deviation: num
   const from = bias.byOwnSpread ? 0 : value - bias.centre;
   const [varianceOfOffset, varianceOfSlope, covariance] = bias.covariance;
   const ofLine = varianceOfOffset + from * from * varianceOfSlope + 2 * from * covariance;
+  const degreesOfFreedom = bias.trials - 1;
   const own = deviation * deviation;
-  const squares = bias.byOwnSpread ? bias.squares * own : bias.squares;
+  const wider = (degreesOfFreedom + own / (bias.spread * bias.spread)) / bias.trials;
   return {
     shift: bias.offset + bias.slope * from,
-    scatter: Math.sqrt(varianceOf(own, squares, bias.trials)),
+    scatter: Math.sqrt((bias.squares / degreesOfFreedom) * (bias.byOwnSpread ? own : wider)),
     ofLine: Math.sqrt(Math.max(0, ofLine)),
-    degreesOfFreedom: degreesOf(bias.trials),
+    degreesOfFreedom,
   };
 }
 

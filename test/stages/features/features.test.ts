@@ -172,6 +172,7 @@ function steadyBias(offset: number, scatter: number): MethodBias {
     covariance: [0, 0, 0],
     squares: 0,
     byOwnSpread: false,
+    spread: 1,
     scatter: 0,
     trials,
   };
