@@ -4,13 +4,14 @@ import type { StageKind } from '../kind.ts';
 
 export const combine = {
   kind: 'combine',
-  version: 2,
+  version: 3,
   doc:
     'Brings numbers of several bands, days or recipes together: weighted mean with a variance between the sets, so that sets ' +
-    'which disagree beyond their errors widen the result; whether they are consistent. Angles are taken round the circle.',
+    'which disagree beyond their errors widen the result, the more the fewer they are; whether they are consistent. Angles ' +
+    'are taken round the circle.',
   source:
-    'Between-set variance: DerSimonian & Laird 1986, Controlled Clinical Trials 7, 177; consistency: Cochran 1954, Biometrics ' +
-    '10, 101. Circular statistics: Mardia & Jupp, Directional Statistics, section 2.2.',
+    'Between-set variance: DerSimonian & Laird 1986, Controlled Clinical Trials 7, 177; intervals: Hartung & Knapp 2001, Stat. ' +
+    'Med. 20, 3875; Knapp & Hartung 2003, Stat. Med. 22, 2693; consistency: Cochran 1954, Biometrics 10, 101. Circular statistics: Mardia & Jupp, Directional Statistics, section 2.2.',
   inputs: {
     numbers: {
       format: 'numbers',

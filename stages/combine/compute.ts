@@ -5,7 +5,7 @@ import { readNumbers, writeJson, writeNumbers } from '../formats/json.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import { angleDifference, circularMean, normalQuantile } from '../numerics/statistics.ts';
 import { InputProblem } from '../problem.ts';
-import { type Combined, combineSets, type SetValue } from './combine-sets.ts';
+import { type Combined, combineSets, type SetValue, stepTo } from './combine-sets.ts';
 
 const UNITS_OF_CIRCLE = ['deg'];
 /** Probability of the disagreement below which a warning is given. */
@@ -83,7 +83,7 @@ function combineNamed(
   // A position angle is given in [0, 360); its interval may run beyond.
   const turn = isAngle ? 360 * Math.floor(inPlace.value / 360) : 0;
   const combined = { ...inPlace, value: inPlace.value - turn };
-  const part = (p: number) => combined.value + normalQuantile(p) * combined.deviation;
+  const part = (p: number) => combined.value + stepTo(p, combined);
   return {
     name,
     combined,
@@ -95,7 +95,8 @@ function combineNamed(
       low95: part(0.025),
       high95: part(0.975),
       definition:
-        `Weighted mean of ${sets.length} sets with a variance between them; of uneven intervals half the width counts. ` +
+        `Weighted mean of ${sets.length} sets with a variance between them, intervals by Student's t of ${sets.length - 1} degrees of ` +
+        'freedom, none narrower than if the sets agreed; of uneven intervals half the width counts. ' +
         `Definition of each: ${found[0].definition}`,
     },
   };

@@ -5,22 +5,21 @@ import { readBasis } from '../formats/basis.ts';
 import { writeJson, writeNumbers } from '../formats/json.ts';
 import { readPosterior, readVariants } from '../formats/posterior.ts';
 import { readSkyImage } from '../formats/sky-image.ts';
+import { deepestDepression } from '../imaging/deepest-depression.ts';
 import { errorParts, partsRemark } from '../imaging/error-parts.ts';
 import { type MeasuredDraws, measureDraws } from '../imaging/measure-draws.ts';
 import {
   type Calibration,
-  LEAST_RINGS,
   makeRingNumbers,
   ringFraction,
   UAS_PER_RADIAN,
   widthViolated,
 } from '../imaging/ring-numbers.ts';
+import { type ModelsVerdict, ringVerdict } from '../imaging/ring-verdict.ts';
 import type { StageReport, StageTask } from '../kind.ts';
-import { makeDrawing } from '../numerics/draw.ts';
-import { blurredRing } from '../numerics/named-models.ts';
 import { measureRing, RING_LIMITS, type RingMeasurement } from '../numerics/ring.ts';
 import { median } from '../numerics/statistics.ts';
-import { type ModelsVerdict, readBias, readModels, readOthers } from './other-inputs.ts';
+import { readBias, readModels, readOthers } from './other-inputs.ts';
 
 export function compute(task: StageTask): StageReport {
   const basis = readBasis(task.inputs.basis[0]);
@@ -39,15 +38,16 @@ export function compute(task: StageTask): StageReport {
     bias,
     models,
     parts,
-    deepest: deepestDepression(draws, basis),
+    deepest: deepestOf(draws, basis),
   });
   const numbers =
     'diameter' in found.values ? { ...found, remarks: [...found.remarks, partsRemark(parts)] } : found;
+  const verdict = ringVerdict(ringFraction(draws), models);
   const warnings = findWarnings(ringFraction(draws), widthViolated(numbers), models);
   const image = task.inputs.image?.[0];
   writeNumbers(task.outputs.ring, numbers);
   writeJson(task.outputs.report, {
-    verdict: 'diameter' in numbers.values ? 'ring' : 'no ring',
+    verdict,
     draws: draws.count,
     withRing: draws.rings.length,
     reasonsAgainst: draws.reasons,
@@ -66,8 +66,13 @@ export function compute(task: StageTask): StageReport {
 function findWarnings(fraction: number, violated: string | null, models: ModelsVerdict | null): string[] {
   const warnings = violated === null ? [] : [violated];
   const percent = (100 * fraction).toFixed(0);
-  if (!(fraction >= LEAST_RINGS)) return [`no ring: only ${percent} % of the draws have one`];
-  if (models && !models.ringPreferred) return [`no ring: ${models.sentence}`];
+  const verdict = ringVerdict(fraction, models);
+  if (verdict === 'undecided')
+    return [`undecided: ${percent} % of the draws have a ring, but ${models?.sentence}`];
+  if (verdict === 'no ring') {
+    const isOfModels = models !== null && !models.ringPreferred;
+    return [isOfModels ? `no ring: ${models.sentence}` : `no ring: only ${percent} % of the draws have one`];
+  }
   return fraction < 0.95 ? [...warnings, `only ${percent} % of the draws have a ring`] : warnings;
 }
 
@@ -92,13 +97,13 @@ function inMicroarcsec(ring: RingMeasurement) {
   };
 }
 
-/** The depression of a ring without light inside, of the diameter and width that were measured; null without a ring. */
-function deepestDepression({ rings }: MeasuredDraws, { nx, ny, pixelRadians }: Basis): number | null {
+/** Of the diameter and width that were measured; null without a ring. */
+function deepestOf({ rings }: MeasuredDraws, basis: Basis): number | null {
   const widths = rings.flatMap(({ width }) => width ?? []);
   if (widths.length === 0) return null;
-  const width = median(widths);
-  const diameter = median(rings.map((ring) => ring.thinRingDiameter ?? ring.diameter));
-  const pixels = new Float64Array(nx * ny);
-  makeDrawing({ nx, ny, pixelRadians })(pixels, blurredRing(diameter, width));
-  return measureRing({ nx, ny, pixelRadians, pixels }).centralDepression;
+  return deepestDepression(
+    median(rings.map((ring) => ring.thinRingDiameter ?? ring.diameter)),
+    median(widths),
+    basis,
+  );
 }

@@ -4,11 +4,12 @@ import type { StageKind } from '../kind.ts';
 
 export const features = {
   kind: 'features',
-  version: 4,
+  version: 5,
   doc:
     'Measures the ring in every image of a posterior: diameter, width, asymmetry and position angle, central ' +
     "depression, roundness; medians with 68 % and 95 % intervals, corrected for the method's bias where it is known, and " +
-    'the parts of the error. Says `no ring` when most images have none or a model without one explains the data. With a ' +
+    'the parts of the error. Says `no ring` when most images have none or a model without one explains the data, and ' +
+    '`undecided` when most images have none and yet a model with one is preferred. With a ' +
     'calibration alpha it gives the angular gravitational radius, with a distance the mass, and what both assume.',
   source:
     'Definitions: stages/numerics/ring.ts and blurred-ring.ts. Quantiles: Hyndman & Fan 1996, Am. Stat. 50, 361, type 7. ' +
@@ -25,12 +26,12 @@ export const features = {
     bias: {
       format: 'json',
       optional: true,
-      doc: 'The bias that a stage of kind `injection` found: values are corrected by it, and its errors enter the intervals.',
+      doc: 'The bias that a stage of kind `injection` found: values are corrected by it, and the intervals are as wide as its errors.',
     },
     models: {
       format: 'json',
       optional: true,
-      doc: "The fit's comparison of geometric models: where it prefers none with a dark centre, there is no ring.",
+      doc: "The fit's comparison of geometric models: where it prefers none with a dark centre, there is no ring; where it prefers one, images without do not deny it.",
     },
     otherBasis: {
       format: 'basis',
@@ -82,7 +83,7 @@ export const features = {
   outputs: {
     ring: {
       format: 'numbers',
-      doc: 'The numbers of the ring; only `ring-fraction` when there is none.',
+      doc: 'The numbers of the ring; only `ring-fraction` when there is none or it is undecided.',
       numbers: [
         'diameter',
         'width',

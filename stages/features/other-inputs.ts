@@ -7,6 +7,7 @@ import { readJson } from '../formats/json.ts';
 import { readPosterior } from '../formats/posterior.ts';
 import type { Alternative } from '../imaging/error-parts.ts';
 import type { MethodBias } from '../imaging/method-bias.ts';
+import type { ModelsVerdict } from '../imaging/ring-verdict.ts';
 import { InputProblem } from '../problem.ts';
 
 const quantity = z.object({
@@ -14,6 +15,9 @@ const quantity = z.object({
   slope: z.number(),
   centre: z.number(),
   covariance: z.tuple([z.number(), z.number(), z.number()]),
+  squares: z.number().min(0),
+  byOwnSpread: z.boolean(),
+  spread: z.number().positive(),
   scatter: z.number().min(0),
   trials: z.number(),
 });
@@ -28,9 +32,7 @@ const biasSchema = z.object({
     })
     .nullable(),
 });
-const modelsSchema = z.object({ ringPreferred: z.boolean(), sentence: z.string() });
-
-export type ModelsVerdict = z.infer<typeof modelsSchema>;
+const modelsSchema = z.object({ ringPreferred: z.boolean(), centre: z.number(), sentence: z.string() });
 
 /** Null where the injections told nothing. @throws InputProblem when the document is no such thing */
 export function readBias(source: ByteSource): MethodBias | null {

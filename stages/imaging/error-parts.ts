@@ -1,7 +1,7 @@
 /** Where the error of a diameter comes from: each part a standard deviation, uas. */
 
 import type { Basis, Posterior } from '../data.ts';
-import { mean, median, standardDeviation } from '../numerics/statistics.ts';
+import { mean, median, quantiles, standardDeviation } from '../numerics/statistics.ts';
 import { type MeasuredDraws, measureDraws } from './measure-draws.ts';
 import type { BiasOfQuantity } from './method-bias.ts';
 import { correctionAt } from './method-bias.ts';
@@ -16,7 +16,7 @@ export interface ErrorParts {
   readonly components?: number;
   /** Between libraries. */
   readonly library?: number;
-  /** Of the method, as injections show it. */
+  /** Of the corrected diameter, as injections show it: that of noise and calibration is in it. */
   readonly method?: number;
 }
 
@@ -56,7 +56,7 @@ export function errorParts(draws: MeasuredDraws, { basis, variants, others, bias
     calibration: noise === undefined ? undefined : Math.sqrt(Math.max(0, total * total - noise * noise)),
     components: between(numbers),
     library: between(libraries),
-    method: bias === null ? undefined : correctionAt(bias, median(own)).deviation,
+    method: bias === null ? undefined : ofMethod(bias, own),
   };
   return Object.fromEntries(Object.entries(parts).filter(([, value]) => value !== undefined));
 }
@@ -78,6 +78,12 @@ function diametersOf({ rings }: MeasuredDraws): number[] {
 
 function medianOf(values: readonly number[]): number[] {
   return values.length === 0 ? [] : [median(values)];
+}
+
+function ofMethod(bias: BiasOfQuantity, own: readonly number[]): number {
+  const [low, middle, high] = quantiles(own, [0.16, 0.5, 0.84]);
+  const { scatter, ofLine } = correctionAt(bias, middle, (high - low) / 2);
+  return Math.sqrt(scatter * scatter + ofLine * ofLine);
 }
 
 /** Root of the mean square about the mean. */

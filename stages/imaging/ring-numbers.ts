@@ -3,11 +3,12 @@
 import type { Numbers, NumberValue } from '../data.ts';
 import { randomStream } from '../numerics/random.ts';
 import type { RingMeasurement } from '../numerics/ring.ts';
-import { angleDifference, circularMean, median, quantiles } from '../numerics/statistics.ts';
+import { angleDifference, circularMean, quantiles } from '../numerics/statistics.ts';
 import type { ErrorParts } from './error-parts.ts';
 import { massInSuns } from './gravitational-radius.ts';
 import type { MeasuredDraws } from './measure-draws.ts';
-import { type BiasOfQuantity, correctionAt, type MethodBias } from './method-bias.ts';
+import { type BiasOfQuantity, correctedDraws, type MethodBias } from './method-bias.ts';
+import { type ModelsVerdict, ringVerdict } from './ring-verdict.ts';
 
 export interface Calibration {
   readonly alpha?: number;
@@ -23,7 +24,7 @@ export interface Knowledge {
   /** The method's bias, from injections. */
   readonly bias?: MethodBias | null;
   /** Whether geometric models prefer a dark centre, and the sentence that says so. */
-  readonly models?: { readonly ringPreferred: boolean; readonly sentence: string } | null;
+  readonly models?: ModelsVerdict | null;
   readonly parts?: ErrorParts;
   /** The least depression that the resolution allows a ring of this size to show. */
   readonly deepest?: number | null;
@@ -31,8 +32,6 @@ export interface Knowledge {
 
 /** Microarcseconds per radian. */
 export const UAS_PER_RADIAN = 206264806247.09637;
-/** Part of the draws that must have a ring before numbers are given. */
-export const LEAST_RINGS = 0.5;
 
 const INTERVAL = 'Median of the posterior draws that have a ring, with 68 % and 95 % intervals. ';
 
@@ -46,7 +45,7 @@ const DEFINITIONS = {
     'with intervals about it, which may run below 0 or above 360.',
   'central-depression':
     'Mean brightness within a quarter of the ridge radius over the mean brightness on the ridge: 0 is black, 1 no ' +
-    'depression. A contrast at the resolution of the image.',
+    'depression. A contrast at the resolution of the image. An interval that reaches 0 does not tell it from black.',
   roundness: 'Short axis over long axis of the ridge, from the second Fourier mode of its radii.',
   'thin-ring-diameter':
     'Diameter of a thin ring that, blurred by a Gaussian, has this ridge and width; the blur makes the ridge smaller by ' +
@@ -57,16 +56,23 @@ const DARK_CENTRE =
   'The dark centre is a measured contrast. It is no picture of a horizon and no proof of one.';
 const PARTS: Readonly<Record<keyof ErrorParts, string>> = {
   noise:
-    'Part of the error of the diameter that noise alone makes: standard deviation while the gains are held.',
+    'Part of the error of the uncorrected diameter that noise alone makes: standard deviation of the posterior while the gains are held.',
   // A variance of 60 draws is good to sqrt(2/60) = 18 %, the root of which is 0.43.
   calibration:
     'Part that the gains add to that of the noise, in quadrature; below 0.4 of the noise it is not told from none.',
   components: 'Spread between the numbers of components that held-out data admit.',
   library: 'Spread between fits in other libraries.',
-  method: "What is not known of the method's bias: scatter of injected rings and error of the correction.",
+  method:
+    'Error of the corrected diameter as injected rings show it: noise and gains drawn anew, what the method does to one ' +
+    'more than to another, and the error of the correction. The interval is of this width; the parts of noise and ' +
+    'calibration are in it.',
 };
-/** Draws that stand for one, where an error is folded in. */
-const COPIES = 8;
+/** A brightness is not negative, and a centre as bright as the ring is no depression; a first mode of what is not negative
+ *  is at most its mean. Draws of an image whose pixels may fall below 0 by a little, and corrections, may lie beyond. */
+export const BOUNDS: Readonly<Record<string, readonly [number, number]>> = {
+  'central-depression': [0, 1],
+  asymmetry: [0, 1],
+};
 const BIAS =
   "The intervals are those of the posterior. They do not hold the method's own bias, which is measured by injecting " +
   'known sources into the same coverage.';
@@ -112,11 +118,15 @@ export function makeRingNumbers(
 }
 
 /** Why no number of a ring is given; null when they are. */
-function reasonAgainst(draws: MeasuredDraws, models: Knowledge['models']): string | null {
-  if (!(ringFraction(draws) >= LEAST_RINGS))
-    return `No ring: ${draws.rings.length} of ${draws.count} draws have one, so no number of a ring is given.`;
-  if (models && !models.ringPreferred) return `No ring: ${models.sentence} So no number of a ring is given.`;
-  return null;
+function reasonAgainst(draws: MeasuredDraws, models: ModelsVerdict | null): string | null {
+  const verdict = ringVerdict(ringFraction(draws), models);
+  if (verdict === 'ring') return null;
+  const found = `${draws.rings.length} of ${draws.count} draws have one`;
+  if (verdict === 'undecided')
+    return `Undecided: ${found}, though of geometric models one with a dark centre is preferred: ${models?.sentence} No number of a ring is given, since the draws that have one are the clearest.`;
+  return models && !models.ringPreferred
+    ? `No ring: ${models.sentence} So no number of a ring is given.`
+    : `No ring: ${found}, so no number of a ring is given.`;
 }
 
 function correctedRemark({ diameter, width }: MethodBias): string {
@@ -124,23 +134,23 @@ function correctedRemark({ diameter, width }: MethodBias): string {
     `${(-offset).toFixed(2)} uas with a scatter of ${scatter.toFixed(2)} uas`;
   return (
     `Values are corrected for the method's own bias, measured on ${diameter.trials} rings injected into the same coverage: ` +
-    `the diameter by ${shown(diameter)}, the width by ${shown(width)}. The intervals hold the error of the correction and ` +
-    'the scatter; `-uncorrected` stands beside the diameter.'
+    `the diameter by ${shown(diameter)}, the width by ${shown(width)}. The intervals are as wide as the errors of these rings, ` +
+    "which hold noise and gains, and the error of the correction; the posterior's own interval stands with " +
+    '`diameter-uncorrected`.'
   );
 }
 
-/** Draws with the bias taken out and its error put in: each stands for several, spread as the error is. */
+/** Draws with the bias taken out, as wide as the injections say; cut at what cannot be passed. A cut moves no quantile that
+ *  stands inside, and no interval loses a truth by it. */
 function corrected(
   values: readonly number[],
   bias: BiasOfQuantity | undefined,
   name: string,
 ): readonly number[] {
-  if (bias === undefined) return values;
-  const { shift, deviation } = correctionAt(bias, median(values));
-  const random = randomStream(1, `method bias of the ${name}`);
-  return values.flatMap((value) =>
-    Array.from({ length: COPIES }, () => value - shift + deviation * random.normal()),
-  );
+  const moved =
+    bias === undefined ? values : correctedDraws(values, bias, randomStream(1, `method bias of the ${name}`));
+  const bounds = BOUNDS[name];
+  return bounds === undefined ? moved : moved.map((value) => Math.min(bounds[1], Math.max(bounds[0], value)));
 }
 
 function partValues(parts: ErrorParts): Record<string, NumberValue> {

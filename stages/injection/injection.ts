@@ -4,13 +4,15 @@ import type { StageKind } from '../kind.ts';
 
 export const injection = {
   kind: 'injection',
-  version: 4,
+  version: 5,
   doc:
     "Measures the method's own error: rings of known size, about as large as the one that was found, are observed through " +
     'the same (u,v) points with the same noise and gains, fitted the same way and measured the same way. The difference of ' +
-    'what comes out to what went in gives the bias of every quantity with its error, and how much the method scatters.',
+    'what comes out to what went in gives the bias of every quantity with its error, and how much the method scatters over ' +
+    'noise, gains and rings: the error of a corrected value, in place of the width of its posterior.',
   source:
-    'Common practice; scatter by Paule & Mandel 1982, J. Res. Natl. Bur. Stand. 87, 377. Truths are measured at the ' +
+    'Common practice; regression: Gelman et al., Bayesian Data Analysis, 3rd ed., section 14.2; what a posterior holds and ' +
+    'injections hold too: Rodgers, Inverse Methods for Atmospheric Sounding, 2000, section 3.2. Truths are measured at the ' +
     'resolution of the basis, as in stages/simulate.',
   inputs: {
     visibilities: { format: 'visibilities', doc: 'The visibilities that were fitted.' },
@@ -24,8 +26,8 @@ export const injection = {
       from: 4,
       to: 1000,
       default: 12,
-      doc: 'Rings to inject.',
-      why: 'The bias of a diameter is then known to a quarter of the error of one.',
+      doc: 'Rings to inject; where some do not come out as rings, up to as many again.',
+      why: 'The bias of a diameter is then known to a third of the error of one, and that error to a fifth.',
     },
     starts: {
       type: 'integer',

@@ -11,6 +11,7 @@ import { type FamilySummary, judge, type Suite, summarise } from './summarise.ts
 const quantity = z.object({
   truth: z.number(),
   measured: z.number(),
+  spread: z.number(),
   corrected: z.number(),
   low: z.number(),
   high: z.number(),
@@ -26,7 +27,7 @@ const schema = z.object({
     z.object({
       family: z.string(),
       isRing: z.boolean(),
-      isFound: z.boolean(),
+      verdict: z.enum(['ring', 'undecided', 'no ring']),
       hasTruth: z.boolean(),
       quantities: z
         .object({
@@ -73,7 +74,7 @@ function readSuite(source: ByteSource): Suite {
 }
 
 function valuesOf(summary: ReturnType<typeof summarise>): Record<string, NumberValue> {
-  const { all, families, noRing, uniformity, pull, observations } = summary;
+  const { all, families, noRing, ringsDenied, uniformity, pull, observations } = summary;
   const plain = (value: number, unit: string, definition: string): NumberValue => ({
     value,
     unit,
@@ -82,10 +83,18 @@ function valuesOf(summary: ReturnType<typeof summarise>): Record<string, NumberV
   const values: Record<string, NumberValue> = {
     observations: plain(observations, '', 'Synthetic observations in the suite.'),
     'rings-found': proportion(all.found, 'Part of the resolved rings that are called one.'),
+    ...(ringsDenied === null
+      ? {}
+      : {
+          'rings-denied': proportion(
+            ringsDenied,
+            'Part of the resolved rings that are called `no ring`; the rest of those that are not found is undecided.',
+          ),
+        }),
     ...(noRing === null
       ? {}
       : {
-          'no-ring-right': proportion(noRing, 'Part of the sources that are no ring and are not called one.'),
+          'no-ring-right': proportion(noRing, 'Part of the sources that are no ring and are called so.'),
         }),
     ...familyValues('', all),
     ...(uniformity === null
@@ -113,10 +122,7 @@ function valuesOf(summary: ReturnType<typeof summarise>): Record<string, NumberV
   return values;
 }
 
-function familyValues(
-  suffix: string,
-  { quantities, coverage68, coverage95 }: FamilySummary,
-): Record<string, NumberValue> {
+function familyValues(suffix: string, { quantities }: FamilySummary): Record<string, NumberValue> {
   const { diameter, width, 'position-angle': angle, 'central-depression': depression } = quantities;
   if (diameter === undefined || width === undefined || angle === undefined || depression === undefined)
     return {};
@@ -135,15 +141,20 @@ function familyValues(
   return {
     [`diameter-bias${suffix}`]: bias(diameter, 'uas', 'diameters'),
     [`diameter-scatter${suffix}`]: scatter(diameter, 'uas', 'diameters'),
+    [`diameter-interval${suffix}`]: {
+      value: diameter.half,
+      unit: 'uas',
+      definition: `Mean of half the 68 % intervals of the diameter; of the posteriors before any correction ${diameter.spread.toFixed(2)} uas.`,
+    },
     [`width-bias${suffix}`]: bias(width, 'uas', 'widths'),
     [`position-angle-bias${suffix}`]: bias(angle, 'deg', 'position angles'),
     [`depression-bias${suffix}`]: bias(depression, '', 'central depressions'),
     [`coverage-68${suffix}`]: proportion(
-      coverage68,
+      diameter.coverage68,
       'Part of the 68 % intervals of the diameter that hold the truth.',
     ),
     [`coverage-95${suffix}`]: proportion(
-      coverage95,
+      diameter.coverage95,
       'Part of the 95 % intervals of the diameter that hold the truth.',
     ),
   };

@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
 
 export const recoverySummary = {
   kind: 'recovery-summary',
-  version: 1,
+  version: 2,
   doc:
     'Brings the observations of stages of kind `truth-recovery` together, family by family: bias and scatter of every quantity, ' +
     'how often the intervals hold the truth, with binomial bounds, whether the ranks of the truths are uniform, how often ' +

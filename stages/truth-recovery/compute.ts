@@ -5,17 +5,18 @@ import { readBasis } from '../formats/basis.ts';
 import { writeJson } from '../formats/json.ts';
 import { readVisibilities } from '../formats/visibilities.ts';
 import { compareModels } from '../imaging/geometric/compare-models.ts';
-import { injectedRings } from '../imaging/injected-rings.ts';
-import { basisVisibilities } from '../imaging/linear-model.ts';
-import { LEAST_RINGS } from '../imaging/ring-numbers.ts';
+import { type AboutRing, aboutRing, ringIn, type SeenRing, withoutBias } from '../imaging/injected-rings.ts';
+import { basisVisibilities, imageAt } from '../imaging/linear-model.ts';
+import { LEAST_RINGS, type RingVerdict, ringVerdict } from '../imaging/ring-verdict.ts';
 import { longestBaseline, selectRows } from '../imaging/select-rows.ts';
 import type { FitSettings } from '../imaging/settings.ts';
 import { runTrial, type Trial } from '../imaging/trial.ts';
+import { visibleRings } from '../imaging/visible-rings.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import type { Model } from '../numerics/models.ts';
 import { randomStream } from '../numerics/random.ts';
 import { median } from '../numerics/statistics.ts';
-import { correctedTrial, nearestBias } from './corrected-trial.ts';
+import { correctedTrial, nearestBias, nearestTrials, type TrialNumbers } from './corrected-trial.ts';
 import { TRUTH_FAMILIES, type TruthFamily } from './truth-families.ts';
 
 interface Parameters {
@@ -33,9 +34,8 @@ interface Parameters {
 const DRAWS = 60;
 const INJECTION_DRAWS = 30;
 const LIBRARY_STRIDE = 5;
-/** Injected rings are drawn about three sizes, so that all are near some. */
-const ABOUT = [36, 45, 55];
-const UAS = Math.PI / (180 * 3600e6);
+/** As many as a stage of kind `injection` starts with. */
+const PILOTS = 4;
 /** Of the ring families one observation each is fitted in the other basis. */
 const PULLED_FAMILIES = 12;
 
@@ -45,33 +45,55 @@ export function compute(task: StageTask): StageReport {
   const basis = readBasis(task.inputs.basis[0]);
   const bench = makeBench(visibilities, basis, parameters);
   const planned = plan(parameters);
-  const work = parameters.injections + 3 * planned.length;
+  const work = planned.length * (2 + 2 * parameters.injections);
   let done = 0;
   const step = (weight: number) => {
     done += weight;
     task.progress(Math.min(1, done / work));
   };
-  const injected = sourcesToInject(parameters).map((source, k) => {
-    const trial = bench(source, parameters.seed + 5000 + k, INJECTION_DRAWS);
-    step(1);
-    return trial;
-  });
-  task.note('injected', { rings: injected.length });
-  const trials = planned.map(({ family, number }) => {
-    const random = randomStream(parameters.seed, `truth ${family.family} ${number}`);
-    const trial = bench(withFlux(family.make(random), parameters.flux), parameters.seed + 97 * number, DRAWS);
-    const verdict = parameters.models ? compareModels(trial.result.problem, trial.result.best.x) : null;
-    step(3);
-    const isFound = trial.ringFraction >= LEAST_RINGS && (verdict?.ringPreferred ?? true);
+  const observed = planned.map(({ family, number }): Observed => {
+    const { source, seed } = observationOf(family, number, parameters);
+    const { result, ...trial } = bench(source, seed, DRAWS);
+    const isDoubtful = !family.isRing || trial.ringFraction < LEAST_RINGS;
+    const asks = parameters.models && (number === 0 || isDoubtful);
+    const models = asks ? compareModels(result.problem, result.best.x) : null;
+    step(2);
     return {
-      family: family.family,
-      isRing: family.isRing,
-      ringFraction: trial.ringFraction,
-      ringPreferred: verdict?.ringPreferred ?? null,
-      isFound,
-      ...correctedTrial(trial, nearestBias(injected, trial)),
+      family,
+      number,
+      trial,
+      seen: ringIn({ ...basis, pixels: imageAt(result.problem.model, basis, result.best.x) }),
+      ringPreferred: models?.ringPreferred ?? null,
+      verdict: ringVerdict(trial.ringFraction, models),
     };
   });
+  // As a stage of kind `injection` does: first about what was seen, then about that without its bias.
+  const inject = (pilots: readonly TrialNumbers[]) =>
+    observed.flatMap(({ family, number, seen, trial, verdict }) => {
+      step(parameters.injections);
+      if (seen === null || verdict !== 'ring') return [];
+      const name = `${pilots.length > 0 ? 'injection' : 'pilot'} ${family.family} ${number}`;
+      const about = aboutRing(withoutBias(seen, nearestTrials(pilots, trial, PILOTS)), basis);
+      return ringsAbout(basis, about, name, parameters).map((source, k) => {
+        const { result: _, ...rest } = bench(
+          source,
+          ownSeed(parameters.seed, `${name} ${k}`),
+          INJECTION_DRAWS,
+        );
+        return rest;
+      });
+    });
+  const pilots = inject([]);
+  const injected = [...pilots, ...inject(pilots)];
+  task.note('injected', { rings: injected.length });
+  const trials = observed.map(({ family, trial, ringPreferred, verdict }) => ({
+    family: family.family,
+    isRing: family.isRing,
+    ringFraction: trial.ringFraction,
+    ringPreferred,
+    verdict,
+    ...correctedTrial(trial, nearestBias(injected, trial)),
+  }));
   const pulls = task.inputs.otherBasis ? pullOf(task, parameters, visibilities, basis, planned) : [];
   writeJson(task.outputs.trials, {
     remark: 'All sources are invented.',
@@ -119,6 +141,14 @@ function makeBench(visibilities: Visibilities, basis: Basis, { components, flux,
     });
 }
 
+interface Observed extends Planned {
+  readonly trial: TrialNumbers;
+  /** In the image of the optimum. */
+  readonly seen: SeenRing | null;
+  readonly ringPreferred: boolean | null;
+  readonly verdict: RingVerdict;
+}
+
 interface Planned {
   readonly family: TruthFamily;
   readonly number: number;
@@ -127,18 +157,36 @@ interface Planned {
 /** All observations, or an even part of them; at least one. */
 function plan({ each, part }: Parameters): Planned[] {
   const all = Array.from({ length: each }, (_, number) =>
-    TRUTH_FAMILIES.map((family) => ({ family, number })),
+    TRUTH_FAMILIES.flatMap((family) =>
+      Array.from({ length: family.times }, (_, k) => ({ family, number: number * family.times + k })),
+    ),
   ).flat();
   const count = Math.max(1, Math.round(part * all.length));
   return Array.from({ length: count }, (_, k) => all[Math.floor(((k + 0.5) * all.length) / count)]);
 }
 
-function sourcesToInject({ injections, flux, seed }: Parameters): Model[] {
-  return ABOUT.flatMap((diameter, k) => {
-    const count = Math.ceil((injections - k) / ABOUT.length);
-    const about = { diameter: diameter * UAS, width: 11 * UAS, asymmetry: 0.15 };
-    return injectedRings(about, flux, count, seed + 1000 + k);
-  });
+/** As a stage of kind `injection` would inject them, only fewer: neighbours lend theirs. */
+function ringsAbout(
+  basis: Basis,
+  about: AboutRing,
+  name: string,
+  { injections, flux, seed }: Parameters,
+): Model[] {
+  return visibleRings(basis, { about, flux, count: injections, seed: ownSeed(seed, name) });
+}
+
+/** A source, and the seed of its noise and gains. Every observation has its own: were families to share one, they would share
+ *  the error that it makes, and hundreds of observations would tell no more than a few. */
+function observationOf({ family, make }: TruthFamily, number: number, { seed, flux }: Parameters) {
+  const name = `${family} ${number}`;
+  return {
+    source: withFlux(make(randomStream(seed, `truth ${name}`)), flux),
+    seed: ownSeed(seed, `observation ${name}`),
+  };
+}
+
+function ownSeed(seed: number, name: string): number {
+  return randomStream(seed, name).integer(0, 2147483647);
 }
 
 function withFlux(model: Model, flux: number): Model {
@@ -159,11 +207,8 @@ function pullOf(
     .filter(({ family, number }) => family.isRing && number === 0)
     .slice(0, PULLED_FAMILIES);
   return rings.map(({ family, number }) => {
-    const source = withFlux(
-      family.make(randomStream(parameters.seed, `truth ${family.family} ${number}`)),
-      parameters.flux,
-    );
-    const [a, b] = [own, others].map((bench) => bench(source, parameters.seed + 97 * number, DRAWS));
+    const { source, seed } = observationOf(family, number, parameters);
+    const [a, b] = [own, others].map((bench) => bench(source, seed, DRAWS));
     const diameters = [a, b].map(({ draws, ringFraction }) =>
       ringFraction >= LEAST_RINGS ? median(draws.diameter) : null,
     );

@@ -11,6 +11,8 @@ const DEGREE = Math.PI / 180;
 export interface TruthFamily {
   readonly family: string;
   readonly isRing: boolean;
+  /** How many observations of it there are for one of a family of rings of one size and width. */
+  readonly times: number;
   /** At unit flux, the centroid at the origin. */
   make(random: RandomStream): Model;
 }
@@ -28,10 +30,11 @@ interface RingShape {
 /** Of each size, drawn about the stated one. */
 const SPREAD = 0.04;
 
-function ring(family: string, shape: RingShape): TruthFamily {
+function ring(family: string, shape: RingShape, times = 1): TruthFamily {
   return {
     family,
     isRing: true,
+    times,
     make(random) {
       const about = (value: number) => value * (1 + SPREAD * (2 * random.uniform() - 1));
       const diameter = about(shape.diameter) * UAS;
@@ -59,21 +62,23 @@ function ring(family: string, shape: RingShape): TruthFamily {
 }
 
 function other(family: string, make: (random: RandomStream) => Model): TruthFamily {
-  return { family, isRing: false, make: (random) => centredModel(make(random)) };
+  return { family, isRing: false, times: 1, make: (random) => centredModel(make(random)) };
 }
 
 const DIAMETERS = [34, 40, 46, 52, 58];
 const WIDTHS = [8, 11, 14];
+/** Times of a family that is judged by itself: as many as there are widths of rings of one diameter, which are judged together. */
+const ALONE = 3;
 
 /** In the order in which they are gone through. A ring of 34 uas and width 14 is not resolved by the demonstration's basis; such
  *  truths count as having no ring, and are reported apart. */
 export const TRUTH_FAMILIES: readonly TruthFamily[] = [
-  ring('symmetric-ring', { diameter: 44, width: 11 }),
+  ring('symmetric-ring', { diameter: 44, width: 11 }, ALONE),
   ...[0, 90, 180, 270].map((angle) =>
     ring(`crescent-${angle}`, { diameter: 45, width: 11, asymmetry: 0.25, angle }),
   ),
-  ring('ring-with-spot', { diameter: 45, width: 10, asymmetry: 0.1, spot: 0.12 }),
-  ring('elliptical-ring', { diameter: 48, width: 11, asymmetry: 0.1, axisRatio: 0.88 }),
+  ring('ring-with-spot', { diameter: 45, width: 10, asymmetry: 0.1, spot: 0.12 }, ALONE),
+  ring('elliptical-ring', { diameter: 48, width: 11, asymmetry: 0.1, axisRatio: 0.88 }, ALONE),
   ...DIAMETERS.flatMap((diameter) =>
     WIDTHS.map((width) => ring(`ring-${diameter}-${width}`, { diameter, width, asymmetry: 0.15 })),
   ),

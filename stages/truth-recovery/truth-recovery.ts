@@ -1,10 +1,21 @@
-/** Declaration of the kind `truth-recovery`: what the whole method makes of sources that are known. */
+/** Declaration of the kind `truth-recovery`: what the whole method makes of sources that are known.
+ *
+ *  What the ranks are. Strict simulation-based calibration (Talts et al. 2018, theorem 1) draws the truth from the prior; the
+ *  ranks of truths among draws of the posterior are then uniform if the computation is right, and tell nothing else. That is
+ *  test/long/sampler-coverage.test.ts. Here the truths are rings of families that no prior of the library was made of, and
+ *  the ranks are those of true diameters among the corrected draws: the probability integral transform of what is published
+ *  (Dawid 1984, J. R. Stat. Soc. A 147, 278; Gneiting, Balabdaoui & Raftery 2007, J. R. Stat. Soc. B 69, 243). Uniform they are if
+ *  published values are off as often and as far as their intervals say, over these families; a slope of the histogram is a
+ *  bias, a hump in its middle are intervals that are too wide.
+ *
+ *  Every observation has noise and gains of its own. While the families of a round shared them (until version 1), 75
+ *  observations of a stage told of three realisations: their common error stood as a bias of 0.2 uas and as uneven ranks. */
 
 import type { StageKind } from '../kind.ts';
 
 export const truthRecovery = {
   kind: 'truth-recovery',
-  version: 2,
+  version: 3,
   doc:
     'Observes known sources through the rows of given visibilities, fits and measures each as a pipeline would, corrects it ' +
     "for the method's bias from rings injected into the same coverage, and notes what was found beside the truth: rings of " +
@@ -28,9 +39,9 @@ export const truthRecovery = {
       type: 'integer',
       from: 1,
       to: 1000,
-      default: 3,
-      doc: 'Observations of every family of truths.',
-      why: 'With two coverages and two noise levels that makes 300.',
+      default: 4,
+      doc: 'Observations of every family of truths; of those that are judged by themselves three times as many.',
+      why: 'With two coverages and two noise levels that makes 496, at most 48 of what is judged together: a coverage is then known to 7 %.',
     },
     part: {
       type: 'number',
@@ -75,17 +86,21 @@ export const truthRecovery = {
     },
     injections: {
       type: 'integer',
-      from: 8,
-      to: 10000,
-      default: 64,
-      doc: 'Rings that are injected over the whole range of sizes; each observation is corrected by the nearest ones.',
-      why: 'Sixteen near ones, as a stage of kind `injection` would make about the ring that was found.',
+      from: 1,
+      to: 100,
+      default: 1,
+      doc:
+        'Rings that are injected about every ring that is found, and again about it without its bias; each observation is ' +
+        'corrected by the twelve that came out most like it, its own and those of its neighbours.',
+      why: 'Twelve are what a stage of kind `injection` makes about a ring. With two each of a hundred, few share many.',
     },
     models: {
       type: 'boolean',
       default: true,
-      doc: 'Whether geometric models have a say in what is a ring.',
-      why: 'They have in a pipeline.',
+      doc:
+        'Whether geometric models have a say in what is a ring: for every source that is none, every ring that most draws do ' +
+        'not show, and the first of each family.',
+      why: 'They have in a pipeline. A second each; of 40 rings that most draws show they contradicted none.',
     },
     seed: { type: 'integer', from: 0, to: 2147483647, default: 1, doc: 'Seed of sources, gains and noise.' },
   },

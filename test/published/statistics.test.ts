@@ -9,6 +9,7 @@ import {
   normalQuantile,
   quantiles,
 } from '../../stages/numerics/statistics.ts';
+import { studentQuantile } from '../../stages/numerics/student.ts';
 
 const CHI_SQUARE: Record<number, Record<string, number>> = {
   1: {
@@ -152,6 +153,30 @@ test('gives the published quantiles of the normal distribution', () => {
     // The condition of p near 1 is 1/(1-p): 1e-16/1e-6.
     expect(Math.abs(normalQuantile(Number(p)) - value), p).toBeLessThan(Number(p) > 0.9999 ? 1e-10 : 1e-12);
   }
+});
+
+// Digits by scipy 1.17.1, t.ppf; the NIST/SEMATECH e-Handbook, section 1.3.6.7.2, has those of 0.975 to three places: 12.706,
+// 4.303, 3.182, 2.306, 2.201, 2.042.
+const STUDENT: Record<number, readonly [number, number, number]> = {
+  1: [1.8189932472810662, 12.706204736174694, 318.30883898555015],
+  2: [1.311578474677781, 4.302652729749462, 22.327124770119866],
+  3: [1.1889286364770157, 3.1824463052837078, 10.214531852407383],
+  8: [1.0602240025299015, 2.306004135204166, 4.5007909337237235],
+  11: [1.0414860121177405, 2.200985160091639, 4.024701037630738],
+  30: [1.0112157453924326, 2.0422724563012378, 3.3851848668293045],
+  101: [0.9993778723357952, 1.983731002955606, 3.1728926657405694],
+};
+
+test("gives the published quantiles of Student's t", () => {
+  for (const [nu, row] of Object.entries(STUDENT)) {
+    [0.84, 0.975, 0.999].forEach((p, k) => {
+      // A digit is lost where the angle is near 90 degrees.
+      expect(Math.abs(studentQuantile(p, Number(nu)) / row[k] - 1), `${p} of ${nu}`).toBeLessThan(1e-11);
+      expect(studentQuantile(1 - p, Number(nu))).toBeCloseTo(-studentQuantile(p, Number(nu)), 8);
+    });
+  }
+  expect(studentQuantile(0.5, 4)).toBeCloseTo(0, 14);
+  expect(() => studentQuantile(1, 3)).toThrow('needs p in (0, 1)');
 });
 
 test('interpolates quantiles as type 7 does', () => {

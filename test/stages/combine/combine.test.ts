@@ -2,7 +2,7 @@
 
 import { expect, test } from 'vitest';
 import { memorySink, sourceOf } from '../../../stages/bytes.ts';
-import { combineSets } from '../../../stages/combine/combine-sets.ts';
+import { combineSets, stepTo } from '../../../stages/combine/combine-sets.ts';
 import { compute } from '../../../stages/combine/compute.ts';
 import type { NumberValue } from '../../../stages/data.ts';
 import { readNumbers, writeNumbers } from '../../../stages/formats/json.ts';
@@ -24,6 +24,9 @@ test('combines two sets as by hand', () => {
   });
   expect(found.probability).toBeCloseTo(0.1573, 4);
   expect(found.sets.map(({ weight }) => weight)).toEqual([0.5, 0.5]);
+  // Hartung and Knapp 2001: q = (2/4 + 2/4) / 1 = 1, variance 1 / 4; quantile of one degree of freedom: tan(0.34 pi).
+  expect(found.deviationByScatter).toBeCloseTo(0.5, 14);
+  expect(stepTo(0.84, found)).toBeCloseTo(0.5 * Math.tan(0.34 * Math.PI), 12);
 });
 
 // statsmodels 0.15.0, combine_effects(value, variance, method_re='chi2', use_t=False): tau2, q, sd_eff_w_re, mean_effect_re,
@@ -38,6 +41,10 @@ test('gives what an independent package gives', () => {
   expect(found.value).toBeCloseTo(62.39013860445034, 10);
   expect(found.deviation).toBeCloseTo(0.24574966804039602, 10);
   expect(found.sets[7].weight).toBeCloseTo(0.19447125, 7);
+  // The same with use_t=True: sd_eff_w_re_hksj and the interval of 95 % of `random effect wls`, by Hartung and Knapp.
+  expect(found.deviationByScatter).toBeCloseTo(0.29477605699884035, 10);
+  expect(found.value + stepTo(0.025, found)).toBeCloseTo(61.710383798051836, 9);
+  expect(found.value + stepTo(0.975, found)).toBeCloseTo(63.06989341084885, 9);
 });
 
 // By hand: equal sets have no variance between them, and weights 100 and 25.
@@ -51,22 +58,27 @@ test('is the plain weighted mean where sets agree', () => {
   expect(found.deviation).toBeCloseTo(1 / Math.sqrt(125), 12);
 });
 
-// Identity: sets drawn with a known variance between them; the result covers the truth as often as it says.
-test('covers the truth where the sets scatter', () => {
+// Identity: sets drawn with a known variance between them; the result covers the truth as often as it says, few or many.
+test('covers the truth where sets scatter, however few they are', () => {
   const random = randomStream(8, 'sets');
-  let inside = 0;
-  const trials = 400;
-  for (let k = 0; k < trials; k++) {
-    const sets = Array.from({ length: 12 }, () => {
-      const deviation = random.between(0.2, 0.6);
-      return { value: 42 + 0.5 * random.normal() + deviation * random.normal(), deviation };
-    });
-    const { value, deviation } = combineSets(sets);
-    if (Math.abs(value - 42) < deviation) inside++;
+  const trials = 1000;
+  for (const count of [2, 4, 12]) {
+    const inside = { 68: 0, 95: 0 };
+    for (let k = 0; k < trials; k++) {
+      const sets = Array.from({ length: count }, () => ({
+        value: 42 + random.normal() + 0.5 * random.normal(),
+        deviation: 0.5,
+      }));
+      const found = combineSets(sets);
+      const off = Math.abs(found.value - 42);
+      if (off < stepTo(0.84, found)) inside[68]++;
+      if (off < stepTo(0.975, found)) inside[95]++;
+    }
+    // Student's t is exact for equal errors; the interval of sets that agree adds a few hundredths. Binomial, four deviations.
+    expect(inside[68] / trials, `${count} sets`).toBeGreaterThan(0.68 - 0.06);
+    expect(inside[68] / trials, `${count} sets`).toBeLessThan(0.71 + 0.06);
+    expect(inside[95] / trials, `${count} sets`).toBeGreaterThan(0.95 - 0.028);
   }
-  // Binomial: 0.68 of 400 within four standard deviations, less what the estimate of the variance costs (common practice).
-  expect(inside / trials).toBeGreaterThan(0.58);
-  expect(inside / trials).toBeLessThan(0.78);
 });
 
 const number = (value: number, half: number, unit: string): NumberValue => ({

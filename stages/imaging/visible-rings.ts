@@ -2,10 +2,10 @@
  *  true diameter, and a trial of it would tell nothing. */
 
 import type { Basis } from '../data.ts';
-import { type AboutRing, injectedRings } from '../imaging/injected-rings.ts';
-import { imageAtResolution } from '../imaging/trial.ts';
 import type { Model } from '../numerics/models.ts';
 import { measureRing } from '../numerics/ring.ts';
+import { type AboutRing, injectedRings } from './injected-rings.ts';
+import { imageAtResolution } from './trial.ts';
 
 /** How often another ring is drawn in place of one that is none; each time from the same part of the range of diameters. */
 const ATTEMPTS = 6;
