@@ -4,8 +4,8 @@ import { defineConfig } from 'vitest/config';
 
 export default defineConfig({
   test: {
-    // Damage to a ledger at every byte: `npm test` takes every third.
-    include: ['test/long/**/*.test.ts', 'test/ledger/damage.test.ts'],
+    // Damage to a ledger at every byte, of which `npm test` takes every third, and to large files of data at every card.
+    include: ['test/long/**/*.test.ts', 'test/ledger/damage.test.ts', 'test/stages/formats/damage.test.ts'],
     env: { PLATEBOOK_EVERY_BYTE: '1' },
     globalSetup: ['test/temporary-folder.ts'],
     setupFiles: ['test/property-seed.ts'],

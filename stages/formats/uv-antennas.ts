@@ -198,7 +198,6 @@ export function readFrequencySetups(source: ByteSource, hdus: readonly Hdu[]): F
 }
 
 function setupsOf(table: Table): FrequencySetup[] {
-  if (table.rows === 0) return [];
   const offsets = table.column('IF FREQ');
   const bands = offsets.repeat;
   const values = offsets.numbers();
