@@ -25,7 +25,7 @@ export function compute(task: StageTask): StageReport {
   const basis = readBasis(task.inputs.basis[0]);
   const posterior = readPosterior(task.inputs.samples[0]);
   const draws = measureDraws(basis, posterior, task.progress);
-  const bias = task.inputs.bias ? readBias(task.inputs.bias[0]) : null;
+  const bias = task.inputs.bias ? readBias(task.inputs.bias) : null;
   const models = task.inputs.models ? readModels(task.inputs.models[0]) : null;
   const parts = errorParts(draws, {
     basis,

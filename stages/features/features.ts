@@ -26,7 +26,10 @@ export const features = {
     bias: {
       format: 'json',
       optional: true,
-      doc: 'The bias that a stage of kind `injection` found: values are corrected by it, and the intervals are as wide as its errors.',
+      many: true,
+      doc:
+        'The bias that one stage of kind `injection` found, or several of different seeds together: values are corrected by it, ' +
+        'and the intervals are as wide as its errors.',
     },
     models: {
       format: 'json',

@@ -6,37 +6,34 @@ import { readBasis } from '../formats/basis.ts';
 import { readJson } from '../formats/json.ts';
 import { readPosterior } from '../formats/posterior.ts';
 import type { Alternative } from '../imaging/error-parts.ts';
-import type { MethodBias } from '../imaging/method-bias.ts';
+import { biasOf, type MethodBias } from '../imaging/method-bias.ts';
 import type { ModelsVerdict } from '../imaging/ring-verdict.ts';
 import { InputProblem } from '../problem.ts';
 
-const quantity = z.object({
-  offset: z.number(),
-  slope: z.number(),
-  centre: z.number(),
-  covariance: z.tuple([z.number(), z.number(), z.number()]),
-  squares: z.number().min(0),
-  byOwnSpread: z.boolean(),
-  spread: z.number().positive(),
-  scatter: z.number().min(0),
-  trials: z.number(),
-});
+const ofQuantities = <T extends z.ZodType>(each: T) =>
+  z.object({
+    diameter: each,
+    width: each,
+    asymmetry: each,
+    'position-angle': each,
+    'central-depression': each,
+  });
 const biasSchema = z.object({
-  bias: z
-    .object({
-      diameter: quantity,
-      width: quantity,
-      asymmetry: quantity,
-      'position-angle': quantity,
-      'central-depression': quantity,
-    })
-    .nullable(),
+  trials: z.array(
+    z.object({
+      truth: ofQuantities(z.number()).nullable(),
+      measured: ofQuantities(z.object({ value: z.number(), deviation: z.number().min(0) })).nullable(),
+      ringFraction: z.number(),
+    }),
+  ),
 });
 const modelsSchema = z.object({ ringPreferred: z.boolean(), centre: z.number(), sentence: z.string() });
 
-/** Null where the injections told nothing. @throws InputProblem when the document is no such thing */
-export function readBias(source: ByteSource): MethodBias | null {
-  return parsed(biasSchema, source, 'the output `bias` of a stage of kind injection').bias;
+/** The bias that all rings show which were injected, in one stage or several; null where they are too few.
+ *  @throws InputProblem when a document is no such thing */
+export function readBias(sources: readonly ByteSource[]): MethodBias | null {
+  const expected = 'the output `bias` of a stage of kind injection';
+  return biasOf(sources.flatMap((source) => parsed(biasSchema, source, expected).trials));
 }
 
 /** @throws InputProblem when the document is no such thing */

@@ -59,15 +59,18 @@ const ROUNDS = 8;
 /** Draws that stand for one where an error is folded in; their scales are as many equally likely ones of its variance. */
 const COPIES = 8;
 
+/** What of a trial tells the bias. */
+export type ToldTrial = Pick<Trial, 'truth' | 'measured' | 'ringFraction'>;
+
 /** Null with fewer than four trials that have a ring in truth and in most of the draws. */
-export function biasOf(trials: readonly Omit<Trial, 'result'>[]): MethodBias | null {
+export function biasOf(trials: readonly ToldTrial[]): MethodBias | null {
   const used = trials.filter(isUsable);
   if (used.length < LEAST_TRIALS) return null;
   return Object.fromEntries(QUANTITIES.map((name) => [name, biasOfQuantity(used, name)])) as MethodBias;
 }
 
 /** Whether a trial tells the bias: a ring in truth and in most of the draws. */
-export function isUsable({ truth, measured, ringFraction }: Omit<Trial, 'result'>): boolean {
+export function isUsable({ truth, measured, ringFraction }: ToldTrial): boolean {
   return truth !== null && measured !== null && ringFraction >= LEAST_RINGS;
 }
 
@@ -78,7 +81,7 @@ interface Row {
   readonly variance: number;
 }
 
-function biasOfQuantity(trials: readonly Omit<Trial, 'result'>[], name: Quantity): BiasOfQuantity {
+function biasOfQuantity(trials: readonly ToldTrial[], name: Quantity): BiasOfQuantity {
   // An angle's error does not depend on the angle.
   const slopePrior = name === 'position-angle' ? null : SLOPE_PRIOR[name];
   const isAngle = slopePrior === null;

@@ -1,7 +1,7 @@
 /** A trial: a known source is observed through the rows of given data, fitted and measured as those were. What comes out,
  *  less what went in, is the method's error. */
 
-import type { Basis, SkyImage, Visibilities } from '../data.ts';
+import type { Basis, Posterior, SkyImage, Visibilities } from '../data.ts';
 import { makeDrawing } from '../numerics/draw.ts';
 import type { Model } from '../numerics/models.ts';
 import { measureRing, type RingMeasurement } from '../numerics/ring.ts';
@@ -53,12 +53,13 @@ export function runTrial(
   const data = observe(template, source, { gainDeviations, seed, noiseFactor });
   const result = runFit(data, basis, settings, () => {}, hints);
   const { model } = result.problem;
-  const drawn = (number: number) =>
-    measureDraws(basis, drawPosterior(model, result.best.x, result.best.curvature, number, seed, true));
-  const first = drawn(count);
+  const { x, curvature } = result.best;
   // Pairs hold the median where both have a ring; where many have none it takes more draws.
-  const measured = first.rings.length >= MOSTLY * count ? first : drawn(2 * count);
-  const { rings } = measured;
+  const posterior = drawPosterior(model, x, curvature, 2 * count, seed, true);
+  const first = measureDraws(basis, partOf(posterior, 0, count));
+  const isClear = first.rings.length >= MOSTLY * count;
+  const rest = isClear ? null : measureDraws(basis, partOf(posterior, count, 2 * count));
+  const rings = [...first.rings, ...(rest?.rings ?? [])];
   const draws = Object.fromEntries(
     QUANTITIES.map((name) => [name, rings.flatMap((ring) => quantityOf(ring, name) ?? [])]),
   ) as unknown as Trial['draws'];
@@ -66,9 +67,19 @@ export function runTrial(
   return {
     truth: truth.ring ? truthOf(truth) : null,
     measured: rings.length >= 2 ? (summary(draws) as Measured) : null,
-    ringFraction: rings.length / measured.count,
+    ringFraction: rings.length / (count + (rest?.count ?? 0)),
     draws,
     result,
+  };
+}
+
+/** Some of the draws, in their order. */
+function partOf({ components, flux, coefficients }: Posterior, from: number, to: number): Posterior {
+  return {
+    count: to - from,
+    components,
+    flux: flux.subarray(from, to),
+    coefficients: coefficients.subarray(from * components, to * components),
   };
 }
 
