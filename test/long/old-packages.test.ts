@@ -14,8 +14,15 @@ const INSTALLED = JSON.parse(
   readFileSync(new URL('../../node_modules/fft.js/package.json', import.meta.url), 'utf8'),
 ).version as string;
 
-/** What this user told the package manager: certificates and registries that it cannot do without. */
-const USER_CONFIGURATION = process.env.npm_config_userconfig ?? join(homedir(), '.npmrc');
+/** What this user and this machine told the package manager: certificates and registries that it cannot do without. */
+const SETTINGS: Record<string, string> = {
+  npm_config_userconfig: join(homedir(), '.npmrc'),
+  ...Object.fromEntries(
+    Object.entries(process.env).flatMap(([name, value]) =>
+      value !== undefined && /^npm_config_|^NODE_EXTRA_CA_CERTS$/i.test(name) ? [[name, value]] : [],
+    ),
+  ),
+};
 
 /** Writes the recorded text, and only with the recorded version. */
 const computation = `import { readFileSync } from 'node:fs';
@@ -53,7 +60,7 @@ test('are installed, and the rerun is identical', () => {
   forgeBook(folder, sources, { packages: { 'fft.js': OLD }, texts });
   const { status, out, err } = platebook(['rerun', '1', '--as-recorded', '--json'], folder, {
     HOME: folder,
-    npm_config_userconfig: USER_CONFIGURATION,
+    ...SETTINGS,
     PLATEBOOK_KEY: join(folder, 'key.pem'),
   });
   expect(err).toBe('');
