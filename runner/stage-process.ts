@@ -9,6 +9,7 @@ import type { StageKind, StageReport } from '../stages/kind.ts';
 import type { RestoredProgram } from './job.ts';
 import { modulesFolder, packageRoot, sourceExtension, sourceRoot } from './program.ts';
 import type { Assignment, ProcessReport } from './stage-assignment.ts';
+import { strippedSources } from './stripped-sources.ts';
 
 export interface StageCall {
   readonly kind: StageKind;
@@ -108,7 +109,10 @@ export async function runStage(call: StageCall, scratch: string): Promise<StageR
   );
 }
 
-/** Assignment, outputs, log and report each have a fixed place below the scratch directory. */
+const childFile = join(sourceRoot, 'runner', `stage-child${sourceExtension}`);
+const startFile = join(packageRoot, 'bin', 'stage.js');
+
+/** Assignment, sources, outputs, log and report each have a fixed place below the scratch directory. */
 function writeAssignment(call: StageCall, scratch: string): { path: string; content: Assignment } {
   mkdirSync(join(scratch, 'outputs'));
   const content: Assignment = {
@@ -123,6 +127,9 @@ function writeAssignment(call: StageCall, scratch: string): { path: string; cont
   };
   const path = join(scratch, 'assignment.json');
   writeFileSync(path, JSON.stringify(content));
+  // A recorded kind has its types taken out by the runtime of its own release.
+  const entries = call.program === null ? [childFile, content.kindFile] : [childFile];
+  writeFileSync(join(scratch, 'sources.json'), JSON.stringify(strippedSources(entries)));
   return { path, content };
 }
 
@@ -133,6 +140,7 @@ function startChild(start: typeof execa, call: StageCall, assignment: string, sc
     ...(call.program?.readable ?? [call.kindsFolder]),
     modulesFolder(),
     join(packageRoot, 'package.json'),
+    startFile,
     scratch,
     ...Object.values(call.inputs).flat(),
   ];
@@ -145,7 +153,8 @@ function startChild(start: typeof execa, call: StageCall, assignment: string, sc
     ...permissions,
     `--allow-fs-write=${scratch}`,
     '--disable-warning=SecurityWarning',
-    join(sourceRoot, 'runner', `stage-child${sourceExtension}`),
+    startFile,
+    childFile,
     assignment,
   ];
   return start(call.engine, words, {
