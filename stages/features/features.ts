@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
 
 export const features = {
   kind: 'features',
-  version: 5,
+  version: 6,
   doc:
     'Measures the ring in every image of a posterior: diameter, width, asymmetry and position angle, central ' +
     "depression, roundness; medians with 68 % and 95 % intervals, corrected for the method's bias where it is known, and " +

@@ -2,6 +2,7 @@
 
 import type { Basis, Posterior, SkyImage } from '../data.ts';
 import { cos, exp, ln, sin } from '../numerics/elementary.ts';
+import { addCombination } from '../numerics/linear.ts';
 import { makeSplineImage, splineValue } from '../numerics/spline-image.ts';
 
 /** Radians per microarcsecond. */
@@ -27,11 +28,12 @@ export function angleUnit(radians: number): { readonly name: string; readonly ra
 export function imageOfDraw(basis: Basis, posterior: Posterior, draw: number): SkyImage {
   const { nx, ny, pixelRadians } = basis;
   const pixels = basis.mean.map((value) => value * posterior.flux[draw]);
-  for (let k = 0; k < posterior.components; k++) {
-    const component = basis.components[k];
-    const coefficient = posterior.coefficients[draw * posterior.components + k];
-    for (let p = 0; p < pixels.length; p++) pixels[p] += coefficient * component[p];
-  }
+  const from = draw * posterior.components;
+  addCombination(
+    pixels,
+    basis.components,
+    posterior.coefficients.subarray(from, from + posterior.components),
+  );
   return { nx, ny, pixelRadians, pixels };
 }
 

@@ -16,6 +16,7 @@
 
 import type { Basis } from '../data.ts';
 import { visibilitiesOfAll } from '../numerics/fourier.ts';
+import { addCombination } from '../numerics/linear.ts';
 import { gaussianTaper } from '../numerics/models.ts';
 import { linearPart, moved, placeAt, type Ramp } from './centroid.ts';
 
@@ -206,9 +207,6 @@ export function fluxAndCoefficients(
 export function imageAt(model: LinearModel, basis: Basis, x: Float64Array): Float64Array {
   const { flux, coefficients } = fluxAndCoefficients(model, x);
   const pixels = basis.mean.map((value) => flux * value);
-  for (let k = 0; k < coefficients.length; k++) {
-    const component = basis.components[k];
-    for (let p = 0; p < pixels.length; p++) pixels[p] += coefficients[k] * component[p];
-  }
+  addCombination(pixels, basis.components, coefficients);
   return pixels;
 }

@@ -1,6 +1,7 @@
 /** The ring in every draw of a posterior. */
 
 import type { Basis, Posterior, SkyImage } from '../data.ts';
+import { addCombination } from '../numerics/linear.ts';
 import { measureRing, type RingMeasurement } from '../numerics/ring.ts';
 import { InputProblem } from '../problem.ts';
 
@@ -58,14 +59,11 @@ function requireFit(basis: Basis, posterior: Posterior): void {
 
 /** Image of one draw, Jy per pixel. */
 export function drawImage(basis: Basis, posterior: Posterior, s: number): SkyImage {
+  const { nx, ny, pixelRadians } = basis;
   const K = posterior.components;
   const pixels = basis.mean.map((value) => posterior.flux[s] * value);
-  for (let k = 0; k < K; k++) {
-    const coefficient = posterior.coefficients[s * K + k];
-    const component = basis.components[k];
-    for (let p = 0; p < pixels.length; p++) pixels[p] += coefficient * component[p];
-  }
-  return { nx: basis.nx, ny: basis.ny, pixelRadians: basis.pixelRadians, pixels };
+  addCombination(pixels, basis.components, posterior.coefficients.subarray(s * K, (s + 1) * K));
+  return { nx, ny, pixelRadians, pixels };
 }
 
 /** An image without any positive pixel has nothing to measure. */

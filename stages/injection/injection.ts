@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
 
 export const injection = {
   kind: 'injection',
-  version: 5,
+  version: 6,
   doc:
     "Measures the method's own error: rings of known size, about as large as the one that was found, are observed through " +
     'the same (u,v) points with the same noise and gains, fitted the same way and measured the same way. The difference of ' +

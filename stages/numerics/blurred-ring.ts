@@ -6,6 +6,7 @@
  *  The relation is free of scale, so one number, width over ridge diameter, gives blur over diameter. */
 
 import { exp } from './elementary.ts';
+import { signChange } from './sign-change.ts';
 
 /** FWHM of a Gaussian in standard deviations, 2 sqrt(2 ln 2). */
 export const FWHM_PER_SIGMA = 2.354820045030949;
@@ -17,8 +18,8 @@ const MOST_TERMS = 200;
 const LARGEST_RATIO = 0.66;
 /** Below this ratio the second-order form errs by less than 1e-4 of the correction. */
 const SMALLEST_RATIO = 0.02;
-/** False position takes about ten. */
-const MOST_STEPS = 60;
+/** Of a bracket. */
+const TOLERANCE = 1e-13;
 
 /** Returns e^{-z} I0(z) and e^{-z} I1(z) for z >= 0 (Abramowitz and Stegun 9.6.10, 9.7.1). */
 export function scaledBesselI(z: number): [number, number] {
@@ -71,11 +72,11 @@ export function blurredRing(radius: number, blur: number): BlurredRing {
     const [i0, i1] = scaledBesselI((r * radius) / (s * s));
     return (radius * i1) / i0 - r;
   };
-  const ridgeRadius = radius * radius > 2 * s * s ? solve(slope, radius * 1e-6, radius) : 0;
+  const ridgeRadius = radius * radius > 2 * s * s ? signChange(slope, radius * 1e-6, radius, TOLERANCE) : 0;
   const half = brightness(ridgeRadius) / 2;
   if (brightness(0) >= half) return { ridgeRadius, width: null };
-  const inner = solve((r) => half - brightness(r), 0, ridgeRadius);
-  const outer = solve((r) => brightness(r) - half, ridgeRadius, radius + 4 * s);
+  const inner = signChange((r) => half - brightness(r), 0, ridgeRadius, TOLERANCE);
+  const outer = signChange((r) => brightness(r) - half, ridgeRadius, radius + 4 * s, TOLERANCE);
   return { ridgeRadius, width: outer - inner };
 }
 
@@ -89,32 +90,7 @@ export function thinRingDiameter(ridgeDiameter: number, width: number): number |
     const seen = blurredRing(0.5, blur);
     return seen.width === null ? -1 : ratio - seen.width / (2 * seen.ridgeRadius);
   };
-  const blur = solve(excess, ratio / 4, ratio);
+  const blur = signChange(excess, ratio / 4, ratio, TOLERANCE);
   const seen = blurredRing(0.5, blur);
   return seen.width === null ? null : ridgeDiameter / (2 * seen.ridgeRadius);
-}
-
-/** Where a function that is positive at `low` and not at `high` changes sign (Illinois variant of false position:
- *  Dowell and Jarratt 1971, BIT 11, 168), to 1e-13 of the bracket. */
-function solve(f: (x: number) => number, low: number, high: number): number {
-  let [a, b] = [low, high];
-  let [fa, fb] = [f(a), f(b)];
-  let side = 0;
-  for (let k = 0; k < MOST_STEPS && b - a > 1e-13 * (high - low); k++) {
-    const secant = (a * fb - b * fa) / (fb - fa);
-    const x = secant > a && secant < b ? secant : (a + b) / 2;
-    const fx = f(x);
-    if (fx > 0) {
-      if (x - a < 1e-14 * (high - low)) return x;
-      [a, fa] = [x, fx];
-      if (side > 0) fb /= 2;
-      side = 1;
-    } else {
-      if (b - x < 1e-14 * (high - low)) return x;
-      [b, fb] = [x, fx];
-      if (side < 0) fa /= 2;
-      side = -1;
-    }
-  }
-  return (a + b) / 2;
 }

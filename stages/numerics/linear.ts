@@ -37,6 +37,29 @@ export function choleskyNearby(A: Float64Array, n: number): Float64Array | null 
 const LEAST_RAISE = 1e-14;
 const MOST_RAISE = 1e-6;
 
+/** Adds sum_k factors[k] vectors[k] to `out`, vector after vector. Four at a time, so that `out` is read and written a
+ *  quarter as often; the order of the sums, and so every bit, is that of one at a time. Vectors beyond the factors are
+ *  left out. Cost one multiply-add per value and factor. */
+export function addCombination(
+  out: Float64Array,
+  vectors: readonly Float64Array[],
+  factors: Float64Array,
+): void {
+  const count = factors.length;
+  let k = 0;
+  for (; k + 4 <= count; k += 4) {
+    const [a, b, c, d] = [vectors[k], vectors[k + 1], vectors[k + 2], vectors[k + 3]];
+    const [fa, fb, fc, fd] = [factors[k], factors[k + 1], factors[k + 2], factors[k + 3]];
+    for (let i = 0; i < out.length; i++) {
+      out[i] = out[i] + fa * a[i] + fb * b[i] + fc * c[i] + fd * d[i];
+    }
+  }
+  for (; k < count; k++) {
+    const [a, fa] = [vectors[k], factors[k]];
+    for (let i = 0; i < out.length; i++) out[i] += fa * a[i];
+  }
+}
+
 /** Returns x with L x = b. Cost n^2. */
 export function solveLower(L: Float64Array, b: Float64Array): Float64Array {
   const n = b.length;

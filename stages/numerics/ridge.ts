@@ -3,7 +3,7 @@
  *  east. Used by ring.ts, which has the definitions. */
 
 import { cos, sin } from './elementary.ts';
-import { type SplineImage, splineValue } from './spline-image.ts';
+import { type SplineImage, splineCeiling, splineValue } from './spline-image.ts';
 
 /** Steps of the search for the centre; 10 are enough for any ring, images without a ring may wander. */
 const MOST_STEPS = 30;
@@ -131,11 +131,12 @@ function findRidge(spline: SplineImage, column: number, row: number, rays: Rays,
   const reach = reachFrom(spline, column, row);
   const radii = new Float64Array(count);
   const brightness = new Float64Array(count);
+  let likely = 0;
   for (let k = 0; k < count; k++) {
     const along = ray(spline, column, row, rays, k);
-    const radius = brightestRadius(along, reach, step);
-    radii[k] = radius;
-    brightness[k] = along(radius);
+    likely = brightestSample(spline, column, row, rays.sines[k], rays.cosines[k], reach, step, likely);
+    radii[k] = radiusOfTop(along, likely, reach, step);
+    brightness[k] = along(radii[k]);
   }
   const mean = average(radii);
   let squares = 0;
@@ -150,17 +151,38 @@ export function ray(spline: SplineImage, column: number, row: number, rays: Rays
   return (radius: number) => splineValue(spline, column - radius * east, row + radius * north);
 }
 
-/** Radius of the largest brightness: samples, then two parabolas, the second through points close by. */
-function brightestRadius(along: (radius: number) => number, reach: number, step: number): number {
+/** Radius of the largest of the samples along a ray, the first of equal ones. A sample that cannot be the largest is
+ *  passed over: one below that at `likely`, such as the largest of the ray beside this. */
+function brightestSample(
+  spline: SplineImage,
+  column: number,
+  row: number,
+  east: number,
+  north: number,
+  reach: number,
+  step: number,
+  likely: number,
+): number {
   let best = 0;
-  let brightest = along(0);
+  let brightest = splineValue(spline, column, row);
+  let enough = brightest;
+  if (likely <= reach) enough = splineValue(spline, column - likely * east, row + likely * north);
   for (let radius = step; radius <= reach; radius += step) {
-    const value = along(radius);
+    const x = column - radius * east;
+    const y = row + radius * north;
+    const ceiling = splineCeiling(spline, x, y);
+    if (ceiling < enough || ceiling <= brightest) continue;
+    const value = splineValue(spline, x, y);
     if (value > brightest) {
       brightest = value;
       best = radius;
     }
   }
+  return best;
+}
+
+/** Radius of the largest brightness near the largest sample: two parabolas, the second through points close by. */
+function radiusOfTop(along: (radius: number) => number, best: number, reach: number, step: number): number {
   if (best < step || best > reach - step) return best;
   const first = parabolaTop(along, best, step);
   return first < RAY_STEP ? first : parabolaTop(along, first, RAY_STEP / 8);

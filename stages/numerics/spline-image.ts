@@ -7,6 +7,8 @@ export interface SplineImage {
   readonly ny: number;
   /** B-spline coefficients, x fastest, length nx*ny. */
   readonly coefficients: Float64Array;
+  /** ceilings[j*nx + i]: no value with column in [i, i+1) and row in [j, j+1) is larger; infinite beside the edge. */
+  readonly ceilings: Float64Array;
 }
 
 const POLE = Math.sqrt(3) - 2;
@@ -21,7 +23,41 @@ export function makeSplineImage(pixels: Float64Array, nx: number, ny: number): S
   const coefficients = Float64Array.from(pixels);
   for (let row = 0; row < ny; row++) filterLine(coefficients, row * nx, 1, nx);
   for (let column = 0; column < nx; column++) filterLine(coefficients, column, nx, ny);
-  return { nx, ny, coefficients };
+  return { nx, ny, coefficients, ceilings: largestNearby(coefficients, nx, ny) };
+}
+
+/** More than what rounding adds to a sum of sixteen terms, relative to the largest coefficient. */
+const ROUNDING = 1e-13;
+
+/** A value is a mean of the 4 by 4 coefficients about it, with weights that are not negative and add up to 1 (the
+ *  convex hull of B-splines: de Boor, A Practical Guide to Splines, ch. IX), so it is no larger than the largest. */
+function largestNearby(coefficients: Float64Array, nx: number, ny: number): Float64Array {
+  const ceilings = new Float64Array(nx * ny).fill(Number.POSITIVE_INFINITY);
+  const inRow = new Float64Array(nx * ny);
+  let largest = 0;
+  for (let k = 0; k < coefficients.length; k++) largest = Math.max(largest, Math.abs(coefficients[k]));
+  for (let k = 1; k + 2 < coefficients.length; k++) {
+    inRow[k] = largestOf(coefficients[k - 1], coefficients[k], coefficients[k + 1], coefficients[k + 2]);
+  }
+  for (let j = 1; j + 2 < ny; j++) {
+    for (let i = 1; i + 2 < nx; i++) {
+      const k = j * nx + i;
+      const value = largestOf(inRow[k - nx], inRow[k], inRow[k + nx], inRow[k + 2 * nx]);
+      ceilings[k] = value + ROUNDING * largest;
+    }
+  }
+  return ceilings;
+}
+
+function largestOf(a: number, b: number, c: number, d: number): number {
+  const ab = Math.max(a, b);
+  const cd = Math.max(c, d);
+  return Math.max(ab, cd);
+}
+
+/** A value that none between this place and the next column and row exceeds; see ceilings. */
+export function splineCeiling({ nx, ceilings }: SplineImage, column: number, row: number): number {
+  return ceilings[Math.floor(row) * nx + Math.floor(column)];
 }
 
 /** Turns samples of one line into spline coefficients, in place. */

@@ -5,7 +5,7 @@ import { ringTruth, station } from './declared-groups.ts';
 
 export const simulate = {
   kind: 'simulate',
-  version: 4,
+  version: 5,
   doc:
     'A synthetic observation: visibilities of a blurred ring or of an image, along the tracks that the rotation of the ' +
     'Earth gives an array, with thermal noise, station gains, station phases and, if asked for, errors that do not ' +

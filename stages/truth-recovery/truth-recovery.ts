@@ -15,7 +15,7 @@ import type { StageKind } from '../kind.ts';
 
 export const truthRecovery = {
   kind: 'truth-recovery',
-  version: 3,
+  version: 4,
   doc:
     'Observes known sources through the rows of given visibilities, fits and measures each as a pipeline would, corrects it ' +
     "for the method's bias from rings injected into the same coverage, and notes what was found beside the truth: rings of " +

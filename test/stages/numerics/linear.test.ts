@@ -3,6 +3,7 @@
 import fc from 'fast-check';
 import { expect, test } from 'vitest';
 import {
+  addCombination,
   cholesky,
   invertSymmetric,
   leastSquares,
@@ -89,5 +90,24 @@ test('says which size was wrong', () => {
   expect(() => cholesky(new Float64Array(5), 2)).toThrow('cholesky: 5 values where 4 make the matrix');
   expect(() => leastSquares(new Float64Array(5), new Float64Array(3), 2)).toThrow(
     'leastSquares: 5 values where 6 make the matrix',
+  );
+});
+
+test('adds a combination with the bits of one vector after the other', () => {
+  const numbers = (length: number) => fc.array(entry, { minLength: length, maxLength: length });
+  const combination = fc
+    .tuple(fc.integer({ min: 0, max: 11 }), fc.integer({ min: 1, max: 5 }))
+    .chain(([count, d]) => fc.tuple(numbers(count), fc.array(numbers(d), { minLength: 12, maxLength: 12 })));
+  fc.assert(
+    fc.property(combination, ([factors, rows]) => {
+      const vectors = rows.map((row) => Float64Array.from(row));
+      const start = vectors[11] as Float64Array;
+      const found = Float64Array.from(start);
+      addCombination(found, vectors, Float64Array.from(factors));
+      const direct = start.map((value, i) =>
+        factors.reduce((sum, factor, k) => sum + factor * (vectors[k]?.[i] ?? Number.NaN), value),
+      );
+      expect([...found]).toEqual([...direct]);
+    }),
   );
 });

@@ -1,9 +1,10 @@
 /** Ring measures: identities (turning, shifting, scaling an image), a slow minimisation of the scatter, a direct integral
  *  for the centre, and images that are no ring. */
 
+import fc from 'fast-check';
 import { expect, test } from 'vitest';
 import { measureRing } from '../../../stages/numerics/ring.ts';
-import { makeSplineImage, splineValue } from '../../../stages/numerics/spline-image.ts';
+import { makeSplineImage, splineCeiling, splineValue } from '../../../stages/numerics/spline-image.ts';
 import { blurredRingImage, imageOf, UAS } from './ring-images.ts';
 
 const CRESCENT = { nx: 80, pixel: 2, diameter: 42, blur: 12, b: 0.3 };
@@ -144,5 +145,20 @@ test('refuses what is no image', () => {
   expect(() => measureRing(broken)).toThrow('measureRing: a pixel is not a finite number');
   expect(() => measureRing({ ...image, ny: 3 })).toThrow(
     /^measureRing: 6400 pixels of .* rad do not make an image of 80 by 3, at least 8 by 8$/,
+  );
+});
+
+test('no value of a spline exceeds the ceiling of its place', () => {
+  const pixels = fc.array(fc.double({ min: -1, max: 1, noNaN: true }), { minLength: 72, maxLength: 72 });
+  fc.assert(
+    fc.property(pixels, (values) => {
+      const spline = makeSplineImage(Float64Array.from(values), 9, 8);
+      for (let row = 0; row <= 7; row += 0.125) {
+        for (let column = 0; column <= 8; column += 0.125) {
+          if (splineValue(spline, column, row) > splineCeiling(spline, column, row)) return false;
+        }
+      }
+      return spline.ceilings.filter((value) => value < Number.POSITIVE_INFINITY).length === 6 * 5;
+    }),
   );
 });
