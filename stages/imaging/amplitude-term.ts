@@ -113,8 +113,14 @@ function amplitudeTerm(
   deviations: Float64Array,
   scans: readonly Scan[],
 ): AmplitudeTerm {
-  const solve = (scan: Scan, at: ModelVisibilities) =>
-    solveGains(scan, at, data.sigma, amplitudes, deviations);
+  // A step is costed first and expanded when it is taken: the gains at the same visibilities are the same.
+  let last: { at: ModelVisibilities; solved: Map<Scan, Solved> } | null = null;
+  const solve = (scan: Scan, at: ModelVisibilities) => {
+    if (last?.at !== at) last = { at, solved: new Map() };
+    const solved = last.solved.get(scan) ?? solveGains(scan, at, data.sigma, amplitudes, deviations);
+    last.solved.set(scan, solved);
+    return solved;
+  };
   const sumOver = (value: (scan: Scan) => number) => scans.reduce((sum, scan) => sum + value(scan), 0);
   return {
     name: 'amplitudes with gains',

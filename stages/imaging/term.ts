@@ -10,6 +10,7 @@ export interface Expansion {
   readonly curvature: Float64Array;
 }
 
+/** Visibilities that a term has been given do not change afterwards: what it found out about them it may keep. */
 export interface Term {
   readonly name: string;
   /** Number of measurements. */

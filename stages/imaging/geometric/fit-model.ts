@@ -101,14 +101,20 @@ function placeStart({ placeScale }: Setting, place: Place | null): number[] {
 
 function makeModelObjective(kind: ModelKind, terms: readonly Term[], setting: Setting) {
   const prior = (x: Float64Array) => x.reduce((sum, value) => sum + value * value, 0) / 2;
+  // A step is costed first and expanded when it is taken: the visibilities are the same.
+  let last: { x: Float64Array; at: ModelVisibilities } | null = null;
+  const predicted = (x: Float64Array) => {
+    if (last?.x !== x) last = { x, at: predictModel(kind, x, setting) };
+    return last.at;
+  };
   return {
     cost(x: Float64Array) {
-      const at = predictModel(kind, x, setting);
+      const at = predicted(x);
       return terms.reduce((sum, term) => sum + term.cost(at), prior(x));
     },
     expand(x: Float64Array) {
       const n = x.length;
-      const at = predictModel(kind, x, setting);
+      const at = predicted(x);
       const slopes = slopesByDifferences(kind, x, setting);
       const out = makeExpansion(n);
       let cost = prior(x);
