@@ -5,7 +5,7 @@ import { FAMILIES, type Family, type SizeRange } from './families.ts';
 
 export const imageLibrary = {
   kind: 'image-library',
-  version: 1,
+  version: 2,
   doc:
     'A library of images of unit flux with their centroid at the origin, all on one grid: random images of declared ' +
     "families, rings and what is no ring, and the group's own simulations. Generated images are drawn in the " +

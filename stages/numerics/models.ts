@@ -36,6 +36,9 @@ export interface ModelPart {
   readonly brightest: number;
 }
 
+/** See `isCircular`. */
+export type CircularPart = ModelPart & { readonly shape: Exclude<Shape, 'box'> };
+
 export interface Model {
   readonly parts: readonly ModelPart[];
   /** Full width at half maximum of the Gaussian that all parts are convolved with; 0 for none. */
@@ -84,27 +87,25 @@ export function makeShapeTransform(part: ModelPart): ShapeTransform {
 }
 
 /** Whether a part looks the same however it is turned, but for a ring's asymmetry, whose direction counts alone. */
-export function isCircular({ shape, length, breadth }: ModelPart): boolean {
+export function isCircular(part: ModelPart): part is CircularPart {
+  const { shape, length, breadth } = part;
   return length === breadth && shape !== 'box';
 }
 
-/** Makes the transform of a circular part at (u,v) and at (-u,v) in one: writes to out[0] the real part of both, to out[1]
- *  and out[2] the imaginary parts. */
-export function makeMirroredTransform(part: ModelPart): ShapeTransform {
-  const { shape, length } = part;
+/** The transform of a circular part by its radial functions: at a point at p = v length and q = u length, rho^2 = p^2 + q^2,
+ *  the real part out[0], and the imaginary part out[1] (p along + q across) / rho, nothing at rho = 0. */
+export function makeCircularTransform(part: CircularPart): {
+  readonly radial: (out: Float64Array, rho: number) => void;
+  readonly along: number;
+  readonly across: number;
+} {
   const { along, across } = directions(part);
-  return (out, u, v) => {
-    const p = v * length;
-    const q = u * length;
-    const rho = Math.sqrt(p * p + q * q);
-    out[0] = realTransform(shape, p, q, rho);
-    out[1] = 0;
-    out[2] = 0;
-    if (!imaginary(part, rho)) return;
-    const size = -2 * besselJ1(Math.PI * rho);
-    out[1] = (size * (p * along + q * across)) / rho;
-    out[2] = (size * (p * along - q * across)) / rho;
+  const real = realFunctions[part.shape];
+  const radial = (out: Float64Array, rho: number) => {
+    out[0] = real(rho);
+    out[1] = imaginary(part, rho) ? -2 * besselJ1(Math.PI * rho) : 0;
   };
+  return { radial, along, across };
 }
 
 /** The part's axis, and its asymmetry along and across it. */
@@ -123,12 +124,16 @@ function imaginary({ shape, asymmetry }: ModelPart, rho: number): boolean {
 }
 
 function realTransform(shape: Shape, p: number, q: number, rho: number): number {
-  if (shape === 'point') return 1;
-  if (shape === 'gaussian') return exp(-GAUSSIAN_EXPONENT * rho * rho);
-  if (shape === 'ring') return besselJ0(Math.PI * rho);
-  if (shape === 'box') return sinc(p) * sinc(q);
-  return rho === 0 ? 1 : (2 * besselJ1(Math.PI * rho)) / (Math.PI * rho);
+  return shape === 'box' ? sinc(p) * sinc(q) : realFunctions[shape](rho);
 }
+
+/** The real parts of shapes that are circular but for their scales. */
+const realFunctions = {
+  point: () => 1,
+  gaussian: (rho: number) => exp(-GAUSSIAN_EXPONENT * rho * rho),
+  ring: (rho: number) => besselJ0(Math.PI * rho),
+  disc: (rho: number) => (rho === 0 ? 1 : (2 * besselJ1(Math.PI * rho)) / (Math.PI * rho)),
+};
 
 /** sin(pi x) / (pi x). */
 function sinc(x: number): number {
