@@ -242,7 +242,8 @@ function addAmplitudeSlope(out: ModelVisibilities, at: ModelVisibilities, r: num
   out.im[r] += (pull * at.im[r]) / square;
 }
 
-/** The gains that minimise the scan's cost, by damped Newton steps from zero. */
+/** The gains that minimise the scan's cost, by damped Newton steps from zero; by Gauss and Newton's curvature where the whole
+ *  one is not positive definite. */
 function solveGains(
   scan: Scan,
   at: ModelVisibilities,
@@ -250,43 +251,58 @@ function solveGains(
   amplitudes: Float64Array,
   deviations: Float64Array,
 ): Solved {
-  const n = scan.stations.length;
+  const { rows, stations, first, second } = scan;
+  const n = stations.length;
   const g = new Float64Array(n);
-  const residuals = new Float64Array(scan.rows.length);
-  const slopes = new Float64Array(scan.rows.length);
+  const residuals = new Float64Array(rows.length);
+  const slopes = new Float64Array(rows.length);
   const sizes = Float64Array.from(
-    scan.rows,
+    rows,
     (r) => Math.sqrt(at.re[r] * at.re[r] + at.im[r] * at.im[r]) / sigma[r],
   );
   const L = new Float64Array(n * n);
+  const whole = new Float64Array(n * n);
   const change = new Float64Array(n);
   const profile = new Int32Array(n);
+  const factors = new Float64Array(n);
   for (let step = 0; step < MOST_STEPS; step++) {
     L.fill(0);
+    whole.fill(0);
     for (let i = 0; i < n; i++) {
-      const weight = 1 / (deviations[scan.stations[i]] * deviations[scan.stations[i]]);
+      const weight = 1 / (deviations[stations[i]] * deviations[stations[i]]);
       L[i * n + i] = weight;
+      whole[i * n + i] = weight;
       change[i] = weight * g[i];
+      factors[i] = exp(g[i]);
     }
-    for (let m = 0; m < scan.rows.length; m++) {
-      const r = scan.rows[m];
-      const i = scan.first[m];
-      const j = scan.second[m];
-      const nu = sizes[m] * exp(g[i] + g[j]);
+    for (let m = 0; m < rows.length; m++) {
+      const r = rows[m];
+      const i = first[m];
+      const j = second[m];
+      const nu = sizes[m] * factors[i] * factors[j];
       const [mean, slope] = riceMean(nu);
-      residuals[m] = mean - amplitudes[r] / sigma[r];
+      const residual = mean - amplitudes[r] / sigma[r];
+      residuals[m] = residual;
       const d = nu * slope;
       slopes[m] = d;
-      change[i] += residuals[m] * d;
-      change[j] += residuals[m] * d;
-      L[i * n + i] += d * d;
-      L[j * n + j] += d * d;
-      L[Math.max(i, j) * n + Math.min(i, j)] += d * d;
+      change[i] += residual * d;
+      change[j] += residual * d;
+      const square = d * d;
+      const place = i > j ? i * n + j : j * n + i;
+      L[i * n + i] += square;
+      L[j * n + j] += square;
+      L[place] += square;
+      // d (nu slope) / d ln nu by the equation of rice.ts.
+      const curved = square + residual * nu * nu * (mean - nu * slope);
+      whole[i * n + i] += curved;
+      whole[j * n + j] += curved;
+      whole[place] += curved;
     }
     // Of a model that is no number; its cost is none either.
     if (!factorise(L, n)) break;
-    applyInverse(L, change, profile);
-    applyInverseTransposed(L, change, profile);
+    const factor = factorise(whole, n) ? whole : L;
+    applyInverse(factor, change, profile);
+    applyInverseTransposed(factor, change, profile);
     let largest = 0;
     for (let i = 0; i < n; i++) largest = Math.max(largest, Math.abs(change[i]));
     if (!(largest > TOLERANCE)) break;

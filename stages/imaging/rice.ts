@@ -2,7 +2,8 @@
  *  Syst. Tech. J. 23, 282; Thompson, Moran and Swenson, 3rd ed., section 9.3),
  *    E[Z]     = sqrt(pi/2) e^-y ((1 + 2y) I0(y) + 2y I1(y)),   y = nu^2/4
  *    dE/d nu  = sqrt(pi/2) (nu/2) e^-y (I0(y) + I1(y))
- *  With it amplitudes need no debiasing and no cut at low signal-to-noise. */
+ *    d2E/dnu2 = E - (nu + 1/nu) dE/dnu,   so that d(nu dE/dnu)/d ln nu = nu^2 (E - nu dE/dnu)
+ *  (the last from Kummer's equation: Abramowitz and Stegun 13.1.1). With it amplitudes need no debiasing and no cut at low signal-to-noise. */
 
 import { scaledBesselI } from '../numerics/blurred-ring.ts';
 

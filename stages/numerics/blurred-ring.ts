@@ -14,6 +14,8 @@ const LN2 = Math.LN2;
 /** Above this argument the asymptotic series of the Bessel functions is exact to 1e-15; below, the power series. */
 const ASYMPTOTIC_FROM = 40;
 const MOST_TERMS = 200;
+/** A division takes as long as several multiplications. */
+const RECIPROCALS = Float64Array.from({ length: MOST_TERMS + 1 }, (_, k) => 1 / k);
 /** Width over ridge diameter at which the inner half-maximum is about to vanish: no inversion beyond. */
 const LARGEST_RATIO = 0.66;
 /** Below this ratio the second-order form errs by less than 1e-4 of the correction. */
@@ -32,9 +34,9 @@ function powerSeries(z: number): [number, number] {
   let i0 = 1;
   let i1 = 1;
   for (let k = 1; k < MOST_TERMS; k++) {
-    term *= quarter / (k * k);
+    term *= quarter * RECIPROCALS[k] * RECIPROCALS[k];
     i0 += term;
-    i1 += term / (k + 1);
+    i1 += term * RECIPROCALS[k + 1];
     if (term < 1e-17 * i0) break;
   }
   const scale = exp(-z);
