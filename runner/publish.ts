@@ -13,6 +13,8 @@ import { readNumbers } from '../stages/formats/json.ts';
 import { convert } from '../stages/units.ts';
 import { type Job, type Outcome, upstreamOf } from './job.ts';
 import { formatNumbersJson, formatNumbersTex } from './numbers-files.ts';
+import type { Stamp } from './plates/stamp.ts';
+import type { StampAhead, Stamped } from './plates/stamp-ahead.ts';
 import { cannotWriteOutside } from './problem.ts';
 import type { Recipe } from './recipe/recipe.ts';
 import { writeWhole } from './write-whole.ts';
@@ -39,23 +41,44 @@ export interface PublishRequest {
   readonly book: Book;
   /** The folder that receives the plates. */
   readonly folder: string;
+  readonly ahead: StampAhead;
 }
 
 /** Makes a plate of every published figure whose stage ended well. A figure that already is a plate keeps it. */
 export async function publishFigures(request: PublishRequest): Promise<Plate[]> {
   const plates: Plate[] = [];
   for (const figure of request.recipe.publish.figures) {
-    const outcome = request.outcomes.get(figure.stage);
-    const drawn = outcome?.outputs[figure.output];
-    if (outcome?.entry == null || drawn === undefined) continue;
-    const numbers = plateNumbersOf(outcome.entry, request.book.digestOf(outcome.entry), outcome.outputs);
-    const plate = numbers.get(figure.output) ?? '';
-    const mark = markOf(figure.stage, request);
-    plates.push(
-      await makePlate(request, { ...figure, plate, drawn: outcome.entry, figure: drawn.digest, mark }),
-    );
+    const wanted = wantedPlate(request, figure);
+    if (wanted !== null) plates.push(await makePlate(request, wanted));
   }
   return plates;
+}
+
+/** Starts on the plates of a stage that has ended, while others run. */
+export function stampAheadOf(request: PublishRequest, stage: string): void {
+  for (const figure of request.recipe.publish.figures) {
+    const wanted = figure.stage === stage ? wantedPlate(request, figure) : null;
+    if (wanted === null || findPlate(request.book, wanted) !== undefined) continue;
+    request.ahead.begin(request.book.store.read(wanted.figure), stampOf(request, wanted));
+  }
+}
+
+/** Null while its stage has not ended well. */
+function wantedPlate(
+  request: PublishRequest,
+  figure: Recipe['publish']['figures'][number],
+): PlateRequest | null {
+  const outcome = request.outcomes.get(figure.stage);
+  const drawn = outcome?.outputs[figure.output];
+  if (outcome?.entry == null || drawn === undefined) return null;
+  const numbers = plateNumbersOf(outcome.entry, request.book.digestOf(outcome.entry), outcome.outputs);
+  const plate = numbers.get(figure.output) ?? '';
+  const mark = markOf(figure.stage, request);
+  return { ...figure, plate, drawn: outcome.entry, figure: drawn.digest, mark };
+}
+
+function stampOf({ recipe }: PublishRequest, { plate, name, mark }: PlateRequest): Stamp {
+  return { plate, title: name, recipe: recipe.name, mark };
 }
 
 interface PlateRequest {
@@ -83,17 +106,17 @@ async function makePlate(request: PublishRequest, wanted: PlateRequest): Promise
 }
 
 async function stampedDraft(request: PublishRequest, wanted: PlateRequest): Promise<PlateDraft> {
-  const { stampFigure } = await import('./plates/stamp.ts');
   const { store } = request.book;
   const { name, plate, drawn, output, figure, mark } = wanted;
-  const stamped = await stampFigure(store.read(figure), {
-    plate,
-    title: name,
-    recipe: request.recipe.name,
-    mark,
-  });
+  const stamp = stampOf(request, wanted);
+  const stamped = (await request.ahead.take(stamp)) ?? (await stampNow(store.read(figure), stamp));
   const files = { svg: store.keepBytes(stamped.svg), png: store.keepBytes(stamped.png) };
   return { type: 'plate', plate, name, drawn, output, figure, stamped: files, mark };
+}
+
+async function stampNow(figure: Uint8Array, stamp: Stamp): Promise<Stamped> {
+  const { stampFigure } = await import('./plates/stamp.ts');
+  return stampFigure(figure, stamp);
 }
 
 /** The first mark on the way from the data to this stage; a plate that depends on it carries it. */

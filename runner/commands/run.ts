@@ -10,9 +10,18 @@ import type { CommonOptions, ExitStatus, Io } from '../command.ts';
 import { keyFile, writer } from '../configuration.ts';
 import { execute } from '../execute.ts';
 import { isGood, type Job, type Outcome } from '../job.ts';
+import { makeStampAhead } from '../plates/stamp-ahead.ts';
 import { kindsFolder, stageEngine } from '../program.ts';
 import { makeProgress } from '../progress.ts';
-import { layNumbers, type Plate, type PublishedNumbers, publishFigures, publishNumbers } from '../publish.ts';
+import {
+  layNumbers,
+  type Plate,
+  type PublishedNumbers,
+  type PublishRequest,
+  publishFigures,
+  publishNumbers,
+  stampAheadOf,
+} from '../publish.ts';
 import { type DeclaredStage, type Recipe, readRecipe } from '../recipe/recipe.ts';
 import { runText } from '../run-text.ts';
 
@@ -69,19 +78,47 @@ async function runRecipe(
   const recipeFile = book.store.keepBytes(recipe.bytes);
   const jobs = recipe.stages.map((stage) => jobOf(stage, dirname(resolve(io.cwd, recipePath))));
   const progress = await makeProgress(io, jobs, options.quiet || options.json);
-  const outcomes = await execute(jobs, {
-    book,
-    cores: options.cores,
-    carry: !options.afresh,
-    enter: true,
-    strict: options.strict,
-    engine: stageEngine(io.env),
-    kindsFolder,
-    signal: options.signal,
-    reporter: progress,
-  }).finally(() => progress.close());
-  const byName = new Map(outcomes.map((outcome) => [outcome.name, outcome]));
-  const request = { recipe, jobs, outcomes: byName, book, folder: options.plates };
+  const byName = new Map<string, Outcome>();
+  const ahead = makeStampAhead();
+  const request = { recipe, jobs, outcomes: byName, book, folder: options.plates, ahead };
+  const drawing = new Set(recipe.publish.figures.map((figure) => figure.stage));
+  try {
+    const outcomes = await execute(jobs, {
+      book,
+      cores: options.cores,
+      carry: !options.afresh,
+      enter: true,
+      strict: options.strict,
+      engine: stageEngine(io.env),
+      kindsFolder,
+      signal: options.signal,
+      reporter: {
+        ...progress,
+        started(job) {
+          progress.started(job);
+          if (drawing.has(job.name)) ahead.expect();
+        },
+        ended(outcome) {
+          progress.ended(outcome);
+          byName.set(outcome.name, outcome);
+          if (outcome.state === 'computed') stampAheadOf(request, outcome.name);
+        },
+      },
+    }).finally(() => progress.close());
+    return await publishRun(request, outcomes, recipePath, recipeFile, io);
+  } finally {
+    await ahead.close();
+  }
+}
+
+async function publishRun(
+  request: PublishRequest,
+  outcomes: readonly Outcome[],
+  recipePath: string,
+  recipeFile: StoredFile,
+  io: Io,
+): Promise<RunSummary> {
+  const { recipe, book } = request;
   const plates = await publishFigures(request);
   const numbers = publishNumbers(request);
   const run = enterRun(
