@@ -2,16 +2,24 @@
 
 import { appendFileSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
-import { expect, test, vi } from 'vitest';
-import * as digest from '../../ledger/digest.ts';
-import { makeBook, temporary } from './make-book.ts';
+import { afterAll, beforeAll, expect, test, vi } from 'vitest';
 
-vi.mock(import('../../ledger/digest.ts'), async (original) => {
-  const real = await original();
-  return { ...real, digestOfDescriptor: vi.fn(real.digestOfDescriptor) };
+// Modules are shared with other files of tests: here they are loaded anew, with another module for digests.
+beforeAll(() => {
+  vi.resetModules();
+  vi.doMock(import('../../ledger/digest.ts'), async (original) => {
+    const real = await original();
+    return { ...real, digestOfDescriptor: vi.fn(real.digestOfDescriptor) };
+  });
+});
+afterAll(() => {
+  vi.doUnmock('../../ledger/digest.ts');
+  vi.resetModules();
 });
 
-test('is noticed, and its digest not remembered', () => {
+test('is noticed, and its digest not remembered', async () => {
+  const digest = await import('../../ledger/digest.ts');
+  const { makeBook, temporary } = await import('./make-book.ts');
   const { directory, remove } = temporary();
   const book = makeBook(join(directory, 'book'), { now: () => new Date(Date.now() + 3_600_000) });
   const path = join(directory, 'data.uvfits');

@@ -113,7 +113,8 @@ describe('run, trace, diff, rerun and audit on the small recipe', () => {
       expect(afresh.stages.every(({ state }: StageDocument) => state === 'computed')).toBe(true);
       expect(digests(afresh.stages)).toEqual(digests(first.stages));
     } finally {
-      process.env.TZ = zone;
+      if (zone === undefined) delete process.env.TZ;
+      else process.env.TZ = zone;
     }
   });
 
