@@ -10,10 +10,11 @@ import { median } from '../numerics/statistics.ts';
 import { normalTail } from '../numerics/tails.ts';
 import { InputProblem } from '../problem.ts';
 import {
-  type BaselineError,
   type BaselineErrors,
   baselineAmplitudes,
   baselinePhases,
+  mostSignificant,
+  significance,
 } from './baseline-errors.ts';
 import type { Outcome } from './checks.ts';
 import { judge } from './findings.ts';
@@ -52,6 +53,9 @@ const residualsSchema = z.object({
 
 /** An error of a baseline counts from so many of its own errors on. */
 const SIGNIFICANT = 4;
+/** Scatter of closures over their errors, without the baseline that explains it best, above which it is the model that does
+ *  not follow the data (common practice: as where scatter over the stated noise is marginal). */
+const FOLLOWED = 1.5;
 const DEGREES = 180 / Math.PI;
 
 export interface StationHistory {
@@ -176,15 +180,20 @@ const QUANTITIES: Readonly<Record<'baselinePhases' | 'baselineAmplitudes', { uni
 function checkBaselines(
   check: CheckName & keyof typeof QUANTITIES,
   stations: readonly string[],
-  { errors, closures, scatter }: BaselineErrors,
+  { errors, closures, scatter, remaining }: BaselineErrors,
   { limits, least }: CheckParameters,
 ): Outcome {
   if (closures < least) {
     return { check, tooLittle: `${closures} independent closures in the fit, at least ${least} are needed` };
   }
-  const size = ({ estimate, error }: BaselineError) => Math.abs(estimate) / error;
-  const best = errors.reduce((a, b) => (size(b) > size(a) ? b : a));
-  const isSignificant = size(best) > SIGNIFICANT;
+  if (!(remaining <= FOLLOWED)) {
+    const tooLittle =
+      `the fit leaves ${closures} independent closures with a scatter of ${remaining.toFixed(2)} over their errors when any one ` +
+      `baseline is set free, at most ${FOLLOWED} is told apart: what its model does not follow would be taken for a baseline's error`;
+    return { check, tooLittle };
+  }
+  const best = mostSignificant(errors);
+  const isSignificant = significance(best) > SIGNIFICANT;
   const { unit, words } = QUANTITIES[check];
   const digits = unit === 1 ? 3 : 1;
   const shown =

@@ -2,6 +2,7 @@
  *  error, a budget follow. */
 
 import type { Visibilities } from '../data.ts';
+import { chiSquareQuantile } from '../numerics/chi-square.ts';
 import {
   type Closure,
   closureCovariance,
@@ -11,7 +12,6 @@ import {
 } from '../numerics/closures.ts';
 import { atan2, cos, ln, sin } from '../numerics/elementary.ts';
 import { choleskyNearby, solveLower } from '../numerics/linear.ts';
-import { chiSquareQuantile } from '../numerics/statistics.ts';
 import type { SharedScan } from './colocated.ts';
 
 /** Values that differ from a common value only by their errors. `parts` is how many visibilities each is made of, so

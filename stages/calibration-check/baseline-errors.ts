@@ -32,6 +32,13 @@ export interface BaselineErrors {
   readonly closures: number;
   /** Of all differences over their errors, by their median size. */
   readonly scatter: number;
+  /** The same when the error of the most significant baseline is taken out: near 1 where that was all. */
+  readonly remaining: number;
+}
+
+/** The estimate over its error, without its sign. */
+export function significance({ estimate, error }: BaselineError): number {
+  return Math.abs(estimate) / error;
 }
 
 interface Values {
@@ -75,6 +82,13 @@ export function baselineAmplitudes(
   );
 }
 
+interface WhitenedScan {
+  /** Differences over their errors, independent. */
+  readonly d: Float64Array;
+  /** How an error of one enters them, by baseline. */
+  readonly signs: ReadonlyMap<string, Float64Array>;
+}
+
 /** Errors by baseline of what differs in closures. */
 export function errorsOf(
   data: Pick<ClosureData, 'station1' | 'station2'>,
@@ -82,18 +96,20 @@ export function errorsOf(
   difference: (closure: Closure) => number,
 ): BaselineErrors {
   const sums = new Map<string, { i: number; j: number; along: number; weight: number; scans: number }>();
-  const sizes: number[] = [];
+  const scans: WhitenedScan[] = [];
   for (const { closures, covariance } of sets) {
     const L = choleskyNearby(covariance, closures.length);
     if (L === null || closures.length === 0) continue;
     const d = solveLower(L, Float64Array.from(closures, difference));
-    for (const value of d) sizes.push(Math.abs(value));
+    const signs = new Map<string, Float64Array>();
+    scans.push({ d, signs });
     for (const row of new Set(closures.flatMap(({ rows }) => rows))) {
       const a = solveLower(
         L,
         Float64Array.from(closures, (closure) => signOf(closure, row)),
       );
       const [i, j] = [data.station1[row], data.station2[row]];
+      signs.set(`${i}-${j}`, a);
       const sum = sums.get(`${i}-${j}`) ?? { i, j, along: 0, weight: 0, scans: 0 };
       for (let k = 0; k < a.length; k++) {
         sum.along += a[k] * d[k];
@@ -103,7 +119,7 @@ export function errorsOf(
       sums.set(`${i}-${j}`, sum);
     }
   }
-  const scatter = sizes.length === 0 ? 0 : median(sizes) / normalQuantile(0.75);
+  const scatter = scatterOf(scans.map(({ d }) => d));
   const errors = [...sums.values()].map(({ i, j, along, weight, scans }) => ({
     station1: i,
     station2: j,
@@ -111,7 +127,30 @@ export function errorsOf(
     error: Math.max(1, scatter) / Math.sqrt(weight),
     scans,
   }));
-  return { errors, closures: sizes.length, scatter };
+  const remaining = errors.length === 0 ? scatter : scatterWithout(scans, mostSignificant(errors));
+  return { errors, closures: scans.reduce((count, { d }) => count + d.length, 0), scatter, remaining };
+}
+
+export function mostSignificant(errors: readonly BaselineError[]): BaselineError {
+  return errors.reduce((a, b) => (significance(b) > significance(a) ? b : a));
+}
+
+/** By the median size of independent values; 0 of none. */
+function scatterOf(values: readonly Float64Array[]): number {
+  const sizes = values.flatMap((d) => Array.from(d, Math.abs));
+  return sizes.length === 0 ? 0 : median(sizes) / normalQuantile(0.75);
+}
+
+function scatterWithout(
+  scans: readonly WhitenedScan[],
+  { station1, station2, estimate }: BaselineError,
+): number {
+  return scatterOf(
+    scans.map(({ d, signs }) => {
+      const a = signs.get(`${station1}-${station2}`);
+      return a === undefined ? d : d.map((value, k) => value - estimate * a[k]);
+    }),
+  );
 }
 
 function signOf({ rows, signs }: Closure, row: number): number {

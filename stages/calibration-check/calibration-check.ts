@@ -27,7 +27,7 @@ function limits(doc: string, marginal: number, limit: number, why: string): Para
 
 export const calibrationCheck = {
   kind: 'calibration-check',
-  version: 3,
+  version: 4,
   doc:
     'Checks the calibration on what must agree whatever the source looks like: triangles with two co-located stations ' +
     'close to zero and follow neither Sun, elevation nor time, co-located stations see the same far baselines, closures ' +

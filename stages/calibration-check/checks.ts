@@ -1,9 +1,9 @@
 /** The checks one by one: each gives a finding, or the reason why there was too little to check. */
 
 import type { Visibilities } from '../data.ts';
+import { chiSquareTail } from '../numerics/chi-square.ts';
 import { type Closure, closurePhase } from '../numerics/closures.ts';
 import { median } from '../numerics/statistics.ts';
-import { chiSquareTail } from '../numerics/tails.ts';
 import {
   type Agreement,
   agreement,

@@ -4,9 +4,10 @@
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
 import { readJson } from '../formats/json.ts';
+import { chiSquareQuantile, chiSquareTail } from '../numerics/chi-square.ts';
 import { exp, ln } from '../numerics/elementary.ts';
-import { chiSquareQuantile, median } from '../numerics/statistics.ts';
-import { binomialTail, chiSquareTail } from '../numerics/tails.ts';
+import { median } from '../numerics/statistics.ts';
+import { binomialTail } from '../numerics/tails.ts';
 import { InputProblem } from '../problem.ts';
 import type { Outcome } from './checks.ts';
 import { judge } from './findings.ts';

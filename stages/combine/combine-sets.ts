@@ -17,7 +17,7 @@
  *  Sets count as independent: an error that they share (a distance, a calibration, the method's bias) is no smaller in the
  *  mean, but comes out so. */
 
-import { gammaIncomplete } from '../numerics/special.ts';
+import { gammaIncomplete } from '../numerics/gamma.ts';
 import { normalQuantile } from '../numerics/statistics.ts';
 import { studentQuantile } from '../numerics/student.ts';
 

@@ -19,9 +19,10 @@
  *  the largest. So v is taken as the same for all trials. That of a position angle goes as its s^2, since an angle is
  *  known as well as the ring is lopsided. */
 
+import { chiSquareQuantile } from '../numerics/chi-square.ts';
 import { leastSquares } from '../numerics/linear.ts';
 import type { RandomStream } from '../numerics/random.ts';
-import { angleDifference, chiSquareQuantile, mean, quantiles } from '../numerics/statistics.ts';
+import { angleDifference, mean, quantiles } from '../numerics/statistics.ts';
 import { LEAST_RINGS } from './ring-verdict.ts';
 import { QUANTITIES, type Quantity, type Trial } from './trial.ts';
 

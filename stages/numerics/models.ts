@@ -14,8 +14,8 @@
  *  and 13; the ring's asymmetry by the expansion of Jacobi and Anger). Lengths are radians, u and v wavelengths,
  *  angles radians, position angles from north through east, x to the east. A negative flux makes a hole. */
 
+import { besselJ0, besselJ1 } from './bessel.ts';
 import { cos, exp, sin } from './elementary.ts';
-import { besselJ0, besselJ1 } from './special.ts';
 
 export type Shape = 'point' | 'gaussian' | 'disc' | 'ring' | 'box';
 

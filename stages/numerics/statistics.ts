@@ -1,7 +1,7 @@
 /** Order statistics, circular means, quantiles of two distributions. */
 
 import { atan2, cos, ln, sin } from './elementary.ts';
-import { erfcInverse, gammaIncompleteInverse } from './special.ts';
+import { erfcInverse } from './error-function.ts';
 
 /** Returns the quantile of values by linear interpolation between order statistics, (n-1) q from 0.
  *  Hyndman and Fan 1996, Am. Stat. 50, 361, type 7. @throws RangeError for no values or q outside [0, 1]. */
@@ -89,9 +89,4 @@ export function angleDifference(a: number, b: number): number {
 /** Returns x with P(Z <= x) = p for a standard normal Z. */
 export function normalQuantile(p: number): number {
   return -Math.SQRT2 * erfcInverse(2 * p);
-}
-
-/** Returns x with P(X <= x) = p for a chi-square X with k degrees of freedom, 2 P^-1(k/2, p). */
-export function chiSquareQuantile(p: number, k: number): number {
-  return 2 * gammaIncompleteInverse(p, k / 2);
 }

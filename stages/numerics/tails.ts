@@ -2,17 +2,13 @@
  *  normal value would need for it. */
 
 import { exp, expm1, ln, log1p } from './elementary.ts';
-import { erfc, gammaIncomplete, lnGamma } from './special.ts';
+import { erfc } from './error-function.ts';
+import { lnGamma } from './gamma.ts';
 import { normalQuantile } from './statistics.ts';
 
 /** P(Z > x) for a standard normal Z. */
 export function normalTail(x: number): number {
   return 0.5 * erfc(x / Math.SQRT2);
-}
-
-/** P(X > x) for a chi-square X with k degrees of freedom: Q(k/2, x/2). */
-export function chiSquareTail(x: number, k: number): number {
-  return x > 0 ? Math.min(1, Math.max(0, gammaIncomplete(x / 2, k / 2, true, true))) : 1;
 }
 
 /** P(X >= least) for a binomial X of n trials of probability p, by summing the terms. Cost O(n). */

@@ -1,6 +1,6 @@
 /** From observations beside their truths to bias, scatter, coverage, ranks; and the targets that these are held against. */
 
-import { gammaIncomplete } from '../numerics/special.ts';
+import { gammaIncomplete } from '../numerics/gamma.ts';
 import { mean, standardDeviation } from '../numerics/statistics.ts';
 
 export interface SuiteQuantity {

@@ -16,9 +16,12 @@ const PYTHON = '/usr/bin/python3';
 const folder = mkdtempSync(join(tmpdir(), 'platebook-demonstration-'));
 const bag = join(folder, 'bag');
 let files: string[] = [];
+let said = '';
 
 beforeAll(() => {
-  expect(platebook(['run', recipe, '--quiet'], folder)).toMatchObject({ status: 0 });
+  const run = platebook(['run', recipe], folder);
+  expect(run).toMatchObject({ status: 0 });
+  said = run.out;
   const made = platebook(['bag', 'run', '1', '--to', 'bag'], folder);
   expect(made).toMatchObject({ status: 0 });
   files = filesBelow(bag);
@@ -143,5 +146,20 @@ test('is taken over into another book, and its proof still checks', () => {
   for (const proof of proofs) {
     const script = files.find((file) => file.endsWith('check-proof.mjs')) as string;
     expect(spawnSync(process.execPath, [join(bag, script), join(bag, proof)]).status, proof).toBe(0);
+  }
+});
+
+/** The commands which a run suggests, as a shell would run them from the folder of the run; last, since they add to the book. */
+test('what the run suggests to go on with works, word for word', () => {
+  const suggested = said.slice(said.indexOf('To go on:')).split('\n').slice(1);
+  const lines = suggested.map((line) => line.trim()).filter((line) => line.startsWith('npx platebook '));
+  expect(lines.length).toBeGreaterThanOrEqual(3);
+  for (const command of lines.flatMap((line) => line.split(' && '))) {
+    const { status, out } = platebook(command.split(' ').slice(2), folder);
+    expect({ command, status, says: out !== '' || command.includes('--quiet') }).toEqual({
+      command,
+      status: 0,
+      says: true,
+    });
   }
 });

@@ -3,8 +3,8 @@
  *  Numerical Recipes, 3rd ed., section 15.2; recomputed with mpmath and numpy). */
 
 import { expect, test } from 'vitest';
+import { besselJ0 } from '../../stages/numerics/bessel.ts';
 import { cholesky, invertSymmetric, leastSquares, solveCholesky } from '../../stages/numerics/linear.ts';
-import { besselJ0 } from '../../stages/numerics/special.ts';
 import { filip, longley, norris, type Regression, wampler1 } from './nist-regression.ts';
 
 /** Digits that agree: -log10 of the relative error (McCullough 1998, Am. Stat. 52, 358), the worst of the list. */

@@ -1,15 +1,10 @@
 /** Tail probabilities, rank correlation and the Sun against tables and worked examples. */
 
 import { describe, expect, test } from 'vitest';
+import { chiSquareTail } from '../../stages/numerics/chi-square.ts';
 import { rankCorrelation } from '../../stages/numerics/rank-correlation.ts';
 import { separation, sunAt } from '../../stages/numerics/sun.ts';
-import {
-  binomialTail,
-  chiSquareTail,
-  deviationsOf,
-  normalTail,
-  ofTrials,
-} from '../../stages/numerics/tails.ts';
+import { binomialTail, deviationsOf, normalTail, ofTrials } from '../../stages/numerics/tails.ts';
 
 const DEGREE = Math.PI / 180;
 

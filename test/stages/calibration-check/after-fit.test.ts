@@ -156,6 +156,27 @@ describe('Baselines after a fit', () => {
     ]);
   });
 
+  test.each([3, 8])(
+    'of a fit that does not follow the data are not judged (errors %d times as large)',
+    (times) => {
+      const { stations, visibilities } = residuals(1);
+      const poor = { ...visibilities, sigma: visibilities.sigma.map((value) => value / times) };
+      const { outcomes } = checkAfterFit(
+        undefined,
+        json({ stations, visibilities: poor }, 'residuals'),
+        parameters,
+      );
+      expect(outcomes).toEqual(
+        ['baselinePhases', 'baselineAmplitudes'].map((check) => ({
+          check,
+          tooLittle: expect.stringMatching(
+            /^the fit leaves \d+ independent closures with a scatter of \d\.\d\d over their errors when any one baseline is set free, at most 1\.5 is told apart: /,
+          ),
+        })),
+      );
+    },
+  );
+
   test('cannot be read from another document', () => {
     expect(() => checkAfterFit(undefined, json({ stations: [] }, 'residuals'), parameters)).toThrow(
       /^residuals, visibilities: wrong-document: expected the output `residuals` of a stage of kind fit, got /,

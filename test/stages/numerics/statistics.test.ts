@@ -2,9 +2,9 @@
 
 import fc from 'fast-check';
 import { expect, test } from 'vitest';
+import { chiSquareQuantile } from '../../../stages/numerics/chi-square.ts';
 import {
   angleDifference,
-  chiSquareQuantile,
   circularMean,
   median,
   medianDeviation,
