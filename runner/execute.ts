@@ -6,18 +6,11 @@ import { join } from 'node:path';
 import type { Book } from '../ledger/book.ts';
 import { canonicalJson } from '../ledger/canonical.ts';
 import { sha256 } from '../ledger/digest.ts';
-import type {
-  Origin,
-  RecordedCode,
-  RecordedInput,
-  StageEntry,
-  StageRecord,
-  StoredFile,
-} from '../ledger/entry.ts';
+import type { RecordedCode, StageEntry, StageRecord, StoredFile } from '../ledger/entry.ts';
 import type { Format } from '../stages/kind.ts';
 import { codeOfKind } from './code-digest.ts';
-import { isGood, type Job, type JobInput, madeOutputs, type Outcome, upstreamOf } from './job.ts';
-import { RunnerProblem } from './problem.ts';
+import { isGood, type Job, madeOutputs, type Outcome, upstreamOf } from './job.ts';
+import { confirmUnchanged, mapLists, type ResolvedInput, resolveInputs } from './job-inputs.ts';
 import { keepCode } from './recorded-code/keep.ts';
 import { makeScratch, removeScratch, runStage, StageFailure, type StageResult } from './stage-process.ts';
 import { writeWhole } from './write-whole.ts';
@@ -48,13 +41,14 @@ export interface ExecutionOptions {
 export async function execute(jobs: readonly Job[], options: ExecutionOptions): Promise<Outcome[]> {
   const outcomes = new Map<string, Outcome>();
   const running = new Map<string, Promise<Outcome>>();
+  const inTurn = longestWayFirst(jobs);
   const settle = (outcome: Outcome) => {
     outcomes.set(outcome.name, outcome);
     options.reporter.ended(outcome);
   };
   try {
     while (outcomes.size < jobs.length) {
-      for (const job of jobs) {
+      for (const job of inTurn) {
         if (outcomes.has(job.name) || running.has(job.name)) continue;
         const upstream = upstreamOf(job).map((name) => outcomes.get(name));
         if (options.signal.aborted || upstream.some((o) => o && (!isGood(o) || o.stop !== null))) {
@@ -74,6 +68,20 @@ export async function execute(jobs: readonly Job[], options: ExecutionOptions): 
   return jobs.map((job) => outcomes.get(job.name) as Outcome);
 }
 
+/** The jobs that most others wait for, one after another, come first; of equal ones the first of the recipe. */
+function longestWayFirst(jobs: readonly Job[]): Job[] {
+  const ways = new Map<string, number>();
+  const wayOf = (job: Job): number => {
+    const known = ways.get(job.name);
+    if (known !== undefined) return known;
+    const waiting = jobs.filter((other) => upstreamOf(other).includes(job.name));
+    const way = 1 + Math.max(0, ...waiting.map(wayOf));
+    ways.set(job.name, way);
+    return way;
+  };
+  return [...jobs].sort((a, b) => wayOf(b) - wayOf(a));
+}
+
 function notReached(job: Job): Outcome {
   return { ...unended(job), state: 'not reached', entry: null };
 }
@@ -91,11 +99,6 @@ function unended(job: Job) {
     error: null,
     codeDigest: null,
   };
-}
-
-interface ResolvedInput extends RecordedInput {
-  readonly path: string;
-  readonly watched: string | null;
 }
 
 /** Resolves inputs, looks the key up, runs the stage where nothing stands, enters the result. */
@@ -135,66 +138,6 @@ async function perform(
     return enterFailure(job, record, error, options);
   } finally {
     removeScratch(scratch);
-  }
-}
-
-function resolveInputs(job: Job, outcomes: ReadonlyMap<string, Outcome>, options: ExecutionOptions) {
-  const resolve = (input: JobInput): ResolvedInput => {
-    if (input.from === 'store') {
-      return {
-        ...input.file,
-        origin: input.origin,
-        path: options.book.store.path(input.file.digest),
-        watched: null,
-      };
-    }
-    if (input.from === 'file') return resolveFile(input, options);
-    const upstream = outcomes.get(input.stage);
-    const file = upstream?.outputs[input.output];
-    if (upstream === undefined || file === undefined) throw missingOutput(input.stage, input.output);
-    const origin: Origin = { entry: upstream.entry ?? 0, output: input.output };
-    const path = options.book.store.path(file.digest);
-    return { digest: file.digest, bytes: file.bytes, origin, path, watched: null };
-  };
-  return mapLists(job.inputs, resolve);
-}
-
-function resolveFile(input: Extract<JobInput, { from: 'file' }>, options: ExecutionOptions): ResolvedInput {
-  const { digest, bytes } = options.book.digestOfFile(input.path, { strict: options.strict });
-  if (input.expected !== null && input.expected !== digest) {
-    throw new RunnerProblem(
-      'input-changed',
-      `${input.given}: expected the file with digest ${input.expected.slice(0, 12)}…, got one with digest ` +
-        `${digest.slice(0, 12)}…. Restore the recorded file, or run the recipe anew on the present one.`,
-      { file: input.path },
-      1,
-    );
-  }
-  if (input.keep) options.book.store.keepFile(input.path);
-  return { digest, bytes, origin: { file: input.given }, path: input.path, watched: input.path };
-}
-
-function missingOutput(stage: string, output: string): RunnerProblem {
-  const message = `${stage}.${output}: expected an output in the store, got none. Run again with --afresh.`;
-  return new RunnerProblem('missing-output', message, {}, 1);
-}
-
-/** A file that changed while a stage read it leaves a result without a known input. */
-function confirmUnchanged(
-  inputs: Readonly<Record<string, readonly ResolvedInput[]>>,
-  options: ExecutionOptions,
-): void {
-  for (const input of Object.values(inputs).flat()) {
-    if (input.watched === null) continue;
-    const now = options.book.digestOfFile(input.watched, { strict: false });
-    if (now.digest === input.digest) continue;
-    throw new RunnerProblem(
-      'input-changed',
-      `${input.watched}: expected a file that stays as it is, got one that changed while a stage read it. ` +
-        `Let its writer finish and run again.`,
-      { file: input.watched },
-      1,
-    );
   }
 }
 
@@ -283,13 +226,6 @@ function enterFailure(
   const { entry } = options.book.append({ ...record, ...facts, type: 'failure', error });
   if (failure.logFile !== null) layLog(options.book, failure.logFile, entry.number, job.name);
   return { ...ended, entry: entry.number };
-}
-
-function mapLists<A, B>(
-  lists: Readonly<Record<string, readonly A[]>>,
-  each: (item: A) => B,
-): Record<string, readonly B[]> {
-  return Object.fromEntries(Object.entries(lists).map(([name, items]) => [name, items.map(each)]));
 }
 
 /** The log lies in the store, where its digest guards it, and under a name that a person finds. Its entry is written by

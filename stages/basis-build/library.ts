@@ -2,7 +2,7 @@
 
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
-import { readJson } from '../formats/json.ts';
+import { readDocument } from '../formats/document.ts';
 import { readSkyCube } from '../formats/sky-image.ts';
 import type { PixelGrid } from '../numerics/fourier.ts';
 import { InputProblem } from '../problem.ts';
@@ -41,16 +41,9 @@ export function openLibrary(cubeSource: ByteSource, manifestSource: ByteSource):
 }
 
 function readFamilies(source: ByteSource): string[] {
-  const result = manifestSchema.safeParse(readJson(source));
-  if (result.success) return result.data.images.map(({ family }) => family);
-  const [issue] = result.error.issues;
-  throw new InputProblem({
-    code: 'bad-manifest',
-    place: `${source.name}, ${issue?.path.join('.') || 'the document'}`,
-    expected: 'a list images, each with its family, a text of 1 to 24 characters',
-    found: issue?.message ?? 'something else',
-    advice: 'Give the manifest that image-library wrote.',
-  });
+  const expected = 'a list images, each with its family, a text of 1 to 24 characters';
+  const advice = 'Give the manifest that image-library wrote.';
+  return readDocument(manifestSchema, source, expected, advice).images.map(({ family }) => family);
 }
 
 /** Below this fraction of the sum of magnitudes a flux is rounding. */

@@ -4,11 +4,10 @@
 
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
-import { readJson } from '../formats/json.ts';
+import { readDocument } from '../formats/document.ts';
 import { type ClosureData, closureSets } from '../numerics/closures.ts';
 import { median } from '../numerics/statistics.ts';
 import { normalTail } from '../numerics/tails.ts';
-import { InputProblem } from '../problem.ts';
 import {
   type BaselineErrors,
   baselineAmplitudes,
@@ -79,9 +78,9 @@ export function checkAfterFit(
   residuals: ByteSource | undefined,
   parameters: CheckParameters,
 ): AfterFit {
-  const stationGains = report ? historiesOf(parsed(reportSchema, report, 'report')) : null;
+  const stationGains = report ? historiesOf(readDocument(reportSchema, report, expected('report'))) : null;
   const errors = residuals
-    ? measureBaselines(parsed(residualsSchema, residuals, 'residuals'), parameters)
+    ? measureBaselines(readDocument(residualsSchema, residuals, expected('residuals')), parameters)
     : null;
   return {
     outcomes: [
@@ -97,6 +96,8 @@ export function checkAfterFit(
     baselines: errors && baselinesReport(errors),
   };
 }
+
+const expected = (output: string) => `the output \`${output}\` of a stage of kind fit`;
 
 function historiesOf({ gains }: z.infer<typeof reportSchema>): StationHistory[] {
   const names = [...new Set(gains.scans.flatMap(({ stations }) => stations))];
@@ -221,16 +222,4 @@ function baselinesReport({ stations, phases, amplitudes }: MeasuredBaselines) {
       scans,
     }));
   return { phasesDegrees: list(phases, DEGREES), logAmplitudes: list(amplitudes, 1) };
-}
-
-function parsed<T>(schema: z.ZodType<T>, source: ByteSource, output: string): T {
-  const result = schema.safeParse(readJson(source));
-  if (result.success) return result.data;
-  throw new InputProblem({
-    code: 'wrong-document',
-    place: `${source.name}, ${result.error.issues[0]?.path.join('.') || 'the document'}`,
-    expected: `the output \`${output}\` of a stage of kind fit`,
-    found: result.error.issues[0]?.message ?? 'something else',
-    advice: 'Refer to the right output.',
-  });
 }

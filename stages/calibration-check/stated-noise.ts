@@ -3,12 +3,11 @@
 
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
-import { readJson } from '../formats/json.ts';
+import { readDocument } from '../formats/document.ts';
 import { chiSquareQuantile, chiSquareTail } from '../numerics/chi-square.ts';
 import { exp, ln } from '../numerics/elementary.ts';
 import { median } from '../numerics/statistics.ts';
 import { binomialTail } from '../numerics/tails.ts';
-import { InputProblem } from '../problem.ts';
 import type { Outcome } from './checks.ts';
 import { judge } from './findings.ts';
 import type { CheckParameters } from './parameters.ts';
@@ -107,13 +106,7 @@ function stationsOf({ baseline }: BaselineScatter): string[] {
 }
 
 function readScatter(source: ByteSource): Scatter {
-  const result = reportSchema.safeParse(readJson(source));
-  if (result.success) return result.data.scatter;
-  throw new InputProblem({
-    code: 'report',
-    place: `${source.name}, ${result.error.issues[0]?.path.join('.') || 'the document'}`,
-    expected: 'the report of a stage of kind ingest, with scatter.averages and scatter.median',
-    found: result.error.issues[0]?.message ?? 'something else',
-    advice: 'Refer to the output `report` of the stage that made the visibilities.',
-  });
+  const expected = 'the report of a stage of kind ingest, with scatter.averages and scatter.median';
+  const advice = 'Refer to the output `report` of the stage that made the visibilities.';
+  return readDocument(reportSchema, source, expected, advice).scatter;
 }

@@ -3,7 +3,7 @@
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
 import { readBasis } from '../formats/basis.ts';
-import { readJson } from '../formats/json.ts';
+import { readDocument } from '../formats/document.ts';
 import { readPosterior } from '../formats/posterior.ts';
 import type { Alternative } from '../imaging/error-parts.ts';
 import { biasOf, type MethodBias } from '../imaging/method-bias.ts';
@@ -33,12 +33,12 @@ const modelsSchema = z.object({ ringPreferred: z.boolean(), centre: z.number(), 
  *  @throws InputProblem when a document is no such thing */
 export function readBias(sources: readonly ByteSource[]): MethodBias | null {
   const expected = 'the output `bias` of a stage of kind injection';
-  return biasOf(sources.flatMap((source) => parsed(biasSchema, source, expected).trials));
+  return biasOf(sources.flatMap((source) => readDocument(biasSchema, source, expected).trials));
 }
 
 /** @throws InputProblem when the document is no such thing */
 export function readModels(source: ByteSource): ModelsVerdict {
-  return parsed(modelsSchema, source, 'the output `models` of a stage of kind fit');
+  return readDocument(modelsSchema, source, 'the output `models` of a stage of kind fit');
 }
 
 /** @throws InputProblem when there are not as many bases as samples */
@@ -52,17 +52,5 @@ export function readOthers(bases: readonly ByteSource[], samples: readonly ByteS
     expected: 'a basis for every table of samples, in the same order',
     found: `${bases.length} bases and ${samples.length} tables of samples`,
     advice: 'Name both outputs of every other fit.',
-  });
-}
-
-function parsed<T>(schema: z.ZodType<T>, source: ByteSource, expected: string): T {
-  const result = schema.safeParse(readJson(source));
-  if (result.success) return result.data;
-  throw new InputProblem({
-    code: 'wrong-document',
-    place: `${source.name}, ${result.error.issues[0]?.path.join('.') || 'the document'}`,
-    expected,
-    found: result.error.issues[0]?.message ?? 'something else',
-    advice: 'Refer to the right output.',
   });
 }

@@ -2,9 +2,9 @@
 
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
-import { readJson } from '../formats/json.ts';
+import { readDocument } from '../formats/document.ts';
 import { median } from '../numerics/statistics.ts';
-import { InputProblem } from '../problem.ts';
+import { ADVICE } from './findings.ts';
 
 const numbers = z.array(z.number());
 
@@ -45,18 +45,8 @@ export interface CalibrationReport {
 
 /** Reads a report. @throws InputProblem when it is none */
 export function readCalibration(source: ByteSource): CalibrationReport {
-  const parsed = reportSchema.safeParse(readJson(source));
-  if (!parsed.success) {
-    const issue = parsed.error.issues[0];
-    throw new InputProblem({
-      code: 'bad-report',
-      place: `${source.name}, ${issue.path.join('.') || 'document'}`,
-      expected: 'a report with findings and their limits, as the calibration check writes it',
-      found: issue.message,
-      advice: 'Give the output report of a calibration check.',
-    });
-  }
-  const { findings, gainRatios = [], gainsOverTime } = parsed.data;
+  const expected = 'a report with findings and their limits, as the calibration check writes it';
+  const { findings, gainRatios = [], gainsOverTime } = readDocument(reportSchema, source, expected, ADVICE);
   const lanes =
     gainsOverTime?.map(({ station, scans, logGain, deviations }) =>
       laneOf(station, scans, logGain, deviations),

@@ -19,6 +19,7 @@ import { drawData } from './data-plot.ts';
 import { describeFindings, readFindings } from './findings.ts';
 import { drawImage } from './image-plot.ts';
 import { posteriorMarginals } from './marginals.ts';
+import { measureRings, readMeasuredRings } from './measured-rings.ts';
 import { drawPosterior } from './posterior-plot.ts';
 import { drawProfile } from './profile.ts';
 import { readResiduals } from './residuals.ts';
@@ -58,9 +59,12 @@ const drawings: Readonly<Record<string, Draw>> = {
     return drawCalibration({ heading, remark, ...report });
   },
   posterior: (given, { draws }, progress) => {
-    const { heading, remark, truth } = given;
+    const { heading, remark, truth, sources } = given;
     const [basis, samples] = [required(given.basis, 'basis'), required(given.samples, 'samples')];
-    const found = posteriorMarginals(basis, samples, draws, truth?.image ?? null, progress);
+    const report = sources.features?.[0];
+    const rings =
+      report === undefined ? measureRings(basis, samples, draws, progress) : readMeasuredRings(report);
+    const found = posteriorMarginals(basis, samples, rings, truth?.image ?? null);
     return drawPosterior({ heading, remark, ...found });
   },
 };

@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
  *  inputs are given. */
 export const figure = {
   kind: 'figure',
-  version: 6,
+  version: 7,
   doc: 'Draws coverage, data, image, profile, components, spectrum, posterior and calibration as SVG.',
   source:
     'Colours: CIE 15:2004 and IEC 61966-2-1, maps of our own. Interpolation: Keys 1981, IEEE Trans. ASSP 29, 1153. ' +
@@ -20,6 +20,11 @@ export const figure = {
     samples: { format: 'fits-table', optional: true, doc: 'Draws of the posterior, as fit writes them.' },
     residuals: { format: 'json', optional: true, doc: "Data with the model's values, as fit writes them." },
     ring: { format: 'numbers', optional: true, doc: 'Numbers of the ring, drawn over image and profile.' },
+    features: {
+      format: 'json',
+      optional: true,
+      doc: 'The report of features: the posterior shows the rings that it measured, not some measured anew.',
+    },
     truth: {
       format: 'fits-image',
       optional: true,
@@ -64,7 +69,7 @@ export const figure = {
       from: 16,
       to: 20000,
       default: 400,
-      doc: 'Draws, evenly taken from the posterior, in which the ring is measured for its histograms.',
+      doc: 'Draws, evenly taken from the posterior, in which the ring is measured for its histograms when the report of features is not given.',
       why: 'The 68 % interval of 400 draws is known to about 5 % of its length; a draw takes some milliseconds.',
     },
   },

@@ -2,8 +2,7 @@
 
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
-import { readJson } from '../formats/json.ts';
-import { InputProblem } from '../problem.ts';
+import { readDocument } from '../formats/document.ts';
 
 const reportSchema = z.object({
   findings: z.array(
@@ -11,20 +10,15 @@ const reportSchema = z.object({
   ),
 });
 
+/** Where a calibration report is meant. */
+export const ADVICE = 'Give the output report of a calibration check.';
+
 export type CalibrationFindings = z.infer<typeof reportSchema>['findings'];
 
 /** Reads the findings of a calibration report. @throws InputProblem when it has none. */
 export function readFindings(source: ByteSource): CalibrationFindings {
-  const parsed = reportSchema.safeParse(readJson(source));
-  if (parsed.success) return parsed.data.findings;
-  const issue = parsed.error.issues[0];
-  throw new InputProblem({
-    code: 'bad-report',
-    place: `${source.name}, ${issue.path.join('.') || 'document'}`,
-    expected: 'a report with findings, as the calibration check writes it',
-    found: issue.message,
-    advice: 'Give the output report of a calibration check.',
-  });
+  const expected = 'a report with findings, as the calibration check writes it';
+  return readDocument(reportSchema, source, expected, ADVICE).findings;
 }
 
 /** Returns one line such as `Calibration: 4 checks within limits, marginal: closure-scatter`. */

@@ -1,23 +1,21 @@
-/** What the posterior plot shows: the flux, the numbers of the ring measured in a part of the draws, and the leading
- *  coefficients. */
+/** What the posterior plot shows: the flux, the numbers of the rings that were measured, and the leading coefficients. */
 
 import type { Basis, Posterior, SkyImage } from '../data.ts';
-import { measureRing, type RingMeasurement } from '../numerics/ring.ts';
 import { angleDifference, circularMean } from '../numerics/statistics.ts';
+import { type MeasuredRings, type RingValues, ringOf } from './measured-rings.ts';
 import type { Marginal } from './posterior-plot.ts';
-import { evenDraws, imageOfDraw, MICROARCSEC } from './sky.ts';
 
 interface RingNumber {
   readonly name: string;
   readonly unit: string;
-  readonly of: (ring: RingMeasurement) => number | null;
+  readonly of: (ring: RingValues) => number | null;
 }
 
 const ringNumbers: readonly RingNumber[] = [
-  { name: 'ring diameter', unit: 'µas', of: (ring) => ring.diameter / MICROARCSEC },
-  { name: 'ring width', unit: 'µas', of: (ring) => (ring.width === null ? null : ring.width / MICROARCSEC) },
+  { name: 'ring diameter', unit: 'µas', of: (ring) => ring.diameter },
+  { name: 'ring width', unit: 'µas', of: (ring) => ring.width },
   { name: 'asymmetry', unit: '', of: (ring) => ring.asymmetry },
-  { name: 'position angle', unit: '°', of: (ring) => ring.positionAngleDegrees },
+  { name: 'position angle', unit: '°', of: (ring) => ring.positionAngle },
   { name: 'central depression', unit: '', of: (ring) => ring.centralDepression },
 ];
 
@@ -26,46 +24,30 @@ const LEAST_RINGS = 0.5;
 /** Leading coefficients shown: with the ring they fill three rows of three, without it two. */
 const COEFFICIENTS = { beside: 3, alone: 5 };
 
-/** Returns the marginals and a sentence on them.
- *  @param wanted    draws in which the ring is measured
- *  @param truth     the truth at the resolution of the images, or null
- *  @param progress  called with a fraction 0 to 1
- *  Cost: some milliseconds a draw. */
+/** Returns the marginals and a sentence on them. @param truth  at the resolution of the images, or null */
 export function posteriorMarginals(
   basis: Basis,
   posterior: Posterior,
-  wanted: number,
+  { draws, rings }: MeasuredRings,
   truth: SkyImage | null,
-  progress: (fraction: number) => void,
 ): { readonly marginals: Marginal[]; readonly note: string } {
-  const draws = evenDraws(posterior, wanted);
-  const rings: RingMeasurement[] = [];
-  draws.forEach((draw, k) => {
-    const ring = ringOf(imageOfDraw(basis, posterior, draw));
-    if (ring?.ring) rings.push(ring);
-    progress((k + 1) / draws.length);
-  });
   const flux: Marginal = {
     name: 'flux of the image',
     unit: 'Jy',
     values: posterior.flux,
     ...truthOf(totalFlux(truth)),
   };
-  if (!(rings.length >= LEAST_RINGS * draws.length)) {
-    const note = `${posterior.count} draws; a ring in ${rings.length} of ${draws.length} looked at, too few to show`;
+  if (!(rings.length >= LEAST_RINGS * draws)) {
+    const note = `${posterior.count} draws; a ring in ${rings.length} of ${draws} looked at, too few to show`;
     return { marginals: [flux, ...coefficients(basis, posterior, COEFFICIENTS.alone)], note };
   }
   const trueRing = truth === null ? null : ringOf(truth);
-  const ring = ringNumbers.map((number) => ringMarginal(number, rings, trueRing?.ring ? trueRing : null));
-  const note = `${posterior.count} draws; ring measured in ${draws.length}, found in ${rings.length}`;
+  const ring = ringNumbers.map((number) => ringMarginal(number, rings, trueRing));
+  const note = `${posterior.count} draws; ring measured in ${draws}, found in ${rings.length}`;
   return { marginals: [flux, ...ring, ...coefficients(basis, posterior, COEFFICIENTS.beside)], note };
 }
 
-function ringMarginal(
-  number: RingNumber,
-  rings: readonly RingMeasurement[],
-  truth: RingMeasurement | null,
-): Marginal {
+function ringMarginal(number: RingNumber, rings: readonly RingValues[], truth: RingValues | null): Marginal {
   const { name, unit } = number;
   const found = rings.map(number.of).filter((value) => value !== null);
   const trueValue = truth === null ? null : number.of(truth);
@@ -92,11 +74,6 @@ function coefficients(basis: Basis, posterior: Posterior, most: number): Margina
       return posterior.coefficients[s * posterior.components + k] / scale;
     }),
   }));
-}
-
-/** The ring of an image; null for an image in which nothing can be measured. */
-function ringOf(image: SkyImage): RingMeasurement | null {
-  return image.pixels.some((value) => value > 0) ? measureRing(image) : null;
 }
 
 function totalFlux(image: SkyImage | null): number | null {

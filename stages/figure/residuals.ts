@@ -3,10 +3,11 @@
 
 import { z } from 'zod';
 import type { ByteSource } from '../bytes.ts';
-import { readJson } from '../formats/json.ts';
+import { readDocument } from '../formats/document.ts';
 import { InputProblem } from '../problem.ts';
 import type { DataSeries } from './data-plot.ts';
 
+const ADVICE = 'Give the output residuals of a fit.';
 const numbers = z.array(z.number());
 
 const residualsSchema = z.object({
@@ -55,23 +56,16 @@ export interface DrawnResiduals {
 
 /** Reads residuals. @throws InputProblem when the document is not laid out so. */
 export function readResiduals(source: ByteSource): DrawnResiduals {
-  const parsed = residualsSchema.and(opticalSchema).safeParse(readJson(source));
-  if (!parsed.success) {
-    const issue = parsed.error.issues[0];
-    throw badResiduals(
-      `${source.name}, ${issue.path.join('.') || 'document'}`,
-      'residuals as fit writes them',
-      issue.message,
-    );
-  }
-  const { visibilities, closurePhases } = parsed.data;
+  const schema = residualsSchema.and(opticalSchema);
+  const residuals = readDocument(schema, source, 'residuals as fit writes them', ADVICE);
+  const { visibilities, closurePhases } = residuals;
   requireLists(source.name, 'visibilities', visibilities, visibilities.sigma);
   requireLists(source.name, 'closurePhases', closurePhases, closurePhases.sigmaDegrees);
   return {
-    amplitudes: amplitudeSeries(parsed.data),
-    closurePhases: phaseSeries(source.name, parsed.data),
-    squared: squaredSeries(source.name, parsed.data),
-    triplePhases: tripleSeries(source.name, parsed.data),
+    amplitudes: amplitudeSeries(residuals),
+    closurePhases: phaseSeries(source.name, residuals),
+    squared: squaredSeries(source.name, residuals),
+    triplePhases: tripleSeries(source.name, residuals),
   };
 }
 
@@ -193,6 +187,6 @@ function badResiduals(place: string, expected: string, found: string): InputProb
     place,
     expected,
     found,
-    advice: 'Give the output residuals of a fit.',
+    advice: ADVICE,
   });
 }

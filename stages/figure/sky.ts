@@ -1,8 +1,7 @@
 /** What the drawings of the sky share: units, the image of one draw, brightness, blurring, azimuthal averages. */
 
-import type { Basis, Posterior, SkyImage } from '../data.ts';
+import type { Posterior, SkyImage } from '../data.ts';
 import { cos, exp, ln, sin } from '../numerics/elementary.ts';
-import { addCombination } from '../numerics/linear.ts';
 import { makeSplineImage, splineValue } from '../numerics/spline-image.ts';
 
 /** Radians per microarcsecond. */
@@ -22,19 +21,6 @@ export function angleUnit(radians: number): { readonly name: string; readonly ra
     { name: 'µas', radians: MICROARCSEC },
   ];
   return units.find((unit) => radians >= 2 * unit.radians) ?? units[2];
-}
-
-/** Returns the image of one draw, Jy per pixel (CONVENTIONS, posterior samples). Cost O(components pixels). */
-export function imageOfDraw(basis: Basis, posterior: Posterior, draw: number): SkyImage {
-  const { nx, ny, pixelRadians } = basis;
-  const pixels = basis.mean.map((value) => value * posterior.flux[draw]);
-  const from = draw * posterior.components;
-  addCombination(
-    pixels,
-    basis.components,
-    posterior.coefficients.subarray(from, from + posterior.components),
-  );
-  return { nx, ny, pixelRadians, pixels };
 }
 
 /** Returns numbers of `wanted` draws, evenly spaced over all. */

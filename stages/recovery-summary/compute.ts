@@ -1,11 +1,10 @@
 /** The computation of `recovery-summary`. */
 
 import { z } from 'zod';
-import type { ByteSource } from '../bytes.ts';
 import type { NumberValue } from '../data.ts';
-import { readJson, writeJson, writeNumbers } from '../formats/json.ts';
+import { readDocument } from '../formats/document.ts';
+import { writeJson, writeNumbers } from '../formats/json.ts';
 import type { StageReport, StageTask } from '../kind.ts';
-import { InputProblem } from '../problem.ts';
 import { type FamilySummary, judge, type Suite, summarise } from './summarise.ts';
 
 const quantity = z.object({
@@ -52,25 +51,14 @@ const schema = z.object({
 
 export function compute(task: StageTask): StageReport {
   const { biasTarget, least } = task.parameters as { biasTarget: number; least: number };
-  const suites: Suite[] = task.inputs.trials.map(readSuite);
+  const expected = 'the output `trials` of a stage of kind truth-recovery';
+  const suites: Suite[] = task.inputs.trials.map((source) => readDocument(schema, source, expected));
   const summary = summarise(suites);
   const verdicts = judge(summary, biasTarget, least);
   const missed = verdicts.filter(({ met }) => met === false);
   writeNumbers(task.outputs.numbers, { values: valuesOf(summary), remarks: remarksOf(summary, missed) });
   writeJson(task.outputs.report, { ...summary, verdicts });
   return { warnings: missed.map(({ target, found }) => `target missed: ${target}; found ${found}`) };
-}
-
-function readSuite(source: ByteSource): Suite {
-  const result = schema.safeParse(readJson(source));
-  if (result.success) return result.data;
-  throw new InputProblem({
-    code: 'wrong-document',
-    place: `${source.name}, ${result.error.issues[0]?.path.join('.') || 'the document'}`,
-    expected: 'the output `trials` of a stage of kind truth-recovery',
-    found: result.error.issues[0]?.message ?? 'something else',
-    advice: 'Refer to the right output.',
-  });
 }
 
 function valuesOf(summary: ReturnType<typeof summarise>): Record<string, NumberValue> {

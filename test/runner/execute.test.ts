@@ -50,6 +50,22 @@ describe('execute', () => {
     book.close();
   });
 
+  it('starts first what most wait for, one after another', async () => {
+    const book = temporaryBook();
+    const started: string[] = [];
+    const jobs = [
+      addJob('alone', [], 1),
+      addJob('after', ['first'], 2),
+      addJob('first', [], 3),
+      addJob('last', ['after'], 4),
+      addJob('beside', [], 5),
+    ];
+    const reporter = { started: ({ name }: Job) => void started.push(name), progress() {}, ended() {} };
+    await executeJobs(jobs, book, { cores: 1, reporter });
+    expect(started).toEqual(['first', 'after', 'alone', 'last', 'beside']);
+    book.close();
+  });
+
   it('gives another key to other bytes of an input file', async () => {
     const folder = temporaryFolder();
     const book = temporaryBook(folder);

@@ -21,9 +21,9 @@ test('are all that the inputs allow, or those of them that are chosen', () => {
 test('are refused in a recipe where they are left out', () => {
   const own = readFileSync(new URL('../../recipes/lantern/lantern.yaml', import.meta.url), 'utf8');
   const path = join(temporaryFolder(), 'lantern.yaml');
-  writeFileSync(path, own.replace('figures: [posterior]', 'figures: [image]'));
+  writeFileSync(path, own.replace('figures: [image, profile, posterior]', 'figures: [image, profile]'));
   expect(() => readRecipe({ path, shown: 'lantern.yaml', kinds: stageKinds })).toThrow(
-    'expected an output that stage `posterior-pictures` makes, got "posterior", which its parameter `figures` leaves out. ' +
+    'expected an output that stage `pictures` makes, got "posterior", which its parameter `figures` leaves out. ' +
       'Name it in that parameter, or refer to another output.',
   );
 });

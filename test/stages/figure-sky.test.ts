@@ -7,11 +7,11 @@ import {
   blurred,
   centroid,
   evenDraws,
-  imageOfDraw,
   MICROARCSEC,
   profileRadii,
   radialProfile,
 } from '../../stages/figure/sky.ts';
+import { drawImage } from '../../stages/imaging/measure-draws.ts';
 import { inventedBasis, inventedPosterior } from './figure-synthetic.ts';
 
 const N = 65;
@@ -81,7 +81,7 @@ describe('sky', () => {
   it('makes the image of a draw by the definition', () => {
     const basis = inventedBasis(3);
     const posterior = inventedPosterior(basis, 5);
-    const image = imageOfDraw(basis, posterior, 4);
+    const image = drawImage(basis, posterior, 4);
     for (const p of [0, 999, 2000, 4095]) {
       let sum = posterior.flux[4] * basis.mean[p];
       for (let k = 0; k < 3; k++) sum += posterior.coefficients[12 + k] * basis.components[k][p];

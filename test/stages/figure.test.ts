@@ -204,7 +204,7 @@ describe('figure', () => {
     const findings = [{ check: 'gains', finding: 'marginal', value: 1, marginal: 1 }];
     const report = file('calibration', (sink) => writeJson(sink, { findings }));
     expect(() => drawAll({ calibration: report }, ['calibration'])).toThrow(
-      /^calibration, findings\.0\.limit: bad-report: expected a report with findings and their limits, as the calibration check writes it, got /,
+      /^calibration, findings\.0\.limit: wrong-document: expected a report with findings and their limits, as the calibration check writes it, got /,
     );
   });
 
@@ -216,6 +216,27 @@ describe('figure', () => {
 
   it('says how many draws have a ring', () => {
     expect(drawn.posterior).toContain('64 draws; ring measured in 16, found in 16');
+  });
+
+  it('draws the rings that features measured, when it is given their report', () => {
+    const measures = Array.from({ length: 40 }, (_, k) => ({
+      diameter: 977 + k,
+      width: k < 20 ? null : 10,
+      asymmetry: 0.2,
+      positionAngle: (350 + k) % 360,
+      centralDepression: 0.1,
+    }));
+    const report = (draws: number) => file('features', (sink) => writeJson(sink, { draws, measures }));
+    const { posterior } = drawAll({ ...inputs, features: report(50) }, ['posterior']);
+    expect(posterior).toContain('64 draws; ring measured in 50, found in 40');
+    // Ticks of diameters from 977 to 1016 uas, which no draw of the samples has; the angles in one piece about north.
+    expect(posterior).toMatch(/aria-label="1\D?000"/);
+    const few = drawAll({ ...inputs, features: report(90) }, ['posterior']).posterior;
+    expect(few).toContain('a ring in 40 of 90 looked at, too few to show');
+    const none = file('features', (sink) => writeJson(sink, { draws: 3 }));
+    expect(() => drawAll({ ...inputs, features: none }, ['posterior'])).toThrow(
+      /^features, measures: wrong-document: expected the output `report` of a stage of kind features, got /,
+    );
   });
 
   it('refuses draws of another basis', () => {
@@ -249,7 +270,7 @@ describe('figure', () => {
         'visibilities of the scan, got [0,1,77].',
     );
     expect(draw({})).toThrow(
-      'residuals, stations: bad-residuals: expected residuals as fit writes them, got',
+      'residuals, stations: wrong-document: expected residuals as fit writes them, got',
     );
   });
 });

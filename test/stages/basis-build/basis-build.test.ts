@@ -271,7 +271,7 @@ describe('of files', () => {
     );
     const text = (value: unknown) => new TextEncoder().encode(JSON.stringify(value));
     expect(() => runStage(library.images, text({ images: [{ family: '' }] }))).toThrow(
-      /^manifest, images\.0\.family: bad-manifest: expected a list images, each with its family, a text of 1 to 24 characters, got .*\. Give the manifest that image-library wrote\.$/,
+      /^manifest, images\.0\.family: wrong-document: expected a list images, each with its family, a text of 1 to 24 characters, got .*\. Give the manifest that image-library wrote\.$/,
     );
   });
 
