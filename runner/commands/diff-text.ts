@@ -5,7 +5,7 @@ import type { DiffDocument, DiffInput, DiffNumber } from '../../ledger/diff.ts';
 import type { Origin } from '../../ledger/entry.ts';
 import { roundedNumber } from '../../stages/formats/drawing/rounding.ts';
 import { alignRows, counted, labelled, wrapText } from '../text-table.ts';
-import { plain } from './entry-text.ts';
+import { plain } from './entry-pieces.ts';
 
 const LABELS = 11;
 const INDENT = LABELS + 4;

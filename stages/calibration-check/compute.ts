@@ -1,7 +1,8 @@
 /** The computation of `calibration-check`: measure, judge, budget, write. */
 
 import { writeJson } from '../formats/json.ts';
-import { readVisibilities, writeVisibilities } from '../formats/visibilities.ts';
+import { readVisibilities } from '../formats/visibilities.ts';
+import { writeVisibilities } from '../formats/visibilities-write.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import { checkAfterFit } from './after-fit.ts';
 import { measure, type Outcome, runChecks } from './checks.ts';

@@ -5,16 +5,12 @@ import { readBasis } from '../formats/basis.ts';
 import { writeJson, writeNumbers } from '../formats/json.ts';
 import { readPosterior, readVariants } from '../formats/posterior.ts';
 import { readSkyImage } from '../formats/sky-image.ts';
+import type { Calibration } from '../imaging/calibrated-ring.ts';
 import { deepestDepression } from '../imaging/deepest-depression.ts';
 import { errorParts, partsRemark } from '../imaging/error-parts.ts';
+import { UAS_PER_RADIAN } from '../imaging/intervals.ts';
 import { type MeasuredDraws, measureDraws } from '../imaging/measure-draws.ts';
-import {
-  type Calibration,
-  makeRingNumbers,
-  ringFraction,
-  UAS_PER_RADIAN,
-  widthViolated,
-} from '../imaging/ring-numbers.ts';
+import { makeRingNumbers, ringFraction, widthViolated } from '../imaging/ring-numbers.ts';
 import { type ModelsVerdict, ringVerdict } from '../imaging/ring-verdict.ts';
 import type { StageReport, StageTask } from '../kind.ts';
 import { measureRing, RING_LIMITS, type RingMeasurement } from '../numerics/ring.ts';

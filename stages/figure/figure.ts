@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
  *  inputs are given. */
 export const figure = {
   kind: 'figure',
-  version: 7,
+  version: 8,
   doc: 'Draws coverage, data, image, profile, components, spectrum, posterior and calibration as SVG.',
   source:
     'Colours: CIE 15:2004 and IEC 61966-2-1, maps of our own. Interpolation: Keys 1981, IEEE Trans. ASSP 29, 1153. ' +

@@ -1,7 +1,6 @@
 /** Every measurement of a fit as one residual over its error, with the stations and baselines that it is of. */
 
 import type { Visibilities } from '../data.ts';
-import type { ScanGains } from '../imaging/amplitude-term.ts';
 import { complexSigma } from '../imaging/complex-term.ts';
 import { type DataTerm, termsOf } from '../imaging/data-terms.ts';
 import { type FitProblem, triplesFor } from '../imaging/fit-problem.ts';
@@ -9,6 +8,7 @@ import type { ModelVisibilities } from '../imaging/linear-model.ts';
 import { productAt } from '../imaging/optical-terms.ts';
 import { pointsOf } from '../imaging/points.ts';
 import { riceMean } from '../imaging/rice.ts';
+import type { ScanGains } from '../imaging/scan-gains.ts';
 import type { FitSettings } from '../imaging/settings.ts';
 import { type Closure, closurePhase, logClosureAmplitude, wrapPhase } from '../numerics/closures.ts';
 import { exp } from '../numerics/elementary.ts';

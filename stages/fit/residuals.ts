@@ -2,12 +2,12 @@
  *  stations are indices into `stations`. */
 
 import type { Visibilities } from '../data.ts';
-import type { ScanGains } from '../imaging/amplitude-term.ts';
 import type { DataKind } from '../imaging/data-terms.ts';
 import type { ModelVisibilities } from '../imaging/linear-model.ts';
 import { productAt } from '../imaging/optical-terms.ts';
 import { pointsOf } from '../imaging/points.ts';
 import { riceMean } from '../imaging/rice.ts';
+import type { ScanGains } from '../imaging/scan-gains.ts';
 import {
   type Closure,
   type ClosureSet,

@@ -2,10 +2,10 @@
 
 import type { Basis, Posterior } from '../data.ts';
 import { mean, median, quantiles, standardDeviation } from '../numerics/statistics.ts';
+import { UAS_PER_RADIAN } from './intervals.ts';
 import { type MeasuredDraws, measureDraws } from './measure-draws.ts';
 import type { BiasOfQuantity } from './method-bias.ts';
 import { correctionAt } from './method-bias.ts';
-import { UAS_PER_RADIAN } from './ring-numbers.ts';
 
 export interface ErrorParts {
   /** With the gains held at the optimum. */

@@ -6,7 +6,7 @@
 
 import type { Visibilities } from '../data.ts';
 import { median } from '../numerics/statistics.ts';
-import type { ScanGains } from './amplitude-term.ts';
+import type { ScanGains } from './scan-gains.ts';
 
 export interface StationGains {
   readonly station: string;

@@ -9,7 +9,7 @@ import { randomStream } from '../numerics/random.ts';
 import { measureRing } from '../numerics/ring.ts';
 import { mean } from '../numerics/statistics.ts';
 import { deepestDepression, type Grid } from './deepest-depression.ts';
-import { UAS_PER_RADIAN } from './ring-numbers.ts';
+import { UAS_PER_RADIAN } from './intervals.ts';
 import type { Quantity, Trial } from './trial.ts';
 
 export interface AboutRing {

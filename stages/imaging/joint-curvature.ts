@@ -1,10 +1,10 @@
 /** The curvature of the cost by x and by the gains together, nothing eliminated: what the sampler whitens with, and what the
  *  errors are while the gains are held. */
 
-import type { ScanGains } from './amplitude-term.ts';
 import { expandLinear, linearPart, slopesAt } from './centroid.ts';
 import { amplitudeTermOf, type FitProblem } from './fit-problem.ts';
 import { predict } from './linear-model.ts';
+import type { ScanGains } from './scan-gains.ts';
 import { logDerivatives, makeExpansion, mirror } from './term.ts';
 
 /** Returns H by (x, h), square, x.length + gains on a side, by Gauss and Newton; prior and positivity included. */

@@ -2,12 +2,12 @@
  *  noise alone does), and with the other numbers of components that held-out data admit. Gaussians of the curvature. */
 
 import type { Posterior } from '../data.ts';
-import type { ScanGains } from './amplitude-term.ts';
 import { type FitProblem, resized, solveFrom } from './fit-problem.ts';
 import { jointCurvature } from './joint-curvature.ts';
 import { componentsOf } from './linear-model.ts';
 import { drawPosterior } from './posterior-draws.ts';
 import type { FitResult } from './run-fit.ts';
+import type { ScanGains } from './scan-gains.ts';
 
 export interface Variant {
   readonly role: 'gains fixed' | 'components';

@@ -4,19 +4,12 @@ import type { Numbers, NumberValue } from '../data.ts';
 import { randomStream } from '../numerics/random.ts';
 import type { RingMeasurement } from '../numerics/ring.ts';
 import { angleDifference, circularMean, quantiles } from '../numerics/statistics.ts';
+import { type Calibration, calibrated, calibrationRemarks } from './calibrated-ring.ts';
 import type { ErrorParts } from './error-parts.ts';
-import { massInSuns } from './gravitational-radius.ts';
+import { interval, UAS_PER_RADIAN } from './intervals.ts';
 import type { MeasuredDraws } from './measure-draws.ts';
 import { type BiasOfQuantity, correctedDraws, type MethodBias } from './method-bias.ts';
 import { type ModelsVerdict, ringVerdict } from './ring-verdict.ts';
-
-export interface Calibration {
-  readonly alpha?: number;
-  readonly alphaError?: number;
-  /** pc */
-  readonly distance?: number;
-  readonly distanceError?: number;
-}
 
 /** What is known besides the draws. */
 export interface Knowledge {
@@ -29,11 +22,6 @@ export interface Knowledge {
   /** The least depression that the resolution allows a ring of this size to show. */
   readonly deepest?: number | null;
 }
-
-/** Microarcseconds per radian. */
-export const UAS_PER_RADIAN = 206264806247.09637;
-
-const INTERVAL = 'Median of the posterior draws that have a ring, with 68 % and 95 % intervals. ';
 
 const DEFINITIONS = {
   diameter: `Twice the mean radius of the ridge (largest brightness along each ray) over position angle.`,
@@ -250,55 +238,11 @@ function unwrapped(degrees: readonly number[]): number[] {
   return degrees.map((angle) => centre + angleDifference(angle, centre));
 }
 
-function interval(values: readonly number[], unit: string, definition: string): NumberValue {
-  const [low95, low, value, high, high95] = quantiles(values, [0.025, 0.16, 0.5, 0.84, 0.975]);
-  return { value, unit, low, high, low95, high95, definition: INTERVAL + definition };
-}
-
 function angleInterval(degrees: readonly number[]): NumberValue {
   const centre = circularMean(degrees).degrees;
   const about = degrees.map((angle) => angleDifference(angle, centre));
   const [low95, low, high, high95] = quantiles(about, [0.025, 0.16, 0.84, 0.975]).map((d) => centre + d);
   return { value: centre, unit: 'deg', low, high, low95, high95, definition: DEFINITIONS['position-angle'] };
-}
-
-/** Angle and mass with the errors of calibration and distance drawn beside those of the diameter. */
-function calibrated(
-  diameters: readonly number[],
-  { alpha, alphaError = 0, distance, distanceError = 0 }: Calibration,
-): Record<string, NumberValue> {
-  if (alpha === undefined) return {};
-  const random = randomStream(1, 'calibration and distance');
-  const angles = diameters.map((diameter) => diameter / positive(alpha, alphaError * random.normal()));
-  const ofAlpha = alphaError > 0 ? `${alpha} ± ${alphaError}` : `${alpha}, taken as exact`;
-  const angle = interval(
-    angles,
-    'uas',
-    `Angular gravitational radius G M / (c^2 D): diameter over alpha = ${ofAlpha}.`,
-  );
-  if (distance === undefined) return { 'gravitational-radius': angle };
-  const perUas = massInSuns(1 / UAS_PER_RADIAN, 1);
-  const masses = angles.map((theta) => theta * perUas * positive(distance, distanceError * random.normal()));
-  const ofDistance =
-    distanceError > 0 ? `${distance} ± ${distanceError} pc` : `${distance} pc, taken as exact`;
-  const mass = interval(masses, 'solMass', `Mass at a distance of ${ofDistance}.`);
-  return { 'gravitational-radius': angle, mass };
-}
-
-/** A quantity that cannot be negative, moved by its error, kept above a tenth. */
-function positive(value: number, step: number): number {
-  return Math.max(value / 10, value + step);
-}
-
-function calibrationRemarks({ alpha, distance }: Calibration): string[] {
-  if (alpha === undefined) {
-    return distance === undefined ? [] : ['A distance without alpha gives no mass: state alpha too.'];
-  }
-  return [
-    `The gravitational radius assumes that the ring's diameter is ${alpha} gravitational radii, that is, that the ring ` +
-      'lies where the calibration says and that general relativity holds; spin and inclination alone move a photon ' +
-      'ring by up to 13 %. The interval does not hold that.',
-  ];
 }
 
 /** A sentence when the diameter's uncertainty (half its 95 % interval) is not below the ring's width; else null. */

@@ -9,8 +9,8 @@ import { type HamiltonianRun, sampleHamiltonian, type Target } from '../numerics
 import { applyInverse, applyInverseTransposed, cholesky, profileOf } from '../numerics/linear.ts';
 import type { RandomStream } from '../numerics/random.ts';
 import { InternalError } from '../problem.ts';
-import type { ExplicitGains, ScanGains } from './amplitude-term.ts';
 import { linearPart, type Place, placeAt, slopesAt } from './centroid.ts';
+import type { ExplicitGains } from './explicit-gains.ts';
 import { amplitudeTermOf, type FitProblem } from './fit-problem.ts';
 import { jointCurvature } from './joint-curvature.ts';
 import {
@@ -22,6 +22,7 @@ import {
   writePrediction,
 } from './linear-model.ts';
 import type { PlacedPosterior } from './posterior-draws.ts';
+import type { ScanGains } from './scan-gains.ts';
 import { makeStraightening } from './straightening.ts';
 
 export interface SamplerSettings {

@@ -1,10 +1,10 @@
 /** Solves a fit together with the priors of its gains: see gain-check.ts for the rule. */
 
 import type { Minimum } from '../numerics/gauss-newton.ts';
-import type { ScanGains } from './amplitude-term.ts';
 import { amplitudeTermOf, type FitProblem, makeTerms, solveFrom } from './fit-problem.ts';
 import { findFarOff, type StationGains, summariseGains, type Widening } from './gain-check.ts';
 import { predict } from './linear-model.ts';
+import type { ScanGains } from './scan-gains.ts';
 import type { FitSettings } from './settings.ts';
 
 /** Stations whose prior may be widened before the data rather than the stations are in doubt. */

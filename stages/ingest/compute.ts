@@ -4,7 +4,7 @@ import type { ByteSource } from '../bytes.ts';
 import type { Visibilities } from '../data.ts';
 import { listHdus, verifyChecksums } from '../formats/fits/hdu.ts';
 import { writeJson } from '../formats/json.ts';
-import { writeVisibilities } from '../formats/visibilities.ts';
+import { writeVisibilities } from '../formats/visibilities-write.ts';
 import type { Finding, StageReport, StageTask } from '../kind.ts';
 import { InputProblem } from '../problem.ts';
 import { type AveragingResult, average } from './averaging.ts';

@@ -4,7 +4,8 @@ import { describe, expect, test } from 'vitest';
 import { type ByteSource, memorySink, sourceOf } from '../../stages/bytes.ts';
 import { calibrationCheck } from '../../stages/calibration-check/calibration-check.ts';
 import type { Visibilities } from '../../stages/data.ts';
-import { readVisibilities, writeVisibilities } from '../../stages/formats/visibilities.ts';
+import { readVisibilities } from '../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../stages/formats/visibilities-write.ts';
 import type { Finding } from '../../stages/kind.ts';
 import { randomStream } from '../../stages/numerics/random.ts';
 import { InputProblem } from '../../stages/problem.ts';
@@ -470,7 +471,7 @@ describe('The stated noise', () => {
   test('cannot be read from another document', async () => {
     await expect(check(observe(1, ONE_PAIR), {}, { findings: [] })).rejects.toThrow(InputProblem);
     await expect(check(observe(1, ONE_PAIR), {}, { findings: [] })).rejects.toThrow(
-      /^report, scatter: report: expected the report of a stage of kind ingest, with scatter\.averages and scatter\.median, got /,
+      /^report, scatter: wrong-document: expected the report of a stage of kind ingest, with scatter\.averages and scatter\.median, got /,
     );
   });
 });

@@ -10,7 +10,7 @@ import { writeBasis } from '../../stages/formats/basis.ts';
 import { writeJson, writeNumbers } from '../../stages/formats/json.ts';
 import { writePosterior } from '../../stages/formats/posterior.ts';
 import { writeSkyImage } from '../../stages/formats/sky-image.ts';
-import { writeVisibilities } from '../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../stages/formats/visibilities-write.ts';
 import { decodeColour, decodeIndexed } from '../picture.ts';
 import {
   crescent,
@@ -215,7 +215,9 @@ describe('figure', () => {
   });
 
   it('says how many draws have a ring', () => {
-    expect(drawn.posterior).toContain('64 draws; ring measured in 16, found in 16');
+    expect(drawn.posterior).toContain(
+      "64 draws; ring measured in 16, found in 16, not corrected for the method's bias",
+    );
   });
 
   it('draws the rings that features measured, when it is given their report', () => {

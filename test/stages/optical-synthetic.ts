@@ -4,6 +4,7 @@ import { appendEmptyPrimary, appendTableHdu, type NewColumn } from '../../stages
 import { type Model, makePart, visibilitiesOfModel } from '../../stages/numerics/models.ts';
 import { randomStream } from '../../stages/numerics/random.ts';
 import { written } from './formats/fits/fixtures.ts';
+import { PRIMARY_CARDS } from './formats/oifits-files.ts';
 import { UAS } from './numerics/ring-images.ts';
 
 export const WAVES = [1.55e-6, 1.65e-6];
@@ -105,15 +106,7 @@ export function opticalFile(
   const filled = (name: string, form: string, rows: number, constant: number) =>
     column(name, form, new Array(rows).fill(constant));
   return written((sink) => {
-    appendEmptyPrimary(sink, [
-      ...['ORIGIN', 'TELESCOP', 'INSTRUME', 'OBSERVER', 'OBJECT', 'INSMODE'].map((name): [string, string] => [
-        name,
-        'invented',
-      ]),
-      ['DATE', '2031-03-10'],
-      ['DATE-OBS', '2031-03-10'],
-      ['CONTENT', 'OIFITS2'],
-    ]);
+    appendEmptyPrimary(sink, PRIMARY_CARDS);
     appendTableHdu(sink, {
       extname: 'OI_TARGET',
       rows: 1,

@@ -9,7 +9,7 @@ import { fit } from '../../../stages/fit/fit.ts';
 import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readJson, readNumbers } from '../../../stages/formats/json.ts';
 import { readSkyImage } from '../../../stages/formats/sky-image.ts';
-import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities-write.ts';
 import { findPlace } from '../../../stages/imaging/centroid-start.ts';
 import { makeComplexTerm } from '../../../stages/imaging/complex-term.ts';
 import { resized } from '../../../stages/imaging/fit-problem.ts';

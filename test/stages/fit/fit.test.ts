@@ -9,7 +9,7 @@ import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readNumbers } from '../../../stages/formats/json.ts';
 import { readPosterior } from '../../../stages/formats/posterior.ts';
 import { readSkyImage } from '../../../stages/formats/sky-image.ts';
-import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities-write.ts';
 import { imageAt } from '../../../stages/imaging/linear-model.ts';
 import { measureDraws } from '../../../stages/imaging/measure-draws.ts';
 import { drawPosterior } from '../../../stages/imaging/posterior-draws.ts';

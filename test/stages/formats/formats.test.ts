@@ -9,7 +9,8 @@ import type { NewCard } from '../../../stages/formats/fits/header.ts';
 import { appendImageHdu } from '../../../stages/formats/fits/image.ts';
 import { readPosterior, readVariants, writePosterior } from '../../../stages/formats/posterior.ts';
 import { readSkyCube, readSkyImage, startSkyCube, writeSkyImage } from '../../../stages/formats/sky-image.ts';
-import { readVisibilities, writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { readVisibilities } from '../../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities-write.ts';
 import { fixture, problemOf, written } from './fits/fixtures.ts';
 import { basis, image, optical, posterior, visibilities } from './our-files.ts';
 

@@ -115,6 +115,17 @@ function wavelengthTable(name: string, waves: number[]): OiTable {
   };
 }
 
+/** The cards that OIFITS 2 wants in the primary header. */
+export const PRIMARY_CARDS: readonly [string, string][] = [
+  ...['ORIGIN', 'TELESCOP', 'INSTRUME', 'OBSERVER', 'OBJECT', 'INSMODE'].map((name): [string, string] => [
+    name,
+    'invented',
+  ]),
+  ['DATE', '2031-03-10'],
+  ['DATE-OBS', '2031-03-10'],
+  ['CONTENT', 'OIFITS2'],
+];
+
 /** A valid file of OIFITS 2: two targets, two arrays with a station of one name, two instruments of two and of three
  *  wavelengths (these falling), every kind of data, correlations, fluxes and polarisation. */
 export function validFile(): OiFile {
@@ -122,15 +133,7 @@ export function validFile(): OiFile {
   const far = { array: 'FAR', instrument: 'THREE', channels: 3 };
   const ofPairs = { values: 'VIS2DATA VIS2ERR', coordinates: 'UCOORD VCOORD' };
   return {
-    primary: [
-      ...['ORIGIN', 'TELESCOP', 'INSTRUME', 'OBSERVER', 'OBJECT', 'INSMODE'].map((name): [string, string] => [
-        name,
-        'invented',
-      ]),
-      ['DATE', '2031-03-10'],
-      ['DATE-OBS', '2031-03-10'],
-      ['CONTENT', 'OIFITS2'],
-    ],
+    primary: [...PRIMARY_CARDS],
     tables: [
       {
         extname: 'OI_TARGET',

@@ -6,7 +6,7 @@ import { describe, expect, test } from 'vitest';
 import { type ByteSource, sourceOf } from '../../../stages/bytes.ts';
 import { readOifits } from '../../../stages/formats/oifits.ts';
 import { requireValidOifits } from '../../../stages/formats/oifits-strict.ts';
-import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities-write.ts';
 import { InputProblem } from '../../../stages/problem.ts';
 import { fixture, problemOf, written } from './fits/fixtures.ts';
 import {

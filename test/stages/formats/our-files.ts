@@ -9,7 +9,7 @@ import { appendImageHdu } from '../../../stages/formats/fits/image.ts';
 import { appendEmptyPrimary, appendTableHdu } from '../../../stages/formats/fits/table.ts';
 import { writePosterior } from '../../../stages/formats/posterior.ts';
 import { startSkyCube, writeSkyImage } from '../../../stages/formats/sky-image.ts';
-import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities-write.ts';
 
 export const microarcsec = Math.PI / 648_000_000_000;
 

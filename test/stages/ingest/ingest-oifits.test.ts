@@ -2,7 +2,7 @@ import { readFileSync } from 'node:fs';
 import { describe, expect, it } from 'vitest';
 import { memorySink } from '../../../stages/bytes.ts';
 import type { Visibilities } from '../../../stages/data.ts';
-import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities-write.ts';
 import { all, type OiFile, setCard, setValue, sourceOfFile, validFile } from '../formats/oifits-files.ts';
 import { project, REFERENCE_MJD, rows, STATIONS, times, uvFile } from '../uv-synthetic.ts';
 import { problemOf, runIngest } from './run-ingest.ts';

@@ -7,7 +7,7 @@ import { compute as computeFit } from '../../../stages/fit/compute.ts';
 import { fit } from '../../../stages/fit/fit.ts';
 import { writeBasis } from '../../../stages/formats/basis.ts';
 import { readJson } from '../../../stages/formats/json.ts';
-import { writeVisibilities } from '../../../stages/formats/visibilities.ts';
+import { writeVisibilities } from '../../../stages/formats/visibilities-write.ts';
 import { injectedRings } from '../../../stages/imaging/injected-rings.ts';
 import {
   type BiasOfQuantity,
