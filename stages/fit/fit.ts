@@ -4,7 +4,7 @@ import type { StageKind } from '../kind.ts';
 
 export const fit = {
   kind: 'fit',
-  version: 5,
+  version: 6,
   doc:
     'Fits flux and coefficients of a basis to visibilities in the Fourier plane: image = flux * mean + sum of ' +
     'coefficient * component, the source at the resolution of the basis; the transform of its Gaussian is taken out of ' +

@@ -66,7 +66,7 @@ const OVERDISPERSION = 1.5;
 const NEARER = 0.8;
 
 /** Samples. @param count  draws to hand over, evenly out of those of all chains
- *  Cost: ten gradients a draw, each as long as one evaluation of the cost. */
+ *  Cost: three to five gradients a draw, each as long as one evaluation of the cost. */
 export function samplePosterior(
   problem: FitProblem,
   best: Minimum,

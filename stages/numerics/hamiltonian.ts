@@ -1,5 +1,8 @@
 /** A Hamiltonian sampler (Duane, Kennedy, Pendleton and Roweth 1987, Phys. Lett. B 195, 216; Neal 2011, Handbook of Markov
- *  Chain Monte Carlo, ch. 5): leapfrog steps with momenta drawn anew for every trajectory, accepted by the change of energy.
+ *  Chain Monte Carlo, ch. 5): momenta drawn anew for every trajectory, which is accepted by the change of energy. A step turns
+ *  position and momentum as a standard normal would, exactly, between two half steps of the force that remains (splitting: the
+ *  same, section 5.5.1; Shahbaba, Lan, Johnson and Neal 2014, Stat. Comput. 24, 339): the nearer the target is to a standard
+ *  normal, the longer steps can be. In the demonstration a trajectory takes three gradients, where leapfrog steps took five.
  *
  *  Warm-up: the step size of each chain by dual averaging towards a stated acceptance (Hoffman and Gelman 2014, J. Mach.
  *  Learn. Res. 15, 1593, section 3.2); the scale of each coordinate (a diagonal mass) from the spread of all chains' draws
@@ -7,7 +10,7 @@
  *  1.4 quarter periods of a standard normal, so that no coordinate resonates with it (Neal 2011, section 5.3.2); a part of
  *  the trajectories has finer steps (the same, section 5.4.2). The target is best whitened first: then all scales are near 1. */
 
-import { exp, ln, pow } from './elementary.ts';
+import { cos, exp, ln, pow, sin } from './elementary.ts';
 import { type RandomStream, randomStream } from './random.ts';
 
 export interface Target {
@@ -68,7 +71,7 @@ const SHRINKAGE = 50;
  *  0.82 (measured in 192 dimensions). */
 const [GAMMA, T0, KAPPA] = [0.15, 10, 0.75];
 
-/** Draws from a target. Cost: some ten gradients a trajectory; fixed order, the same bits everywhere. */
+/** Draws from a target. Cost: some five gradients a trajectory; fixed order, the same bits everywhere. */
 export function sampleHamiltonian(target: Target, options: HamiltonianOptions): HamiltonianRun {
   const { chains: count, warmUp, draws, most, suffices, progress = () => {} } = options;
   const scales = new Float64Array(target.dimension).fill(1);
@@ -170,7 +173,7 @@ function makeChain(
     },
   };
 
-  /** One trajectory of leapfrog steps; moves to its end or stays. */
+  /** One trajectory; moves to its end or stays. */
   function trajectory(full: number, finer = 1): { probability: number; diverged: boolean } {
     const size = full / finer;
     const momentum = Float64Array.from({ length: n }, () => random.normal());
@@ -179,15 +182,20 @@ function makeChain(
     const at = Float64Array.from(x);
     const slope = Float64Array.from(gradient);
     const before = energy + kinetic(momentum);
+    const [cosine, sine] = [cos(size), sin(size)];
     let [now, change] = [energy, 0];
     for (let k = 0; k < steps; k++) {
       for (let i = 0; i < n; i++) {
-        momentum[i] -= (size / 2) * scales[i] * slope[i];
-        at[i] += size * scales[i] * momentum[i];
+        const q = at[i] / scales[i];
+        const p = momentum[i] - (size / 2) * (scales[i] * slope[i] - q);
+        at[i] = scales[i] * (q * cosine + p * sine);
+        momentum[i] = p * cosine - q * sine;
       }
       now = target.evaluate(at, slope);
       chain.gradients++;
-      for (let i = 0; i < n; i++) momentum[i] -= (size / 2) * scales[i] * slope[i];
+      for (let i = 0; i < n; i++) {
+        momentum[i] -= (size / 2) * (scales[i] * slope[i] - at[i] / scales[i]);
+      }
       change = now + kinetic(momentum) - before;
       if (!(change < DIVERGENCE)) break;
     }

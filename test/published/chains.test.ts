@@ -170,6 +170,27 @@ describe('the Hamiltonian sampler', () => {
     expectMean(run, Math.exp(0.5), (x) => x[2] * x[2]);
   });
 
+  // Neal 2011, section 5.5.1: the part that is a standard normal is followed exactly, so that no energy is lost on it.
+  test('keeps the energy of a standard normal, whose steps err by nothing', () => {
+    const target: Target = {
+      dimension: 20,
+      evaluate(x, gradient) {
+        gradient.set(x);
+        return x.reduce((sum, value) => sum + value * value, 0) / 2;
+      },
+    };
+    const run = sampleHamiltonian(target, {
+      chains: 2,
+      warmUp: 0,
+      draws: 50,
+      most: 50,
+      seed: 3,
+      start: (random) => Float64Array.from({ length: 20 }, () => random.normal()),
+      suffices: () => true,
+    });
+    expect(1 - run.acceptance).toBeLessThan(1e-12);
+  });
+
   test('gives the same bits for the same seed, and stops when told', () => {
     const target = gaussian([0], [[1]]);
     expect(sample(target, 20).draws).toEqual(sample(target, 20).draws);
