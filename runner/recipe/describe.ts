@@ -41,11 +41,12 @@ export function describeRange(from: number | undefined, to: number | undefined, 
   return to === undefined ? '' : ` of at most ${shortest(to)}${suffix}`;
 }
 
-/** 400, 0.01, 1e9: large and small numbers with an exponent. */
+/** 400, 0.01, 1e9, 2147483647: large and small numbers with an exponent where that is shorter. */
 function shortest(value: number): string {
   const size = Math.abs(value);
   const plain = value === 0 || (size >= 1e-4 && size < 1e5);
-  return plain ? String(value) : value.toExponential().replace('e+', 'e');
+  const [written, short] = [String(value), value.toExponential().replace('e+', 'e')];
+  return plain || written.length < short.length ? written : short;
 }
 
 export function describeLength(least: number | undefined, most: number | undefined): string {

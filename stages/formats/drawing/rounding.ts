@@ -12,7 +12,7 @@ export interface RoundedNumber {
   readonly down?: string;
   readonly low?: string;
   readonly high?: string;
-  /** All are are to be multiplied by this power of ten; 0 for all numbers of common size. */
+  /** All are to be multiplied by this power of ten; 0 for all numbers of common size. */
   readonly exponent: number;
 }
 
