@@ -43,7 +43,7 @@ export function posteriorMarginals(
   }
   const trueRing = truth === null ? null : ringOf(truth);
   const ring = ringNumbers.map((number) => ringMarginal(number, rings, trueRing));
-  const note = `${posterior.count} draws; ring measured in ${draws}, found in ${rings.length}, not corrected for the method's bias`;
+  const note = `${posterior.count} draws; ring measured in ${draws}, found in ${rings.length}; bias not corrected`;
   return { marginals: [flux, ...ring, ...coefficients(basis, posterior, COEFFICIENTS.beside)], note };
 }
 

@@ -216,7 +216,7 @@ describe('figure', () => {
 
   it('says how many draws have a ring', () => {
     expect(drawn.posterior).toContain(
-      "64 draws; ring measured in 16, found in 16, not corrected for the method's bias",
+      '64 draws; ring measured in 16, found in 16; bias not corrected',
     );
   });
 
