@@ -215,9 +215,7 @@ describe('figure', () => {
   });
 
   it('says how many draws have a ring', () => {
-    expect(drawn.posterior).toContain(
-      '64 draws; ring measured in 16, found in 16; bias not corrected',
-    );
+    expect(drawn.posterior).toContain('64 draws; ring measured in 16, found in 16; bias not corrected');
   });
 
   it('draws the rings that features measured, when it is given their report', () => {
